@@ -1,0 +1,14 @@
+//! `tautline assess`.
+
+use clap::Args;
+
+use super::Failure;
+
+/// Options of `assess`.
+#[derive(Debug, Args)]
+pub struct Options {}
+
+/// Runs it.
+pub fn run(_options: &Options) -> Result<(), Failure> {
+    Err("not there yet".into())
+}

@@ -1,0 +1,309 @@
+//! The assessment record: what is known of one corridor at one frame, as every other program gets it.
+
+use std::sync::Arc;
+
+use chrono::{DateTime, SecondsFormat, Utc};
+use serde::{Serialize, Serializer, ser::SerializeMap};
+
+use crate::margin::{OutagePicture, Picture};
+
+/// One corridor at one frame. `None` stands where a value does not exist.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct Assessment {
+    /// The frame's time.
+    #[serde(serialize_with = "rfc3339")]
+    pub time: DateTime<Utc>,
+    /// The corridor's name.
+    pub corridor: Arc<str>,
+    /// The verdict.
+    pub state: State,
+    /// The bus whose terminal sends MW into the circuits.
+    pub exporter: Option<Arc<str>>,
+    /// MW from the exporter's terminal into the circuits.
+    pub transfer_mw: Option<f64>,
+    /// Exporter minus importer, between the terminal buses.
+    pub bus_angle_deg: Option<f64>,
+    /// Exporter minus importer, between the settled sources.
+    pub internal_angle_deg: Option<f64>,
+    /// Exporter minus importer, between the sources of the first swing.
+    pub swing_angle_deg: Option<f64>,
+    /// What stands behind the terminals: `from`, then `to`.
+    #[serde(serialize_with = "by_name")]
+    pub sources: [SourceRecord; 2],
+    /// How well the frame agrees with itself.
+    pub fit: FitRecord,
+    /// The corridor as it is.
+    pub intact: Option<Intact>,
+    /// Every outage judged.
+    pub outages: Vec<OutageRecord>,
+    /// The smallest limit minus the transfer, MW; negative: MW to take off now.
+    pub headroom_mw: Option<f64>,
+    /// Its standard deviation from the spread of the sources, MW.
+    pub headroom_sd_mw: Option<f64>,
+    /// What sets the headroom.
+    pub binding: Option<Binding>,
+    /// The headroom after each single action at hand.
+    pub actions: Vec<Action>,
+    /// For each open circuit, whether it may be closed now.
+    pub reclose: Vec<Reclose>,
+    /// Minutes until the headroom falls to the thin threshold, where it falls significantly.
+    pub minutes_to_thin: Option<f64>,
+    /// Minutes until it falls to zero, likewise.
+    pub minutes_to_spent: Option<f64>,
+    /// The thin threshold in force, MW.
+    pub thin_mw: f64,
+    /// What a screen draws besides: not part of the record.
+    #[serde(skip)]
+    pub detail: Option<Arc<Detail>>,
+}
+
+/// A corridor's state.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "lowercase")]
+pub enum State {
+    /// Headroom above the thin threshold.
+    Ample,
+    /// Below it.
+    Thin,
+    /// At or below zero.
+    Spent,
+    /// Too little is measured to say.
+    Blind,
+}
+
+/// The Thevenin equivalent behind one terminal.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct SourceRecord {
+    /// The terminal bus.
+    #[serde(skip)]
+    pub bus: Arc<str>,
+    /// Magnitude of the settled voltage behind the impedance, kV line-to-line.
+    pub e_kv: Option<f64>,
+    /// Its angle against the `to` bus, degrees.
+    pub angle_deg: Option<f64>,
+    /// Resistance, ohm.
+    pub r_ohm: f64,
+    /// Reactance, ohm.
+    pub x_ohm: f64,
+    /// Standard deviation of the resistance, ohm.
+    pub r_sd: f64,
+    /// Standard deviation of the reactance, ohm.
+    pub x_sd: f64,
+    /// Where the impedance comes from.
+    pub basis: Basis,
+    /// Steps it was learned from.
+    pub steps: u64,
+}
+
+/// Where a source's impedance comes from.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "lowercase")]
+pub enum Basis {
+    /// The configuration.
+    Configured,
+    /// Steps seen on the running system.
+    Learned,
+}
+
+/// The state fit in brief.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct FitRecord {
+    /// Sum of squared normalised residuals.
+    pub chi2: Option<f64>,
+    /// Degrees of freedom.
+    pub dof: usize,
+    /// The 99 % quantile for these degrees of freedom; `None` without any.
+    pub limit: Option<f64>,
+    /// Channels set aside, worst first.
+    pub suspects: Vec<Arc<str>>,
+    /// Channels that bring no usable value: MW, Mvar and kV of what is in service.
+    pub missing: Vec<Arc<str>>,
+    /// Loads that no channel brings, as assumed: `"Velm: no load given, 0 MW"`.
+    pub assumed: Vec<Arc<str>>,
+}
+
+/// The corridor with nothing lost.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct Intact {
+    /// Transfer at the curve's peak, MW.
+    pub peak_mw: f64,
+    /// 90° less the internal angle past the curve's zero.
+    pub angle_margin_deg: f64,
+    /// Largest current against its continuous rating, %.
+    pub loading_pct: Option<f64>,
+    /// Where that is.
+    pub loaded_circuit: Option<Arc<str>>,
+    /// Limits by the intact requirements.
+    pub limit_mw: IntactLimits,
+}
+
+/// Transfers up to which the intact corridor holds, MW; `None`: to its peak.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize)]
+pub struct IntactLimits {
+    /// By the intact angle margin.
+    pub angle: Option<f64>,
+    /// By the continuous ratings.
+    pub loading: Option<f64>,
+    /// By the floors.
+    pub voltage: Option<f64>,
+}
+
+/// One outage, judged.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct OutageRecord {
+    /// The circuit, the bank or the configured combination.
+    pub name: Arc<str>,
+    /// No path is left between the terminals; nothing else is computed then.
+    pub separates: bool,
+    /// Transfer at the peak of the remaining network, MW.
+    pub peak_mw: Option<f64>,
+    /// Internal angle of the new equilibrium, degrees.
+    pub angle_deg: Option<f64>,
+    /// Angle margin there, degrees.
+    pub angle_margin_deg: Option<f64>,
+    /// Largest angle of the first swing, between the sources of the swing, degrees.
+    pub swing_peak_deg: Option<f64>,
+    /// The equal-area criterion as one number, -1 to 1.
+    pub area_margin: Option<f64>,
+    /// Critical clearing time, ms; `None` without a fault or beyond 2 s.
+    pub critical_ms: Option<f64>,
+    /// Largest current against its short-time rating, %.
+    pub loading_pct: Option<f64>,
+    /// Where that is.
+    pub loaded_circuit: Option<Arc<str>>,
+    /// Voltages at the new equilibrium, kV by bus.
+    #[serde(serialize_with = "kv_by_bus")]
+    pub kv: Option<Vec<(Arc<str>, f64)>>,
+    /// Limits by criterion.
+    pub limit_mw: OutageLimits,
+    /// What a screen draws of it: not part of the record.
+    #[serde(skip)]
+    pub picture: Option<OutagePicture>,
+}
+
+/// Transfers up to which a criterion holds after an outage, MW; `None`: to the peak.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize)]
+pub struct OutageLimits {
+    /// An equilibrium with the required angle margin.
+    pub angle: Option<f64>,
+    /// The required area margin.
+    pub area: Option<f64>,
+    /// Short-time ratings.
+    pub loading: Option<f64>,
+    /// Floors.
+    pub voltage: Option<f64>,
+    /// 0 where the outage separates the corridor and that is not accepted.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub separation: Option<f64>,
+}
+
+/// What sets the headroom.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize)]
+pub struct Binding {
+    /// The outage; `None`: the intact corridor.
+    pub outage: Option<Arc<str>>,
+    /// The criterion.
+    pub criterion: Criterion,
+}
+
+/// What must hold after an outage.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "lowercase")]
+pub enum Criterion {
+    /// An equilibrium with enough angle margin.
+    Angle,
+    /// Enough area margin.
+    Area,
+    /// Ratings.
+    Loading,
+    /// Floors.
+    Voltage,
+    /// A path between the terminals.
+    Separation,
+}
+
+/// A single action at hand.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct Action {
+    /// `insert <bank>` or `close <circuit>`.
+    pub action: String,
+    /// The headroom after it, MW.
+    pub headroom_mw: Option<f64>,
+}
+
+/// Whether an open circuit may be closed.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct Reclose {
+    /// The open circuit.
+    pub circuit: Arc<str>,
+    /// Standing angle across it, without sign, degrees.
+    pub angle_deg: Option<f64>,
+    /// Voltage difference across it, % of nominal.
+    pub voltage_pct: Option<f64>,
+    /// Within the synchronism-check setting; `None` where it cannot be told.
+    pub allowed: Option<bool>,
+    /// Transfer at which the angle would fit, where it does not, MW.
+    pub transfer_to_fit_mw: Option<f64>,
+}
+
+/// What a screen shows of the state and the curves.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Detail {
+    /// Fitted voltage of each bus that is in service: name, kV, degrees against `to`.
+    pub buses: Vec<BusDetail>,
+    /// Each circuit as it stands.
+    pub circuits: Vec<CircuitDetail>,
+    /// The power-angle curve of the present network, swing sources.
+    pub picture: Picture,
+}
+
+/// A bus as fitted.
+#[derive(Debug, Clone, PartialEq)]
+pub struct BusDetail {
+    /// Its name.
+    pub name: Arc<str>,
+    /// Fitted voltage, kV.
+    pub kv: f64,
+    /// Fitted angle against `to`, degrees.
+    pub deg: f64,
+    /// Load as used, MW.
+    pub load_mw: f64,
+    /// Load as used, Mvar.
+    pub load_mvar: f64,
+}
+
+/// A circuit as it stands.
+#[derive(Debug, Clone, PartialEq)]
+pub struct CircuitDetail {
+    /// Its name.
+    pub name: Arc<str>,
+    /// In service.
+    pub closed: bool,
+    /// MW into it at its first bus, fitted.
+    pub from_mw: f64,
+    /// Larger end current against the continuous rating, %.
+    pub loading_pct: Option<f64>,
+    /// Its banks: name and whether inserted.
+    pub banks: Vec<(Arc<str>, bool)>,
+}
+
+fn rfc3339<S: Serializer>(time: &DateTime<Utc>, serializer: S) -> Result<S::Ok, S::Error> {
+    serializer.serialize_str(&time.to_rfc3339_opts(SecondsFormat::AutoSi, true))
+}
+
+fn by_name<S: Serializer>(sources: &[SourceRecord; 2], serializer: S) -> Result<S::Ok, S::Error> {
+    serializer.collect_map(sources.iter().map(|source| (&source.bus, source)))
+}
+
+fn kv_by_bus<S: Serializer>(kv: &Option<Vec<(Arc<str>, f64)>>, serializer: S) -> Result<S::Ok, S::Error> {
+    match kv {
+        None => serializer.serialize_none(),
+        Some(kv) => {
+            let mut map = serializer.serialize_map(Some(kv.len()))?;
+            for (bus, kv) in kv {
+                map.serialize_entry(bus, kv)?;
+            }
+            map.end()
+        }
+    }
+}

@@ -1,0 +1,32 @@
+use chrono::{DateTime, Utc};
+
+use super::Slot;
+
+/// A time and the values reported for it.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Frame {
+    /// When the values were measured.
+    pub time: DateTime<Utc>,
+    /// What the frame says, in its own order; a slot appears at most once.
+    pub readings: Vec<(Slot, Reading)>,
+}
+
+/// One measured value.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Reading {
+    /// In the channel's unit; means nothing when the quality is invalid.
+    pub value: f64,
+    /// How far to trust it.
+    pub quality: Quality,
+}
+
+/// How far a value is to be trusted.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Quality {
+    /// Used as it is.
+    Good,
+    /// Used with three times the standard deviation.
+    Questionable,
+    /// Not used.
+    Invalid,
+}

@@ -1,0 +1,63 @@
+use chrono::{DateTime, TimeDelta, Utc};
+
+use super::{Channels, Frame, Quality, Reading, Slot};
+
+/// What stands at the time of a frame: its own values, and earlier ones that are not too old.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Snapshot {
+    /// The frame's time.
+    pub time: DateTime<Utc>,
+    /// By slot; `None`: missing.
+    pub readings: Vec<Option<Reading>>,
+}
+
+impl Snapshot {
+    /// The reading, unless it is missing or invalid.
+    pub fn usable(&self, slot: Slot) -> Option<Reading> {
+        self.readings[slot].filter(|reading| reading.quality != Quality::Invalid)
+    }
+}
+
+/// Keeps the last value of each channel for its age.
+#[derive(Debug, Clone)]
+pub struct Holder {
+    max_age: TimeDelta,
+    is_status: Vec<bool>,
+    last: Vec<Option<(DateTime<Utc>, Reading)>>,
+    latest: Option<DateTime<Utc>>,
+}
+
+impl Holder {
+    /// Nothing held yet.
+    pub fn new(channels: &Channels, max_age: TimeDelta) -> Self {
+        Self {
+            max_age,
+            is_status: (0..channels.len()).map(|slot| channels.is_status(slot)).collect(),
+            last: vec![None; channels.len()],
+            latest: None,
+        }
+    }
+
+    /// Takes a frame in; `None` when it is older than the one before it, which changes nothing.
+    pub fn take(&mut self, frame: &Frame) -> Option<Snapshot> {
+        if self.latest.is_some_and(|latest| frame.time < latest) {
+            return None;
+        }
+        self.latest = Some(frame.time);
+        for &(slot, reading) in &frame.readings {
+            // An invalid status says nothing new: the circuit stays as last known.
+            if !(self.is_status[slot] && reading.quality == Quality::Invalid) {
+                self.last[slot] = Some((frame.time, reading));
+            }
+        }
+        let readings = self
+            .last
+            .iter()
+            .zip(&self.is_status)
+            .map(|(last, is_status)| {
+                last.filter(|(since, _)| *is_status || frame.time - *since <= self.max_age).map(|(_, reading)| reading)
+            })
+            .collect();
+        Some(Snapshot { time: frame.time, readings })
+    }
+}

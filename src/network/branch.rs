@@ -42,16 +42,14 @@ fn totals(line: Line) -> (C64, C64) {
     }
 }
 
-/// The piece of a circuit between two fractions of it, with the inserted banks that stand in it.
-///
-/// A bank exactly on `start` belongs to the piece, one exactly on `end` does not, except at the far bus.
-fn piece(circuit: &Circuit, inserted: &[bool], start: f64, end: f64) -> TwoPort {
+/// The piece of a circuit between two fractions of it, with those inserted banks that stand in it.
+fn piece(circuit: &Circuit, inserted: &[bool], [start, end]: [f64; 2], holds: impl Fn(f64) -> bool) -> TwoPort {
     let (z, y) = totals(circuit.line);
     let stretch = |length: f64| if length > 0.0 { TwoPort::line(z * length, y * length) } else { TwoPort::THROUGH };
     let mut port = TwoPort::THROUGH;
     let mut reached = start;
     for (bank, _) in circuit.banks.iter().zip(inserted).filter(|(_, inserted)| **inserted) {
-        if bank.at >= start && (bank.at < end || end >= 1.0) {
+        if holds(bank.at) {
             port = port * stretch(bank.at - reached) * TwoPort::series(C64::new(0.0, -bank.x_ohm));
             reached = bank.at;
         }
@@ -69,7 +67,7 @@ impl Branch {
             let driving = z.inv() + y / 2.0;
             return Self { y11: driving, y12: -z.inv(), y22: driving };
         }
-        piece(circuit, inserted, 0.0, 1.0).into()
+        piece(circuit, inserted, [0.0, 1.0], |_| true).into()
     }
 
     /// Current into the branch at an end, given the voltages of its first and second bus (kV).
@@ -95,25 +93,24 @@ pub fn fault_admittance(kind: FaultKind) -> Option<C64> {
 }
 
 impl FaultedBranch {
-    /// The circuit with a fault at a fraction of it, counted from the given end.
+    /// The circuit with a fault at a fraction of it, counted from the given end; a bank at that very place lies behind it.
     pub fn of(circuit: &Circuit, inserted: &[bool], kind: FaultKind, at: f64, counted_from: End) -> Self {
         let at = match counted_from {
             End::From => at,
             End::To => 1.0 - at,
         };
+        let near_holds = |place: f64| if counted_from == End::From { place < at } else { place <= at };
+        let near = || piece(circuit, inserted, [0.0, at], near_holds);
+        let far = || piece(circuit, inserted, [at, 1.0], |place| !near_holds(place));
         let whole = Branch::of(circuit, inserted);
         match fault_admittance(kind) {
             Some(y) if at <= 0.0 => Self { branch: Branch { y11: whole.y11 + y, ..whole }, shorted: None },
             Some(y) if at >= 1.0 => Self { branch: Branch { y22: whole.y22 + y, ..whole }, shorted: None },
-            Some(y) => {
-                let port = piece(circuit, inserted, 0.0, at) * TwoPort::shunt(y) * piece(circuit, inserted, at, 1.0);
-                Self { branch: port.into(), shorted: None }
-            }
+            Some(y) => Self { branch: (near() * TwoPort::shunt(y) * far()).into(), shorted: None },
             None if at <= 0.0 => Self { branch: whole, shorted: Some(End::From) },
             None if at >= 1.0 => Self { branch: whole, shorted: Some(End::To) },
             None => {
-                let near: Branch = piece(circuit, inserted, 0.0, at).into();
-                let far: Branch = piece(circuit, inserted, at, 1.0).into();
+                let (near, far): (Branch, Branch) = (near().into(), far().into());
                 let branch = Branch { y11: near.y11, y12: C64::new(0.0, 0.0), y22: far.y22 };
                 Self { branch, shorted: None }
             }

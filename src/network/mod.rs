@@ -4,10 +4,12 @@
 
 mod admittance;
 mod branch;
+mod topology;
 mod two_port;
 
 pub use admittance::{Admittance, Reduced};
 pub use branch::{Branch, FaultedBranch, fault_admittance};
+pub use topology::Topology;
 pub use two_port::TwoPort;
 
 /// Complex number: impedances in ohm, admittances in siemens, voltages in kV.

@@ -206,7 +206,7 @@ impl Estimator {
     /// (in standard deviations) count only linearly.
     pub fn iterate(&mut self, wiring: &Wiring, bend: f64) -> Result<f64, Failure> {
         let settled = if bend.is_finite() { SETTLED_ROBUST } else { SETTLED };
-        let (mut before, mut previous, mut halvings) = (f64::INFINITY, f64::INFINITY, 0);
+        let (mut before, mut previous, mut halvings) = (f64::INFINITY, 0.0, 0);
         for _ in 0..ITERATIONS {
             let sum = self.assemble(wiring, bend);
             if sum.is_nan() || sum > before * (1.0 + 1e-9) + 1e-9 {

@@ -1,5 +1,9 @@
 //! From a snapshot to a state: exact frames, noisy ones, wrong meters, wrong statuses, missing channels, nonsense.
 
+mod blind;
 mod exact;
+mod nonsense;
+mod reference;
+mod statuses;
 mod suspects;
 mod world;

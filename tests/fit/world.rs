@@ -156,8 +156,7 @@ impl World {
                 if !self.topology.closed[circuit] {
                     return 0.0;
                 }
-                let branch = Branch::of(&self.corridor.circuits[circuit], &self.topology.inserted[circuit]);
-                let current = branch.current(end, self.voltage[first], self.voltage[second]);
+                let current = self.branch(circuit).current(end, self.voltage[first], self.voltage[second]);
                 let at = if end == End::From { first } else { second };
                 part(self.voltage[at] * current.conj(), quantity)
             }
@@ -208,13 +207,21 @@ impl World {
 
     pub fn set(&self, snapshot: &mut Snapshot, point: Point, value: f64) {
         let reading = Reading { value, quality: Quality::Good };
-        snapshot.readings[self.channels.slot(&self.corridor, point)] = Some(reading);
+        snapshot.readings[self.slot(point)] = Some(reading);
     }
 
-    pub fn drop(&self, snapshot: &mut Snapshot, gone: impl Fn(Point) -> bool) {
+    pub fn drop(&self, snapshot: &mut Snapshot, mut gone: impl FnMut(Point) -> bool) {
         for point in self.points().into_iter().filter(|point| gone(*point)) {
-            snapshot.readings[self.channels.slot(&self.corridor, point)] = None;
+            snapshot.readings[self.slot(point)] = None;
         }
+    }
+
+    pub fn slot(&self, point: Point) -> usize {
+        self.channels.slot(&self.corridor, point)
+    }
+
+    pub fn branch(&self, circuit: usize) -> Branch {
+        Branch::of(&self.corridor.circuits[circuit], &self.topology.inserted[circuit])
     }
 
     pub fn names(&self, slots: &[usize]) -> Vec<&str> {

@@ -209,7 +209,7 @@ impl Estimator {
         let (mut before, mut previous, mut halvings) = (f64::INFINITY, 0.0, 0);
         for _ in 0..ITERATIONS {
             let sum = self.assemble(wiring, bend);
-            if sum.is_nan() || sum > before * (1.0 + 1e-9) + 1e-9 {
+            if !sum.is_finite() || sum > before * (1.0 + 1e-9) + 1e-9 {
                 halvings += 1;
                 if halvings > HALVINGS || before.is_infinite() {
                     return Err(Failure::Restless);
@@ -221,7 +221,7 @@ impl Estimator {
             before = sum;
             self.gain.factor()?;
             self.gain.solve(&mut self.step);
-            let mut size = self.step.iter().fold(0.0, |size: f64, s| size.max(s.abs()));
+            let mut size: f64 = self.step.iter().map(|s| s.abs()).sum();
             if size > LONGEST_STEP {
                 self.step.iter_mut().for_each(|s| *s *= LONGEST_STEP / size);
                 size = LONGEST_STEP;

@@ -1,18 +1,17 @@
 //! Corridors whose true state is known, and what their meters would show.
 
-use std::{collections::BTreeMap, sync::Arc};
+use std::sync::Arc;
 
 use chrono::DateTime;
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, StandardNormal};
 use tautline::{
-    config::{Config, FeedSettings, MeasurementSettings},
+    config::{Config, MeasurementSettings},
     feed::{Channels, End, Point, Quality, Quantity, Reading, Snapshot},
     fit::{Fit, Fitter},
     grid::{
-        Bank, Bus, Circuit, ConfiguredSource, Corridor, FROM, Grid, Line, Load, Requirements, Side, SynchronismCheck,
-        TO,
+        Bank, Bus, Circuit, ConfiguredSource, Corridor, FROM, Line, Load, Requirements, Side, SynchronismCheck, TO,
     },
     network::{Admittance, Branch, C64, Reduced, Topology},
 };
@@ -237,14 +236,11 @@ pub fn loaded_world() -> World {
     World::new(corridor, topology, terminals, vec![C64::new(0.005, -0.0007), C64::new(0.003, 0.0)])
 }
 
+/// A configuration of nothing but this corridor.
 pub fn config(corridor: &Corridor) -> Config {
-    Config {
-        grid: Grid { frequency_hz: 50.0, corridors: vec![corridor.clone()] },
-        time_zone: chrono_tz::UTC,
-        measurement: MeasurementSettings::default(),
-        feed: FeedSettings::default(),
-        channel_names: BTreeMap::new(),
-    }
+    let mut config = Config::parse(include_str!("../cases/corridor-01/config.toml"), "config.toml").unwrap();
+    config.grid.corridors = vec![corridor.clone()];
+    config
 }
 
 /// A load as configured.

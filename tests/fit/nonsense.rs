@@ -77,7 +77,7 @@ fn assert_sane(fit: &Fit) {
         return;
     };
     let finite = |c: &C64| c.re.is_finite() && c.im.is_finite();
-    assert!(state.voltage.iter().all(finite));
+    assert!(state.voltage.iter().chain(&state.load).all(finite));
     assert!(fit.chi2.is_some_and(|chi2| chi2.is_finite() && chi2 >= 0.0));
     for (voltage, live) in state.voltage.iter().zip(&state.live) {
         assert!(*live || *voltage == C64::new(0.0, 0.0));

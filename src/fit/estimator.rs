@@ -3,13 +3,15 @@
 //! Unknowns are, for each bus in service, the voltage per unit of nominal and the angle (but that of `to`, and that of `from`
 //! where nothing tells it), and one angle common to all angle channels.
 
+mod judge;
+mod start;
+
 use super::{
     gain::{Gain, Singular},
     meter::{Meter, Meters},
     wiring::{Flow, Wiring},
 };
 use crate::{
-    feed::End,
     grid::{BusIndex, Corridor, FROM, TO},
     network::C64,
 };
@@ -86,6 +88,9 @@ impl Loss {
 }
 
 fn wrapped(angle: f64) -> f64 {
+    if angle.abs() < std::f64::consts::PI {
+        return angle;
+    }
     angle - std::f64::consts::TAU * (angle / std::f64::consts::TAU).round()
 }
 
@@ -149,59 +154,6 @@ impl Estimator {
     /// Measurements in use.
     pub fn count(&self) -> usize {
         self.w.iter().filter(|w| **w > 0.0).count()
-    }
-
-    /// A start near the state even if some measurements are far off: measured voltages where they are possible, and angles
-    /// from bus to bus as the middle one of what the MW readings say.
-    pub fn start(&mut self, wiring: &Wiring) {
-        let buses = wiring.side.len();
-        self.v.clear();
-        self.v.extend((0..buses).map(|bus| {
-            let kv = Meters::kv(bus);
-            if self.w[kv] > 0.0 && (0.5..1.5).contains(&self.z[kv]) { self.z[kv] } else { 1.0 }
-        }));
-        self.angle.clear();
-        self.angle.resize(buses, f64::NAN);
-        self.angle[TO] = 0.0;
-        if !wiring.joined() {
-            self.angle[FROM] = 0.0;
-        }
-        for _ in 0..buses {
-            for bus in 0..buses {
-                if wiring.live(bus) && self.angle[bus].is_nan() {
-                    self.angle[bus] = self.guess_angle(wiring, bus).unwrap_or(f64::NAN);
-                }
-            }
-        }
-        let reference = (0..buses).find(|bus| self.w[Meters::deg(*bus)] > 0.0);
-        self.offset = reference.map_or(0.0, |bus| self.z[Meters::deg(bus)] - self.angle[bus]);
-    }
-
-    /// The middle of what the circuits to buses of known angle say; `None` without such a circuit.
-    fn guess_angle(&mut self, wiring: &Wiring, bus: BusIndex) -> Option<f64> {
-        self.guesses.clear();
-        let mut neighbour = None;
-        for wire in &wiring.wires {
-            let [first, second] = wire.buses;
-            let (known, sign) = if first == bus { (self.angle[second], 1.0) } else { (self.angle[first], -1.0) };
-            if (first != bus && second != bus) || known.is_nan() {
-                continue;
-            }
-            neighbour = Some(known);
-            let v = wire.buses.map(|bus| self.v[bus]);
-            for (end, mw) in [(End::From, wire.meters[0]), (End::To, wire.meters[2])] {
-                if self.w[mw] > 0.0 {
-                    self.guesses.push(known + sign * wire.angle_by_mw(end, self.z[mw], v));
-                }
-            }
-        }
-        self.guesses.sort_unstable_by(f64::total_cmp);
-        let count = self.guesses.len();
-        if count == 0 {
-            return neighbour;
-        }
-        let [low, high] = [self.guesses[(count - 1) / 2], self.guesses[count / 2]];
-        Some(if high.abs() < low.abs() { high } else { low })
     }
 
     /// Iterates from where the unknowns stand to the least sum of squares and returns it. With a `bend`, residuals beyond it
@@ -289,7 +241,18 @@ impl Estimator {
             let factor = loss.take(residual);
             self.gain.b[self.v_at[bus]] += factor * factor * w * residual;
             self.gain.add(self.v_at[bus], self.v_at[bus], (factor * w).powi(2));
-            for meter in kv + 1..kv + 4 {
+            let deg = Meters::deg(bus);
+            if self.w[deg] > 0.0 {
+                let w = self.w[deg];
+                let residual = w * wrapped(self.z[deg] - self.angle[bus] - self.offset);
+                let factor = loss.take(residual);
+                for at in [self.angle_at[bus], self.offset_at] {
+                    self.gain.b[at] += factor * factor * w * residual;
+                    self.gain.add(at, at, (factor * w).powi(2));
+                }
+                self.gain.add(self.angle_at[bus], self.offset_at, (factor * w).powi(2));
+            }
+            for meter in Meters::load(bus) {
                 if self.w[meter] > 0.0 {
                     let mut row = std::mem::take(&mut self.row);
                     let residual = self.row_of(wiring, meter, &mut row);
@@ -343,57 +306,6 @@ impl Estimator {
         row[self.unknowns] = 0.0;
         let residual = self.z[meter] - value;
         w * if kind == 1 && bus < wiring.side.len() { wrapped(residual) } else { residual }
-    }
-
-    /// Whether MW and angle channels alone fix the angles: Mvar cannot tell which way power goes.
-    pub fn angles_fixed(&mut self, wiring: &Wiring) -> bool {
-        if wiring.wires.iter().all(|wire| self.w[wire.meters[0]] + self.w[wire.meters[2]] > 0.0) {
-            return true;
-        }
-        self.assemble(wiring, f64::INFINITY);
-        self.gain.clear(self.unknowns);
-        let mut row = std::mem::take(&mut self.row);
-        for meter in (0..self.w.len()).filter(|meter| self.w[*meter] > 0.0) {
-            let active = if meter / 4 < wiring.side.len() { matches!(meter % 4, 1 | 2) } else { meter % 2 == 0 };
-            if active {
-                let residual = self.row_of(wiring, meter, &mut row);
-                self.v_at.iter().for_each(|at| row[*at] = 0.0);
-                self.gain.add_row(&row, residual);
-            }
-        }
-        self.row = row;
-        for &at in &self.v_at {
-            self.gain.add(at, at, f64::MAX.sqrt());
-        }
-        self.gain.factor().is_ok()
-    }
-
-    /// The measurement with the largest normalised residual |r|/√Ω (Abur & Expósito 2004, §5.7), where the equations are made
-    /// linear at a robust estimate, which a gross error does not drag along. Critical measurements (Ω = 0) say nothing.
-    pub fn worst(&mut self, wiring: &Wiring) -> Option<Meter> {
-        const BEND: f64 = 3.0;
-        const CRITICAL: f64 = 1e-5;
-        self.start(wiring);
-        // Wherever it ends is nearer than where it started.
-        let _ = self.iterate(wiring, BEND);
-        self.assemble(wiring, f64::INFINITY);
-        self.gain.factor().ok()?;
-        self.gain.solve(&mut self.step);
-        let mut row = std::mem::take(&mut self.row);
-        let mut worst = None;
-        let mut largest = 0.0;
-        for meter in (0..self.w.len()).filter(|meter| self.w[*meter] > 0.0) {
-            let before = self.row_of(wiring, meter, &mut row);
-            let residual = before - row.iter().zip(&self.step).map(|(h, s)| h * s).sum::<f64>();
-            self.gain.forward(&mut row);
-            let omega = 1.0 - row[..self.unknowns].iter().map(|y| y * y).sum::<f64>();
-            let normalised = residual.abs() / omega.sqrt();
-            if omega > CRITICAL && normalised > largest * (1.0 + 1e-9) {
-                (worst, largest) = (Some(meter), normalised);
-            }
-        }
-        self.row = row;
-        worst
     }
 
     /// Fitted voltage of a bus, kV.

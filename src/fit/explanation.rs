@@ -51,6 +51,11 @@ pub(super) struct Explanation {
 }
 
 impl Explanation {
+    /// Whether no measurement had to be set aside.
+    fn suffices(&self) -> bool {
+        self.verdict.passes() && self.set_aside.is_empty()
+    }
+
     /// Smaller is better.
     fn blame(&self) -> (bool, usize) {
         (!self.verdict.passes(), self.statuses.len() + self.set_aside.len())
@@ -77,8 +82,11 @@ impl Fitter {
             statuses.push(self.meters.closed[circuit]);
         }
         let mut best = self.try_topology(topology, statuses);
+        if best.suffices() {
+            return best;
+        }
         let mut changes = Vec::new();
-        while !best.verdict.passes() || !best.set_aside.is_empty() {
+        while !best.suffices() {
             let better = self
                 .changes(&best, &carrying)
                 .into_iter()

@@ -257,7 +257,9 @@ impl Estimator {
                     let mut row = std::mem::take(&mut self.row);
                     let residual = self.row_of(wiring, meter, &mut row);
                     let factor = loss.take(residual);
-                    row.iter_mut().for_each(|a| *a *= factor);
+                    for a in &mut row {
+                        *a *= factor;
+                    }
                     self.gain.add_row(&row, factor * residual);
                     self.row = row;
                 }

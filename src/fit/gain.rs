@@ -1,4 +1,4 @@
-//! The normal equations: the gain matrix HᵀWH, its right-hand side and its Cholesky factor (Abur & Expósito 2004, §2.6).
+//! The normal equations: the gain matrix `HᵀWH`, its right-hand side and its Cholesky factor (Abur & Expósito 2004, §2.6).
 
 /// Unknowns are per unit of nominal and radians; one that no measurement fixes to within this spread is not known.
 const WIDEST_SPREAD: f64 = 0.1;

@@ -21,7 +21,7 @@ fn assert_true_state(world: &World, fit: &Fit, within: f64) {
 #[test]
 fn any_corridor_gives_back_its_state() {
     for seed in 0..300 {
-        let world = random_world(seed, seed as usize % 6);
+        let world = random_world(seed, seed % 6);
         let fit = world.fit(&world.exact());
         assert!(fit.chi2.unwrap() < 1e-12, "seed {seed}: {:?}", fit.chi2);
         assert!(fit.suspects.is_empty() && fit.missing.is_empty() && fit.assumed.is_empty(), "seed {seed}");
@@ -32,7 +32,7 @@ fn any_corridor_gives_back_its_state() {
 #[test]
 fn angle_channels_are_optional() {
     for seed in 0..300 {
-        let world = random_world(seed, seed as usize % 4);
+        let world = random_world(seed, seed % 4);
         let mut snapshot = world.exact();
         world.drop(&mut snapshot, |point| matches!(point, Point::Deg(_)));
         let fit = world.fit(&snapshot);

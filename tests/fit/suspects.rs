@@ -73,7 +73,7 @@ fn without_angles_too() {
 fn beside_stations_too() {
     let mut named = 0;
     for seed in 0..60 {
-        let world = random_world(seed, 1 + seed as usize % 3);
+        let world = random_world(seed, 1 + seed % 3);
         let check = |snapshot: &Snapshot, point| named += usize::from(is_named(&world, snapshot, point));
         wrong_by(&world, &world.exact(), &[0.9, -1.0, 1000.0], check);
     }

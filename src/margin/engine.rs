@@ -114,7 +114,7 @@ impl Engine {
         }
         let intact = scene.intact(&stress, angle);
         let tightest = tightest(outages.iter().map(|outage| outage.limit_mw), &intact.limit_mw, &stress);
-        let variance = scene.variance(&stress, z, &tightest, now.covariance);
+        let variance = scene.variance(z, &tightest, now.covariance);
         let reclose = reclose::judge(corridor, now.topology, &scene.view(&stress), &stress, angle, now.voltage);
         let judgement = Judgement {
             exporter,
@@ -286,7 +286,7 @@ impl Scene<'_> {
     }
 
     /// gᵀ C g with g the gradient of the tightest limit by R and X of both sides; the transfer is measured.
-    fn variance(&self, stress: &Stress, z: [C64; 2], tightest: &Tightest, covariance: &Matrix4<f64>) -> f64 {
+    fn variance(&self, z: [C64; 2], tightest: &Tightest, covariance: &Matrix4<f64>) -> f64 {
         const STEP: f64 = 1e-3;
         let mut gradient = nalgebra::Vector4::zeros();
         for (parameter, slope) in gradient.iter_mut().enumerate() {

@@ -22,8 +22,7 @@ impl Well {
     /// `None` where the curve does not carry P_m.
     pub fn new(curve: PowerAngle, p_m_mw: f64) -> Option<Self> {
         let sine = (p_m_mw - curve.mean_mw) / curve.amplitude_mw;
-        // Written so that a NaN is no equilibrium either.
-        if !(sine.abs() <= 1.0) {
+        if sine.is_nan() || sine.abs() > 1.0 {
             return None;
         }
         let from_shift = sine.asin();

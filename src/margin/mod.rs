@@ -13,6 +13,7 @@ mod record;
 mod root;
 mod stress;
 mod swing;
+mod trend;
 mod view;
 
 pub use engine::{Engine, Judgement, Operating};
@@ -21,3 +22,4 @@ pub use picture::{OutagePicture, Picture};
 pub use power_angle::PowerAngle;
 pub use record::{Action, Binding, Criterion, Intact, IntactLimits, OutageLimits, OutageRecord, Reclose};
 pub use swing::{Moment, Swing};
+pub use trend::Trend;

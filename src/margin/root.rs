@@ -11,7 +11,7 @@ pub(super) fn bracketed(
     const ITERATIONS: usize = 100;
     let holds = fa >= 0.0;
     // `a` is the newest point, `b` the one across the root, `c` the one before.
-    let (mut c, mut fc) = (a, fa);
+    let (mut c, mut fc);
     let mut t = 0.5;
     for _ in 0..ITERATIONS {
         let x = a + t * (b - a);

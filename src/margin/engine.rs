@@ -146,6 +146,7 @@ impl Engine {
             actions: Vec::new(),
             reclose,
             picture: Picture { curve: stress.swing_curve(&point), p_m_mw: point.p_m_mw, angle_rad: point.angle_rad },
+            circuits,
         };
         let actions = self.actions(corridor, now.topology, exporter, &loads, &stress, stress.p_m_mw(angle));
         Judgement { actions, ..judgement }

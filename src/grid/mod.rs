@@ -144,6 +144,16 @@ pub enum Line {
     },
 }
 
+impl Line {
+    /// Series reactance of the whole circuit, ohm.
+    pub fn x_ohm(&self) -> f64 {
+        match *self {
+            Self::PerKm { length_km, x_ohm_per_km, .. } => length_km * x_ohm_per_km,
+            Self::Totals { x_ohm, .. } => x_ohm,
+        }
+    }
+}
+
 /// A series capacitor.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Bank {

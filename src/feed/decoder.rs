@@ -4,8 +4,10 @@ use super::{Channels, Frame, Tally, csv::Rows, draft::Draft, jsonl, line_error::
 
 /// How frames are written.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) enum Format {
+pub enum Format {
+    /// One JSON object a line.
     JsonLines,
+    /// A header, then one row a frame.
     Csv,
 }
 
@@ -20,7 +22,7 @@ impl Format {
 
 /// Turns the bytes of one stream into frames. Pure: no I/O, and memory bounded by the longest line looked at.
 #[derive(Debug)]
-pub(super) struct Decoder {
+pub struct Decoder {
     lines: Lines,
     parser: Parser,
 }
@@ -34,6 +36,7 @@ struct Parser {
 }
 
 impl Decoder {
+    /// At the beginning of a stream.
     pub fn new(format: Format, channels: Arc<Channels>) -> Self {
         let draft = Draft::new(&channels);
         let rows = (format == Format::Csv).then(Rows::new);

@@ -11,7 +11,12 @@ use serde_json::value::RawValue;
 use super::{Channels, Frame, Quality, Tally, draft::Draft, line_error::LineError, rfc3339};
 
 /// Reads the frame on one line.
-pub(super) fn frame(line: &[u8], channels: &Channels, draft: &mut Draft, tally: &mut Tally) -> Result<Frame, LineError> {
+pub(super) fn frame(
+    line: &[u8],
+    channels: &Channels,
+    draft: &mut Draft,
+    tally: &mut Tally,
+) -> Result<Frame, LineError> {
     let text = str::from_utf8(line).map_err(|_| LineError::NotUtf8)?;
     match object(text) {
         Ok(object) => object.frame(channels, draft, tally),

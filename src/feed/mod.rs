@@ -1,18 +1,34 @@
 //! Frames: what they are, where they come from, and what of them still stands.
 
 mod channel;
+mod connect;
 mod csv;
 mod decoder;
 mod draft;
+mod follow;
 mod frame;
+mod input;
 mod jsonl;
 mod line_error;
 mod lines;
+mod listen;
+mod live;
+mod merge;
+mod monitor;
+mod opening;
+mod places;
+mod recorded;
 mod snapshot;
+mod stream;
 mod tally;
 
 pub use channel::{Channels, End, Point, Quantity, Slot};
+pub use decoder::{Decoder, Format};
 pub use frame::{Frame, Quality, Reading};
+pub use input::{Address, Input, InputError};
+pub use live::{Feed, OpenError, Patience};
+pub use monitor::{InputState, InputStatus, Monitor};
+pub use recorded::{Reader, Recorded};
 pub use snapshot::{Holder, Snapshot};
 pub use tally::{Named, Tally};
 

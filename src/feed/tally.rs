@@ -103,7 +103,7 @@ impl fmt::Display for Named {
 }
 
 /// Text from outside, fit for a terminal: no control characters, bounded.
-fn printable(text: &str) -> String {
+pub(super) fn printable(text: &str) -> String {
     let mut shown: String =
         text.chars().map(|c| if is_harmless(c) { c } else { '\u{fffd}' }).take(TEXT_CHARS + 1).collect();
     if let Some((end, _)) = shown.char_indices().nth(TEXT_CHARS) {

@@ -110,12 +110,12 @@ impl Point {
             Self::Deg(_) => up_to(3600.0),
             Self::Flow(circuit, end, _) => {
                 let circuit = &corridor.circuits[circuit];
-                up_to(ABSURD_POWER * peak_mw(circuit.between[end as usize], circuit.line.x_ohm()))
+                up_to(ABSURD_POWER * peak_mw(circuit.between[end as usize], circuit.line.totals().x_ohm))
             }
             Self::Load(bus, _) => {
                 let circuits = corridor.circuits.iter().filter(|circuit| circuit.between.contains(&bus));
                 let source_x_ohm = corridor.sides.get(bus).map_or(f64::INFINITY, |side| side.source.x_ohm);
-                let sum: f64 = circuits.map(|circuit| peak_mw(bus, circuit.line.x_ohm())).sum();
+                let sum: f64 = circuits.map(|circuit| peak_mw(bus, circuit.line.totals().x_ohm)).sum();
                 up_to(ABSURD_POWER * (sum + peak_mw(bus, source_x_ohm)))
             }
             Self::StoredEnergy(_) => f64::MIN_POSITIVE..=f64::MAX,

@@ -66,8 +66,7 @@ fn broken_configurations_say_all_that_is_wrong() {
 #[test]
 fn every_key_is_read() {
     let config = Config::parse(VALID, "valid.toml").unwrap_or_else(|errors| panic!("{errors}"));
-    assert_eq!(config.grid.frequency_hz, 50.0);
-    assert_eq!(config.time_zone, chrono_tz::Europe::Oslo);
+    assert_eq!((config.grid.frequency_hz, config.time_zone), (50.0, chrono_tz::Europe::Oslo));
     assert_eq!(
         config.measurement,
         MeasurementSettings { kv_sigma_pct: 0.2, angle_sigma_deg: 0.2, power_sigma_pct: 0.5 }
@@ -176,7 +175,7 @@ fn files_that_cannot_be_read_say_why() {
 
 #[test]
 fn a_flood_of_errors_is_cut_short() {
-    let unknown: String = (0..50_000).map(|n| format!("key_{n} = {n}\n")).collect();
+    let unknown = (0..50_000).map(|n| format!("key_{n} = {n}\n")).collect::<Vec<_>>().concat();
     let errors = Config::parse(&format!("{unknown}{VALID}"), "flood.toml").expect_err("unknown keys");
     assert_eq!(errors.errors.len() + errors.unlisted, 50_000);
     assert!(errors.to_string().len() < 100_000);
@@ -184,8 +183,8 @@ fn a_flood_of_errors_is_cut_short() {
 
 #[test]
 fn a_crowd_of_circuits_is_refused() {
-    let circuits: String =
-        (0..200).map(|n| format!("[[corridor.circuit]]\nname = \"C{n}\"\nx_ohm = 1\nr_ohm = 0\nb_us = 0\n")).collect();
+    let circuit = |n| format!("[[corridor.circuit]]\nname = \"C{n}\"\nx_ohm = 1\nr_ohm = 0\nb_us = 0\n");
+    let circuits = (0..200).map(circuit).collect::<Vec<_>>().concat();
     let text = fs::read_to_string("tests/cases/corridor-08/config.toml").expect("it is there") + &circuits;
     let errors = Config::parse(&text, "crowd.toml").expect_err("too many");
     assert_eq!(found(&errors), ["26 corridor[0].circuit: has 203 entries; at most 200 are possible"]);

@@ -205,7 +205,9 @@ fn percent(fraction: f64) -> String {
 
 /// To four significant digits, without an exponent.
 fn figure(number: f64) -> String {
-    let size = number.abs();
-    let decimals = (0..9).find(|decimals| size * 10_f64.powi(*decimals) >= 1000.0).unwrap_or(9);
-    if number == 0.0 { "0".to_owned() } else { format!("{number:.*}", usize::try_from(decimals).unwrap_or(9)) }
+    let (mut decimals, mut scaled) = (0, number.abs());
+    while scaled < 1000.0 && decimals < 9 {
+        (decimals, scaled) = (decimals + 1, 10.0 * scaled);
+    }
+    if number == 0.0 { "0".to_owned() } else { format!("{number:.decimals$}") }
 }

@@ -214,9 +214,8 @@ fn kundur_two_areas_against_four_machines() {
 /// 50 kA, 5 % voltage drop or 30 % stability margin: about 1.0 SIL over 300 miles, 0.8 over 400, at about 44°.
 #[test]
 fn long_lines_carry_what_the_loadability_curve_says() {
-    for (nominal_kv, r, x, b) in
-        [(345.0_f64, 0.037, 0.367, 4.518), (500.0, 0.028, 0.325, 5.2), (765.0, 0.012, 0.329, 4.978)]
-    {
+    let lines: [[f64; 4]; 3] = [[345.0, 0.037, 0.367, 4.518], [500.0, 0.028, 0.325, 5.2], [765.0, 0.012, 0.329, 4.978]];
+    for [nominal_kv, r, x, b] in lines {
         let sil = nominal_kv * nominal_kv / (x / (b * 1e-6)).sqrt();
         for (miles, of_sil) in [(300.0, 1.0), (400.0, 0.8)] {
             let source_x = nominal_kv / 3.0_f64.sqrt() / 50.0;

@@ -1,1 +1,5 @@
-//! Report.
+//! Assessments and configurations for other programs and other people: one file a format.
+
+pub mod check;
+pub mod jsonl;
+mod table;

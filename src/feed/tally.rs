@@ -1,0 +1,100 @@
+use std::{collections::BTreeSet, fmt, sync::Arc};
+
+use super::line_error::LineError;
+
+/// Names and reasons kept of each sort: the first few show what is wrong.
+const KEPT: usize = 5;
+/// Longest text kept from outside, characters.
+const TEXT_CHARS: usize = 120;
+
+/// What came in through one input, and what of it could not be used.
+#[derive(Debug, Clone, Default, PartialEq, Eq)]
+pub struct Tally {
+    /// Frames read.
+    pub frames: u64,
+    /// Lines that are no frame.
+    pub malformed: u64,
+    /// The first of these: line number and reason, without control characters.
+    pub reasons: Vec<(u64, String)>,
+    /// Values of channels that the configuration does not know.
+    pub unknown: Named,
+    /// Values that are not numbers, absurd, or given twice in one frame.
+    pub invalid: Named,
+    /// Frames dropped because they are older than one before them.
+    pub old: u64,
+    /// Frames dropped because the program did not keep up with datagrams.
+    pub overrun: u64,
+    /// Connections opened again.
+    pub reconnects: u64,
+    /// What went wrong last outside the frames themselves: a broken archive, a refused connection.
+    pub trouble: Option<String>,
+}
+
+/// A count, and the first few names it is about.
+#[derive(Debug, Clone, Default, PartialEq, Eq)]
+pub struct Named {
+    /// How many.
+    pub count: u64,
+    /// Some of the names, without control characters.
+    pub names: BTreeSet<Arc<str>>,
+}
+
+impl Named {
+    pub(super) fn count(&mut self, name: &str) {
+        self.count += 1;
+        if self.names.len() < KEPT && !self.names.contains(name) {
+            self.names.insert(printable(name).into());
+        }
+    }
+}
+
+impl Tally {
+    /// Counts a line that is no frame.
+    pub(super) fn malformed(&mut self, line: u64, error: &LineError) {
+        self.malformed += 1;
+        if self.reasons.len() < KEPT {
+            self.reasons.push((line, printable(&error.to_string())));
+        }
+    }
+
+    /// Keeps what went wrong outside the frames.
+    pub(super) fn trouble(&mut self, error: &impl fmt::Display) {
+        self.trouble = Some(printable(&error.to_string()));
+    }
+
+    /// What could not be used, in one line each; nothing when all could.
+    pub fn findings(&self) -> Vec<String> {
+        let reasons = self.reasons.iter().map(|(line, reason)| format!("line {line}: {reason}"));
+        let counts = [
+            (self.malformed, "malformed lines skipped", such_as(reasons)),
+            (self.unknown.count, "values of unknown channels ignored", such_as(self.unknown.names.iter())),
+            (self.invalid.count, "values invalid", such_as(self.invalid.names.iter())),
+            (self.old, "frames dropped, older than one before them", String::new()),
+            (self.overrun, "frames dropped, more than could be used in time", String::new()),
+            (self.reconnects, "connections opened again", String::new()),
+        ];
+        let counted = counts.into_iter().filter(|(count, ..)| *count > 0);
+        counted.map(|(count, what, which)| format!("{count} {what}{which}")).chain(self.trouble.clone()).collect()
+    }
+}
+
+fn such_as(some: impl Iterator<Item = impl ToString>) -> String {
+    let some: Vec<String> = some.map(|one| one.to_string()).collect();
+    if some.is_empty() { String::new() } else { format!(", such as {}", some.join("; ")) }
+}
+
+/// Text from outside, fit for a terminal: no control characters, bounded.
+pub(super) fn printable(text: &str) -> String {
+    let mut shown: String =
+        text.chars().map(|c| if is_harmless(c) { c } else { '\u{fffd}' }).take(TEXT_CHARS + 1).collect();
+    if let Some((end, _)) = shown.char_indices().nth(TEXT_CHARS) {
+        shown.truncate(end);
+        shown.push('…');
+    }
+    shown
+}
+
+/// Neither a control character nor one that reorders the text around it (Unicode Standard Annex 9).
+fn is_harmless(c: char) -> bool {
+    !c.is_control() && !matches!(c, '\u{200e}' | '\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}')
+}

@@ -9,7 +9,7 @@ mod start;
 use super::{
     gain::{Gain, Singular},
     meter::{Meter, Meters},
-    wiring::{Flow, Wiring},
+    wiring::{Flow, Wire, Wiring},
 };
 use crate::{
     grid::{BusIndex, Corridor, FROM, TO},
@@ -97,36 +97,38 @@ fn wrapped(angle: f64) -> f64 {
 impl Estimator {
     /// Takes the measurements that concern this topology and lays the unknowns out.
     pub fn prepare(&mut self, corridor: &Corridor, meters: &Meters, wiring: &Wiring, z: &[f64], w: &[f64]) {
-        let buses = corridor.buses.len();
         self.z.clear();
         self.z.extend_from_slice(z);
         self.w.clear();
         self.w.resize(w.len(), 0.0);
         self.assumed.clear();
         self.assumed.resize(w.len(), 0.0);
-        for wire in &wiring.wires {
-            for meter in wire.meters {
-                self.w[meter] = w[meter];
-            }
+        for meter in wiring.wires.iter().flat_map(|wire| wire.meters) {
+            self.w[meter] = w[meter];
         }
-        let mut angles = [0, 0];
-        for bus in 0..buses {
-            let Some(side) = wiring.side[bus] else { continue };
+        for (bus, _) in corridor.buses.iter().enumerate().filter(|(bus, _)| wiring.live(*bus)) {
             self.w[Meters::kv(bus)] = w[Meters::kv(bus)];
-            angles[side] += usize::from(w[Meters::deg(bus)] > 0.0);
-            if bus > TO {
-                let configured = corridor.buses[bus].load.map_or([0.0; 2], |load| [load.mw, load.mvar]);
-                for (meter, power) in Meters::load(bus).into_iter().zip(configured) {
-                    self.w[meter] = w[meter];
-                    if w[meter] == 0.0 {
-                        self.w[meter] = meters.assumed_weight(meter);
-                        self.z[meter] = 0.0;
-                        self.assumed[meter] = power;
-                    }
+            self.w[Meters::deg(bus)] = w[Meters::deg(bus)];
+        }
+        for (bus, station) in corridor.buses.iter().enumerate().skip(TO + 1).filter(|(bus, _)| wiring.live(*bus)) {
+            let configured = station.load.map_or([0.0; 2], |load| [load.mw, load.mvar]);
+            for (meter, power) in Meters::load(bus).into_iter().zip(configured) {
+                self.w[meter] = w[meter];
+                if w[meter] == 0.0 {
+                    (self.z[meter], self.w[meter]) = (0.0, meters.assumed_weight(meter));
+                    self.assumed[meter] = power;
                 }
             }
         }
-        let angles_used = angles[FROM] + angles[TO] >= 2;
+        self.lay_out(wiring);
+    }
+
+    fn lay_out(&mut self, wiring: &Wiring) {
+        let mut angles = [0, 0];
+        for (bus, side) in wiring.side.iter().enumerate() {
+            angles[side.unwrap_or(TO)] += usize::from(self.w[Meters::deg(bus)] > 0.0);
+        }
+        let angles_used = angles[FROM] + angles[TO] > 1;
         self.angle_known = wiring.joined() || (angles[FROM] > 0 && angles[TO] > 0);
         self.unknowns = 0;
         let mut next = |wanted: bool| {
@@ -136,15 +138,16 @@ impl Estimator {
         };
         self.v_at.clear();
         self.angle_at.clear();
-        for bus in 0..buses {
+        for bus in 0..wiring.side.len() {
             let live = wiring.live(bus);
             self.v_at.push(next(live));
             self.angle_at.push(next(live && bus != TO && (bus != FROM || self.angle_known)));
-            if live && angles_used {
-                self.w[Meters::deg(bus)] = w[Meters::deg(bus)];
+            if !angles_used {
+                self.w[Meters::deg(bus)] = 0.0;
             }
         }
         self.offset_at = next(angles_used);
+        // What is fixed goes to the one place past the unknowns.
         let fixed = self.unknowns;
         for at in self.v_at.iter_mut().chain(&mut self.angle_at).chain([&mut self.offset_at]) {
             *at = fixed.min(*at);
@@ -206,66 +209,59 @@ impl Estimator {
         for wire in &wiring.wires {
             let [a, b] = wire.buses;
             let flow = wire.flow([self.v[a], self.v[b]], self.angle[a] - self.angle[b]);
-            // First over the two voltages and the angle across, then spread to the unknowns.
-            let (mut square, mut side) = ([[0.0; 3]; 3], [0.0; 3]);
-            for k in 0..4 {
-                let w = self.w[wire.meters[k]];
-                let residual = w * (self.z[wire.meters[k]] - flow.s[k]);
-                let factor = loss.take(residual);
-                let row = flow.d[k].map(|d| factor * w * d);
-                for i in 0..3 {
-                    side[i] += row[i] * factor * residual;
-                    for j in 0..=i {
-                        square[i][j] += row[i] * row[j];
-                    }
-                }
-            }
-            let at = [
-                (self.v_at[a], 0, 1.0),
-                (self.v_at[b], 1, 1.0),
-                (self.angle_at[a], 2, 1.0),
-                (self.angle_at[b], 2, -1.0),
-            ];
-            for (n, (i, k, sign)) in at.into_iter().enumerate() {
-                self.gain.b[i] += sign * side[k];
-                for &(j, l, other) in &at[..=n] {
-                    self.gain.add(i, j, sign * other * square[k.max(l)][k.min(l)]);
-                }
-            }
+            self.add_flow(wire, &flow, &mut loss);
             self.flows.push(flow);
         }
+        let mut row = std::mem::take(&mut self.row);
         for bus in (0..wiring.side.len()).filter(|bus| wiring.live(*bus)) {
-            let kv = Meters::kv(bus);
-            let w = self.w[kv];
-            let residual = w * (self.z[kv] - self.v[bus]);
+            let (kv, deg) = (Meters::kv(bus), Meters::deg(bus));
+            let residual = self.w[kv] * (self.z[kv] - self.v[bus]);
             let factor = loss.take(residual);
-            self.gain.b[self.v_at[bus]] += factor * factor * w * residual;
-            self.gain.add(self.v_at[bus], self.v_at[bus], (factor * w).powi(2));
-            let deg = Meters::deg(bus);
+            self.gain.add_ones(&[self.v_at[bus]], factor * self.w[kv], factor * residual);
             if self.w[deg] > 0.0 {
-                let w = self.w[deg];
-                let residual = w * wrapped(self.z[deg] - self.angle[bus] - self.offset);
+                let residual = self.w[deg] * wrapped(self.z[deg] - self.angle[bus] - self.offset);
                 let factor = loss.take(residual);
-                for at in [self.angle_at[bus], self.offset_at] {
-                    self.gain.b[at] += factor * factor * w * residual;
-                    self.gain.add(at, at, (factor * w).powi(2));
-                }
-                self.gain.add(self.angle_at[bus], self.offset_at, (factor * w).powi(2));
+                let at = [self.angle_at[bus], self.offset_at];
+                self.gain.add_ones(&at, factor * self.w[deg], factor * residual);
             }
-            for meter in Meters::load(bus) {
-                if self.w[meter] > 0.0 {
-                    let mut row = std::mem::take(&mut self.row);
-                    let residual = self.row_of(wiring, meter, &mut row);
-                    let factor = loss.take(residual);
-                    for a in &mut row {
-                        *a *= factor;
-                    }
-                    self.gain.add_row(&row, factor * residual);
-                    self.row = row;
+            for load in Meters::load(bus).into_iter().filter(|load| self.w[*load] > 0.0) {
+                let residual = self.row_of(wiring, load, &mut row);
+                let factor = loss.take(residual);
+                for derivative in &mut row {
+                    *derivative *= factor;
+                }
+                self.gain.add_row(&row, factor * residual);
+            }
+        }
+        self.row = row;
+        loss.sum
+    }
+
+    /// Adds a circuit's four measurements: first over its two voltages and the angle across, then spread to the unknowns.
+    fn add_flow(&mut self, wire: &Wire, flow: &Flow, loss: &mut Loss) {
+        let (mut square, mut side) = ([[0.0; 3]; 3], [0.0; 3]);
+        for (k, meter) in wire.meters.into_iter().enumerate() {
+            let residual = self.w[meter] * (self.z[meter] - flow.s[k]);
+            let factor = loss.take(residual);
+            let row = flow.d[k].map(|d| factor * self.w[meter] * d);
+            for i in 0..3 {
+                side[i] += row[i] * factor * residual;
+                for j in 0..=i {
+                    square[i][j] += row[i] * row[j];
                 }
             }
         }
-        loss.sum
+        let [a, b] = wire.buses;
+        let at = [(self.v_at[a], 0), (self.v_at[b], 1), (self.angle_at[a], 2), (self.angle_at[b], 2)];
+        let signs = [1.0, 1.0, 1.0, -1.0];
+        for n in 0..4 {
+            let (i, k) = at[n];
+            self.gain.b[i] += signs[n] * side[k];
+            for m in 0..=n {
+                let (j, l) = at[m];
+                self.gain.add(i, j, signs[n] * signs[m] * square[k.max(l)][k.min(l)]);
+            }
+        }
     }
 
     /// Weighted derivatives of a measurement by the unknowns; returns its weighted residual. Flows must be up to date.

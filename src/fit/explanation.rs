@@ -81,7 +81,7 @@ impl Fitter {
             topology.closed[circuit] = true;
             statuses.push(self.meters.closed[circuit]);
         }
-        let mut best = self.try_topology(topology, statuses);
+        let mut best = self.try_topology(topology, statuses, usize::MAX);
         if best.suffices() {
             return best;
         }
@@ -107,6 +107,10 @@ impl Fitter {
 
     /// Changes worth a try.
     fn changes(&self, present: &Explanation, carrying: &[usize]) -> Vec<Change> {
+        if present.set_aside.is_empty() && present.verdict.limit.is_none() {
+            // Too little is measured to test anything.
+            return Vec::new();
+        }
         let closed = |circuit: &usize| present.topology.closed[*circuit];
         let circuits = 0..self.corridor.circuits.len();
         let mut changes: Vec<Change> =
@@ -139,15 +143,18 @@ impl Fitter {
                 statuses.push(self.meters.inserted[circuit][bank]);
             }
         }
-        self.try_topology(topology, statuses)
+        // No use going on where more is to blame than before.
+        let most = if present.verdict.passes() { present.blame().1.saturating_sub(statuses.len()) } else { usize::MAX };
+        self.try_topology(topology, statuses, most)
     }
 
-    /// Fits on a topology and sets aside one measurement after another until the test passes or nothing is left to spare.
-    fn try_topology(&mut self, topology: Topology, statuses: Vec<Slot>) -> Explanation {
+    /// Fits on a topology and sets aside one measurement after another, up to so many, until the test passes or nothing is left
+    /// to spare.
+    fn try_topology(&mut self, topology: Topology, statuses: Vec<Slot>, most: usize) -> Explanation {
         self.wire(&topology);
         let mut set_aside = Vec::new();
         let mut verdict = self.solve();
-        while verdict.limit.is_some() && !verdict.passes() {
+        while verdict.limit.is_some() && !verdict.passes() && set_aside.len() < most {
             let Some(worst) = self.estimator.worst(&self.wiring) else { break };
             self.estimator.w[worst] = 0.0;
             set_aside.push(worst);

@@ -31,6 +31,14 @@ impl Gain {
         self.g[row * (self.unknowns + 1) + column] += value;
     }
 
+    /// Adds a measurement of the plain sum of some unknowns.
+    pub fn add_ones(&mut self, at: &[usize], weight: f64, residual: f64) {
+        for (n, &i) in at.iter().enumerate() {
+            self.b[i] += weight * residual;
+            at[..=n].iter().for_each(|&j| self.add(i, j, weight * weight));
+        }
+    }
+
     /// Adds a weighted row over all unknowns and its weighted residual.
     pub fn add_row(&mut self, row: &[f64], residual: f64) {
         for (i, &a) in row.iter().enumerate().filter(|(_, a)| **a != 0.0) {

@@ -7,6 +7,17 @@ const ORDER: usize = 16;
 /// Largest last term of a step, rad.
 const TOLERANCE_RAD: f64 = 1e-13;
 
+/// 1/k.
+const RECIPROCAL: [f64; ORDER + 1] = {
+    let mut reciprocal = [0.0; ORDER + 1];
+    let mut k = 1;
+    while k <= ORDER {
+        reciprocal[k] = 1.0 / k as f64;
+        k += 1;
+    }
+    reciprocal
+};
+
 /// M δ'' = P_m − P(δ).
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Swing {
@@ -90,10 +101,13 @@ impl Swing {
         None
     }
 
-    /// The recursion of sin and cos of a series: (sin)' = cos·δ', (cos)' = −sin·δ'. Only every `stride`-th term of the
-    /// angle is there: all of them, or from rest, where time runs alike both ways, the even ones.
     fn jet(&self, start: Moment) -> Jet {
-        let stride = if start.speed_rad_s == 0.0 { 2 } else { 1 };
+        // From rest, time runs alike both ways, and only the even terms are there.
+        if start.speed_rad_s == 0.0 { self.series::<2>(start) } else { self.series::<1>(start) }
+    }
+
+    /// By the recursion (sin)' = cos·δ', (cos)' = −sin·δ' over every `STRIDE`-th term.
+    fn series<const STRIDE: usize>(&self, start: Moment) -> Jet {
         let mut angle = [0.0; ORDER + 1];
         // slope[i] = i · angle[i], the coefficients of t·δ'.
         let mut slope = [0.0; ORDER + 1];
@@ -104,24 +118,23 @@ impl Swing {
         angle[1] = start.speed_rad_s;
         slope[1] = start.speed_rad_s;
         let restoring = self.curve.amplitude_mw / self.inertia;
-        let push = (self.p_m_mw - self.curve.mean_mw) / self.inertia;
+        let mut acceleration = (self.p_m_mw - self.curve.mean_mw) / self.inertia - restoring * sin[0];
         let mut k = 0;
         loop {
-            let acceleration = if k == 0 { push - restoring * sin[0] } else { -restoring * sin[k] };
-            let order = (k + 2) as f64;
-            slope[k + 2] = acceleration / (order - 1.0);
-            angle[k + 2] = slope[k + 2] / order;
-            k += stride;
+            slope[k + 2] = acceleration * RECIPROCAL[k + 1];
+            angle[k + 2] = slope[k + 2] * RECIPROCAL[k + 2];
+            k += STRIDE;
             if k > ORDER - 2 {
                 return Jet { start, angle };
             }
             let (mut up, mut down) = (0.0, 0.0);
-            for j in (0..k).step_by(stride) {
+            for j in (0..k).step_by(STRIDE) {
                 up += slope[k - j] * cos[j];
                 down += slope[k - j] * sin[j];
             }
-            sin[k] = up / k as f64;
-            cos[k] = -down / k as f64;
+            sin[k] = up * RECIPROCAL[k];
+            cos[k] = -down * RECIPROCAL[k];
+            acceleration = -restoring * sin[k];
         }
     }
 }
@@ -138,7 +151,8 @@ impl Jet {
 
     /// The larger of the last two terms after a time: from rest, every other term is zero.
     fn last_term(&self, time_s: f64) -> f64 {
-        let power = (1..ORDER).fold(1.0, |power, _| power * time_s);
+        const { assert!(ORDER == 16) };
+        let power = time_s.powi(15);
         (self.angle[ORDER - 1] * power).abs().max((self.angle[ORDER] * power * time_s).abs())
     }
 

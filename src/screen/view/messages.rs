@@ -1,0 +1,42 @@
+use ratatui::{
+    layout::Rect,
+    text::{Line, Span},
+};
+
+use super::{Theme, text};
+use crate::screen::state::{App, EVENTS_KEPT};
+
+/// What happened, newest first.
+pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
+    let width = usize::from(area.width);
+    let mut lines = Vec::new();
+    if let Some(parcel) = &app.parcel {
+        for (name, standing) in &parcel.feed.inputs {
+            lines.push(Line::raw(text::cut(&format!(" input {name}: {standing}"), width)));
+        }
+        for (what, count) in &parcel.feed.tallies {
+            lines.push(Line::raw(text::cut(&format!(" feed: {count} × {what}"), width)));
+        }
+    }
+    lines.push(Line::styled(
+        format!(" Changes of state, of data and of switches, newest first; the last {EVENTS_KEPT} are kept."),
+        theme.quiet(),
+    ));
+    let events = app.parcel.iter().flat_map(|parcel| parcel.chronicle.events.iter().rev());
+    let name_width = (width / 5).clamp(8, 24);
+    for event in events {
+        let time = event.time.with_timezone(&app.zone).format(" %-d %b %H:%M:%S ").to_string();
+        let mark = event.state.map_or(Span::raw(" "), |state| Span::styled(theme.mark(state), theme.badge(state)));
+        let corridor = text::left(event.corridor.as_deref().unwrap_or("feed"), name_width);
+        let room = width.saturating_sub(time.chars().count() + name_width + 3);
+        lines.push(Line::from(vec![
+            Span::styled(text::left(&time, 17), theme.quiet()),
+            mark,
+            Span::raw(format!(" {corridor} {}", text::cut(&event.text, room))),
+        ]));
+    }
+    if lines.len() == 1 {
+        lines.push(Line::raw(" Nothing yet."));
+    }
+    lines
+}

@@ -1,0 +1,14 @@
+//! The screen as it is drawn, and how it answers keys.
+
+#[path = "screen/sample.rs"]
+#[allow(dead_code, reason = "shared with the library's own tests")]
+mod sample;
+#[path = "screen/stage.rs"]
+mod stage;
+
+#[path = "screen/drawings.rs"]
+mod drawings;
+#[path = "screen/keys.rs"]
+mod keys;
+#[path = "screen/unbreakable.rs"]
+mod unbreakable;

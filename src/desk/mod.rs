@@ -2,10 +2,8 @@
 
 mod assessment;
 
-pub use assessment::{
-    Action, Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Intact, IntactLimits,
-    OutageLimits, OutageRecord, Reclose, SourceRecord, State,
-};
+pub use crate::margin::{Action, Binding, Criterion, Intact, IntactLimits, OutageLimits, OutageRecord, Reclose};
+pub use assessment::{Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, SourceRecord, State};
 
 use crate::{config::Config, feed::Channels, feed::Snapshot};
 

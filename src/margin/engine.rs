@@ -11,8 +11,9 @@ use super::{
     view::View,
 };
 use crate::{
+    feed::End,
     grid::{BankIndex, BusIndex, Circuit, Corridor, FROM, TO},
-    network::{Admittance, C64, Topology},
+    network::{AMPERES, Admittance, C64, Topology},
 };
 
 /// The present state of a corridor and what stands behind its terminals.
@@ -61,6 +62,17 @@ pub struct Judgement {
     pub reclose: Vec<Reclose>,
     /// The present curve, sources of the swing.
     pub picture: Picture,
+    /// By circuit, also the open ones.
+    pub circuits: Vec<CircuitFlow>,
+}
+
+/// What a circuit carries.
+#[derive(Debug, Clone, Copy, PartialEq, Default)]
+pub struct CircuitFlow {
+    /// MW into it at its first bus.
+    pub from_mw: f64,
+    /// The larger of its end currents, A.
+    pub amperes: f64,
 }
 
 /// What sets the headroom, by index.
@@ -90,7 +102,8 @@ impl Engine {
 
     /// Judges a state in which closed circuits join the terminals.
     pub fn judge(&mut self, corridor: &Corridor, now: &Operating) -> Judgement {
-        let exporter = self.exporter(corridor, now);
+        let (circuits, sent_mw) = self.flows(corridor, now);
+        let exporter = if sent_mw[TO] > sent_mw[FROM] { TO } else { FROM };
         let importer = 1 - exporter;
         let loads: Vec<_> = (0..corridor.buses.len()).map(|bus| now.load[seat(exporter, bus)]).collect();
         let machine = Machine::new([exporter, importer].map(|side| now.stored_energy_mws[side]), self.frequency_hz);
@@ -133,24 +146,28 @@ impl Engine {
             actions: Vec::new(),
             reclose,
             picture: Picture { curve: stress.swing_curve(&point), p_m_mw: point.p_m_mw, angle_rad: point.angle_rad },
+            circuits,
         };
         let actions = self.actions(corridor, now.topology, exporter, &loads, &stress, stress.p_m_mw(angle));
         Judgement { actions, ..judgement }
     }
 
-    /// The side whose terminal sends more MW into the circuits.
-    fn exporter(&mut self, corridor: &Corridor, now: &Operating) -> BusIndex {
+    /// What each circuit carries, and the MW that each terminal sends into them.
+    fn flows(&mut self, corridor: &Corridor, now: &Operating) -> (Vec<CircuitFlow>, [f64; 2]) {
         let index = self.find(corridor, now.topology, FROM);
         let mut sent_mw = [0.0; 2];
+        let mut flows = vec![CircuitFlow::default(); corridor.circuits.len()];
         for on in &self.sets[index].1.present.circuits {
             let [first, second] = on.seats.map(|bus| now.voltage[bus]);
-            for (bus, end) in on.seats.into_iter().zip([crate::feed::End::From, crate::feed::End::To]) {
-                if bus <= TO {
-                    sent_mw[bus] += (now.voltage[bus] * on.branch.current(end, first, second).conj()).re;
-                }
+            let current = [End::From, End::To].map(|end| on.branch.current(end, first, second));
+            let mw = [(first * current[0].conj()).re, (second * current[1].conj()).re];
+            for (bus, mw) in on.seats.into_iter().zip(mw).filter(|(bus, _)| *bus <= TO) {
+                sent_mw[bus] += mw;
             }
+            let amperes = AMPERES * current[0].norm().max(current[1].norm());
+            flows[on.circuit] = CircuitFlow { from_mw: mw[0], amperes };
         }
-        if sent_mw[TO] > sent_mw[FROM] { TO } else { FROM }
+        (flows, sent_mw)
     }
 
     fn find(&mut self, corridor: &Corridor, topology: &Topology, exporter: BusIndex) -> usize {

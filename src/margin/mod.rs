@@ -16,7 +16,7 @@ mod swing;
 mod trend;
 mod view;
 
-pub use engine::{Engine, Judgement, Operating};
+pub use engine::{CircuitFlow, Engine, Judgement, Operating};
 pub use machine::Machine;
 pub use picture::{OutagePicture, Picture};
 pub use power_angle::PowerAngle;

@@ -130,6 +130,8 @@ pub struct Reclose {
     pub transfer_to_fit_mw: Option<f64>,
 }
 
+// The signature is serde's.
+#[allow(clippy::ref_option)]
 fn kv_by_bus<S: Serializer>(kv: &Option<Vec<(Arc<str>, f64)>>, serializer: S) -> Result<S::Ok, S::Error> {
     match kv {
         None => serializer.serialize_none(),

@@ -24,7 +24,7 @@ const SETTLED_ROBUST: f64 = 1e-5;
 const LONGEST_STEP: f64 = 0.5;
 
 /// Measurements in use, unknowns, and everything that an iteration needs.
-#[derive(Debug, Default)]
+#[derive(Debug, Clone, Default)]
 pub(super) struct Estimator {
     /// By meter: value, one over σ (0: not used), and the load drawn at nominal voltage where it is assumed.
     pub z: Vec<f64>,

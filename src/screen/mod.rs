@@ -13,4 +13,4 @@ pub mod state;
 pub mod terminal;
 pub mod view;
 
-pub use run::run;
+pub use run::{Ending, run};

@@ -16,12 +16,21 @@ use super::{
     view::{self, Theme},
 };
 
+/// How a screen ends.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Ending {
+    /// The user left, or a signal asked for it.
+    Left,
+    /// The connection broke: whoever started it knows why.
+    Disconnected,
+}
+
 /// Shows what comes in until the user leaves or a signal ends it.
 pub async fn run(
     mut app: App,
     mut parcels: watch::Receiver<Option<Parcel>>,
     orders: SyncSender<Order>,
-) -> io::Result<()> {
+) -> io::Result<Ending> {
     let theme = Theme::from_environment();
     let mut interrupted = signal(SignalKind::interrupt())?;
     let mut terminated = signal(SignalKind::terminate())?;
@@ -53,7 +62,7 @@ pub async fn run(
             _ = hung_up.recv() => break,
             _ = continued.recv() => screen.retake()?,
             () = sleep_until(due.map_or_else(Instant::now, Instant::from_std)), if due.is_some() => {
-                app.clock = chrono::Utc::now();
+                app.clock = std::time::Instant::now();
                 app.size = screen.terminal.size()?;
                 let mut drawn = None;
                 screen.terminal.draw(|frame| drawn = Some(view::draw(frame, &app, theme)))?;
@@ -62,9 +71,8 @@ pub async fn run(
                 continue;
             }
             changed = parcels.changed() => {
-                // The connection only goes first when it broke: whoever started it knows why.
                 if changed.is_err() {
-                    break;
+                    return Ok(Ending::Disconnected);
                 }
                 if let Some(parcel) = parcels.borrow_and_update().clone() {
                     app.receive(parcel);
@@ -81,7 +89,7 @@ pub async fn run(
         }
         pace.want(Why::Key);
     }
-    Ok(())
+    Ok(Ending::Left)
 }
 
 /// SIGCONT (POSIX leaves the number open; this is its value on Linux).

@@ -1,6 +1,6 @@
 //! Sets up a screen with made-up corridors and draws it on a terminal that is only a buffer.
 
-use std::sync::Arc;
+use std::{sync::Arc, time::Instant};
 
 use chrono::TimeDelta;
 use chrono_tz::Tz;
@@ -9,7 +9,7 @@ use ratatui::{Terminal, backend::TestBackend, buffer::Buffer};
 use tautline::{
     desk::Assessment,
     screen::{
-        connection::{FeedReport, Order, Origin, Parcel, Playback},
+        connection::{FeedReport, InputReport, Order, Origin, Parcel, Playback},
         state::{App, Chronicle, Strip},
         view::{self, Theme},
     },
@@ -22,7 +22,7 @@ pub fn live(assessments: Vec<Assessment>) -> App {
     let names: Vec<_> = assessments.iter().map(|assessment| &*assessment.corridor).collect();
     let mut app = App::new(sample::grid(&names), Tz::UTC, TimeDelta::seconds(10));
     app.receive(Parcel { chronicle: played(assessments), feed: feed(), origin: Origin::Live });
-    app.clock = sample::time(HISTORY_S + 1);
+    app.clock = Instant::now();
     app
 }
 
@@ -73,9 +73,13 @@ fn played(assessments: Vec<Assessment>) -> Chronicle {
 
 fn feed() -> FeedReport {
     FeedReport {
-        inputs: vec![("tcp://127.0.0.1:4711".into(), "connected".into())],
-        tallies: vec![("lines that could not be read", 3)],
+        inputs: vec![InputReport {
+            name: "tcp://127.0.0.1:4711".into(),
+            standing: "reading, 7200 frames".into(),
+            findings: vec!["3 malformed lines skipped".into()],
+        }],
         frames: 7200,
+        arrived: Some(Instant::now()),
         ended: false,
     }
 }

@@ -1,4 +1,4 @@
-use std::sync::Arc;
+use std::{sync::Arc, time::Instant};
 
 use chrono::{DateTime, TimeDelta, Utc};
 
@@ -27,14 +27,25 @@ pub enum Origin {
 /// How the feed does.
 #[derive(Debug, Clone, Default, PartialEq)]
 pub struct FeedReport {
-    /// One line for each input: its name and how it stands, in words.
-    pub inputs: Vec<(Arc<str>, String)>,
-    /// What went wrong so far, in words, with how often; only what is not 0.
-    pub tallies: Vec<(&'static str, u64)>,
+    /// Every input.
+    pub inputs: Vec<InputReport>,
     /// Frames taken so far.
     pub frames: u64,
+    /// When the last frame came, by this computer's clock.
+    pub arrived: Option<Instant>,
     /// Nothing more will come.
     pub ended: bool,
+}
+
+/// How one input does, in words.
+#[derive(Debug, Clone, PartialEq)]
+pub struct InputReport {
+    /// The input as it was given.
+    pub name: Arc<str>,
+    /// What it is doing.
+    pub standing: String,
+    /// What came in that cannot be used.
+    pub findings: Vec<String>,
 }
 
 /// A recording being played.

@@ -138,7 +138,7 @@ impl App {
             }
             KeyCode::Enter => {
                 if let Some(Typing::Time(text)) = self.typing.take() {
-                    let near = self.playback().and_then(|playback| playback.now).unwrap_or(self.clock);
+                    let near = self.playback()?.now?;
                     match parse_time(&text, self.zone, near) {
                         Ok(time) => return Some(Order::Seek(time)),
                         Err(why) => self.notice = Some(why),

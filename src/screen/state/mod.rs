@@ -8,9 +8,9 @@ mod keys;
 mod panel;
 mod pointer;
 
-use std::sync::Arc;
+use std::{sync::Arc, time::Instant};
 
-use chrono::{DateTime, TimeDelta, Utc};
+use chrono::TimeDelta;
 use chrono_tz::Tz;
 use ratatui::layout::Size;
 
@@ -59,8 +59,8 @@ pub struct App {
     pub scroll: usize,
     /// Of the terminal.
     pub size: Size,
-    /// Wall clock at the last event.
-    pub clock: DateTime<Utc>,
+    /// This computer's clock at the last drawing.
+    pub clock: Instant,
     /// A word on the last key, until the next.
     pub notice: Option<String>,
     /// What the last drawing found out.
@@ -119,7 +119,7 @@ impl App {
             panel: Panel::Outages,
             scroll: 0,
             size: Size::new(80, 24),
-            clock: DateTime::UNIX_EPOCH,
+            clock: Instant::now(),
             notice: None,
             drawn: Drawn::default(),
             leaving: false,
@@ -179,14 +179,13 @@ impl App {
         }
     }
 
-    /// Present time: the wall clock, or the clock of the recording.
-    pub fn now(&self) -> DateTime<Utc> {
-        self.playback().map_or(Some(self.clock), |playback| playback.now).unwrap_or(self.clock)
-    }
-
-    /// Age of the last frame.
+    /// How long ago the last frame was: since it came, or by the clock of the recording.
     pub fn age(&self) -> Option<TimeDelta> {
-        Some((self.now() - self.parcel.as_ref()?.chronicle.time()?).max(TimeDelta::zero()))
+        let parcel = self.parcel.as_ref()?;
+        match &parcel.origin {
+            Origin::Live => TimeDelta::from_std(self.clock.saturating_duration_since(parcel.feed.arrived?)).ok(),
+            Origin::Replay(playback) => Some((playback.now? - parcel.chronicle.time()?).max(TimeDelta::zero())),
+        }
     }
 
     /// Whether the picture changes by the passing of time alone.

@@ -37,11 +37,11 @@ pub fn lines(subject: &Subject, width: usize) -> Vec<Line<'static>> {
     let time = figures::clock(assessment.time, subject.app.zone);
     lines.push(heading(&format!("feed: last frame {time}, {age} old"), theme));
     if let Some(parcel) = &subject.app.parcel {
-        for (name, standing) in &parcel.feed.inputs {
-            lines.extend(paragraph(&format!("{name}: {standing}"), width));
-        }
-        for (what, count) in &parcel.feed.tallies {
-            lines.extend(paragraph(&format!("{count} × {what}"), width));
+        for input in &parcel.feed.inputs {
+            lines.extend(paragraph(&format!("{}: {}", input.name, input.standing), width));
+            for finding in &input.findings {
+                lines.extend(paragraph(&format!("! {finding}"), width));
+            }
         }
         lines.extend(paragraph(&format!("{} frames taken", parcel.feed.frames), width));
     }

@@ -11,11 +11,11 @@ pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
     let width = usize::from(area.width);
     let mut lines = Vec::new();
     if let Some(parcel) = &app.parcel {
-        for (name, standing) in &parcel.feed.inputs {
-            lines.push(Line::raw(text::cut(&format!(" input {name}: {standing}"), width)));
-        }
-        for (what, count) in &parcel.feed.tallies {
-            lines.push(Line::raw(text::cut(&format!(" feed: {count} × {what}"), width)));
+        for input in &parcel.feed.inputs {
+            lines.push(Line::raw(text::cut(&format!(" input {}: {}", input.name, input.standing), width)));
+            for finding in &input.findings {
+                lines.push(Line::raw(text::cut(&format!("   ! {finding}"), width)));
+            }
         }
     }
     lines.push(Line::styled(

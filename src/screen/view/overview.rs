@@ -72,11 +72,9 @@ fn waiting(frame: &mut Frame, area: Rect, app: &App) -> Drawn {
         format!("{} corridor(s) are configured. Inputs:", app.grid.corridors.len()),
     ];
     let feed = app.parcel.as_ref().map(|parcel| &parcel.feed);
-    for (name, standing) in feed.iter().flat_map(|feed| &feed.inputs) {
-        lines.push(format!("  {}  {}", text::clean(name), text::clean(standing)));
-    }
-    for (what, count) in feed.iter().flat_map(|feed| &feed.tallies) {
-        lines.push(format!("  {count} × {what}"));
+    for input in feed.iter().flat_map(|feed| &feed.inputs) {
+        lines.push(format!("  {}: {}", text::clean(&input.name), input.standing));
+        lines.extend(input.findings.iter().map(|finding| format!("    {}", text::clean(finding))));
     }
     lines.push(String::new());
     lines.extend(text::wrap(

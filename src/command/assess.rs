@@ -162,7 +162,7 @@ struct Seat {
 }
 
 impl Bench {
-    fn new(options: &Options, config: &Config, channels: &Channels) -> Result<Self, Failure> {
+    fn new(options: &Options, config: &Config, channels: &Arc<Channels>) -> Result<Self, Failure> {
         let max_age = TimeDelta::from_std(Duration::try_from_secs_f64(config.feed.max_age_s)?)?;
         let seat = |desk| Seat { desk, last_only: options.last, last: None, records: Vec::new(), ends: Vec::new() };
         Ok(Self {

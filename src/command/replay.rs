@@ -1,6 +1,7 @@
-//! `tautline replay`: recorded files on the screen.
+//! `tautline replay`: recorded files on the screen, or in a summary where there is none.
 
 use std::{
+    io::{IsTerminal, Write, stdout},
     path::PathBuf,
     sync::{Arc, mpsc::sync_channel},
     thread,
@@ -13,7 +14,8 @@ use super::{Failure, inputs, stage};
 use crate::{
     config::Config,
     desk::Desk,
-    feed::Channels,
+    feed::{Channels, Holder, Monitor},
+    report::summary::Summary,
     screen::{
         connection::{Player, Recording, Replay},
         state::parse_time,
@@ -53,14 +55,16 @@ pub struct Start {
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
     let config = Config::load(&options.config)?;
-    stage::needs_terminal()?;
     play(&config, Recording::Files(options.files.clone()), &options.start)
 }
 
-/// Plays a recording on the screen.
+/// Plays a recording on the screen; where there is none to draw on, prints its summary.
 pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Result<(), Failure> {
     let channels = Arc::new(Channels::new(config));
     let (desk, holder) = (Desk::new(config, &channels), inputs::holder(config, &channels));
+    if !stdout().is_terminal() {
+        return summarise(config, &recording, &channels, desk, holder);
+    }
     let mut player = Player::new(recording.clone(), channels.clone(), holder, desk)?;
     let Some(first) = player.next_time() else {
         let findings = player.monitor().inputs().into_iter().flat_map(|input| input.tally.findings());
@@ -80,4 +84,34 @@ pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Resu
         replay.run();
     });
     stage::show(stage::runtime()?, config, parcels, orders, connection)
+}
+
+/// Every frame as fast as it goes, and what came of it as text.
+fn summarise(
+    config: &Config,
+    recording: &Recording,
+    channels: &Arc<Channels>,
+    mut desk: Desk,
+    mut holder: Holder,
+) -> Result<(), Failure> {
+    let frames = recording.open(channels)?;
+    let monitor = frames.monitor().clone();
+    let mut summary = Summary::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
+    let mut any = false;
+    for frame in frames {
+        if let Some(snapshot) = holder.take(&frame) {
+            summary.take(&desk.assess(&snapshot));
+            any = true;
+        }
+    }
+    if !any {
+        return Err(no_frame(recording, &monitor));
+    }
+    write!(stdout(), "tautline, {}: {summary}", recording.name())?;
+    Ok(())
+}
+
+fn no_frame(recording: &Recording, monitor: &Monitor) -> Failure {
+    let findings: Vec<_> = monitor.inputs().iter().flat_map(|input| input.tally.findings()).collect();
+    format!("not a single frame was read from {}\n{}", recording.name(), findings.join("\n")).trim_end().into()
 }

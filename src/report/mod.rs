@@ -1,3 +1,4 @@
 //! Assessments for other programs and other people: one file a format.
 
 pub mod jsonl;
+pub mod summary;

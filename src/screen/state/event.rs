@@ -67,7 +67,7 @@ fn reason(assessment: &Assessment) -> String {
     match (&assessment.binding, assessment.headroom_mw) {
         (Some(binding), Some(headroom)) => {
             let outage = binding.outage.as_deref().map_or("nothing lost".into(), |outage| format!("{outage} out"));
-            format!(": {headroom:+.0} MW, {outage}, by {}", criterion(binding.criterion))
+            format!(": {:+.0} MW, {outage}, by {}", headroom.floor(), criterion(binding.criterion))
         }
         _ if !assessment.fit.missing.is_empty() => format!(": {} missing", assessment.fit.missing.len()),
         _ => String::new(),

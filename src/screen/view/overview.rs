@@ -1,8 +1,12 @@
-//! All corridors: as cards where they fit, else in two lines each, or in one on a wide screen.
+//! All corridors: as cards where they fit, else in four lines each, in two, or in one on a wide screen.
 
 use ratatui::{Frame, layout::Rect, text::Line, widgets::Paragraph};
 
-use super::{Theme, card, row::Columns, ruler, text};
+use super::{
+    Theme, card,
+    row::{Columns, Form},
+    ruler, text,
+};
 use crate::screen::state::{App, Drawn, Target};
 
 /// Narrower than this, cards do not read.
@@ -26,8 +30,15 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
     }
     let count = u16::try_from(rows.len()).unwrap_or(u16::MAX);
     let cards = area.width >= CARD_WIDTH && count.saturating_mul(card::HEIGHT) < area.height;
-    let one_line = area.width >= LINE_WIDTH && count.saturating_mul(2) > area.height.saturating_sub(2);
-    let columns = Columns::new(usize::from(area.width), one_line);
+    let room = area.height.saturating_sub(2);
+    let form = if count.saturating_mul(Form::Tall.height()) <= room + 1 {
+        Form::Tall
+    } else if area.width >= LINE_WIDTH && count.saturating_mul(Form::Pair.height()) > room {
+        Form::Line
+    } else {
+        Form::Pair
+    };
+    let columns = Columns::new(usize::from(area.width), form);
 
     let heading =
         if cards { vec![Line::styled(format!("  {}", ruler::LEGEND), theme.quiet())] } else { columns.heading(theme) };
@@ -35,7 +46,7 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
     frame.render_widget(Paragraph::new(heading), area);
     let list = Rect { y: area.y + heading_height, height: area.height.saturating_sub(heading_height), ..area };
 
-    let height = if cards { card::HEIGHT } else { columns.height() };
+    let height = if cards { card::HEIGHT } else { form.height() };
     let rows_shown = usize::from(list.height / height).max(1);
     let cursor = rows.iter().position(|&row| row == app.selected).unwrap_or(0);
     let first_row = first_in_sight(app.drawn.first_row, cursor, rows_shown, rows.len());
@@ -49,7 +60,7 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
             Some(track) => frame.render_widget(Paragraph::new(columns.lines(track, chosen, theme)), at),
             None => {
                 let name = &app.grid.corridors[index].name;
-                frame.render_widget(Paragraph::new(columns.waiting(name, chosen, theme)), at);
+                frame.render_widget(columns.waiting(name, chosen, theme), at);
             }
         }
         targets.push((at, Target::Corridor(index)));

@@ -1,4 +1,4 @@
-//! A corridor in one or two lines of the overview.
+//! A corridor in one, two or four lines of the overview.
 
 use ratatui::text::{Line, Span};
 
@@ -21,8 +21,29 @@ pub struct Columns {
     trend: usize,
     ruler: usize,
     action: usize,
+    form: Form,
+}
+
+/// How much room a corridor gets.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Form {
     /// Everything on one line.
-    one_line: bool,
+    Line,
+    /// The ruler on a second line, beside the best action.
+    Pair,
+    /// The ruler over the whole width, and a blank line to rest the eye.
+    Tall,
+}
+
+impl Form {
+    /// Rows that a corridor takes.
+    pub fn height(self) -> u16 {
+        match self {
+            Self::Line => 1,
+            Self::Pair => 2,
+            Self::Tall => 4,
+        }
+    }
 }
 
 const WORD: usize = 6;
@@ -34,23 +55,20 @@ const INDENT: usize = 3;
 
 impl Columns {
     /// Shares a width out.
-    pub fn new(width: usize, one_line: bool) -> Self {
-        let spare = if one_line { 0 } else { width.saturating_sub(80).min(40) };
-        let name = if one_line { 16 } else { 13 + spare / 4 };
-        let set_by = 18 + spare / 4;
-        let trend = 16 + spare / 4;
-        let action = if one_line { 24 } else { 22 + spare / 4 };
-        let taken = if one_line { INDENT + name + WORD + HEADROOM + set_by + TRANSFER + trend + 6 } else { INDENT };
-        let ruler = width.saturating_sub(taken + action + TRUST + 2);
-        Self { name, set_by, trend, ruler, action, one_line }
+    pub fn new(width: usize, form: Form) -> Self {
+        let share = if form == Form::Line { 0 } else { width.saturating_sub(80).min(40) / 4 };
+        let (name, set_by, trend) = (13 + share, 17 + share, 17 + share);
+        let action = if form == Form::Tall { 0 } else { 22 + share };
+        let numbers = INDENT + name + WORD + HEADROOM + set_by + TRANSFER + trend + 6;
+        let beside = match form {
+            Form::Line => numbers + action + TRUST + 2,
+            Form::Pair => INDENT + action + TRUST + 2,
+            Form::Tall => INDENT + 1,
+        };
+        Self { name, set_by, trend, ruler: width.saturating_sub(beside), action, form }
     }
 
-    /// Rows that a corridor takes.
-    pub fn height(self) -> u16 {
-        if self.one_line { 1 } else { 2 }
-    }
-
-    /// The headings, as many lines as a corridor takes.
+    /// The headings.
     pub fn heading(self, theme: Theme) -> Vec<Line<'static>> {
         let upper = format!(
             "{}{} {} {} {} {} {}",
@@ -63,8 +81,10 @@ impl Columns {
             left("trend", self.trend),
         );
         let mut lower = ruler::scale(self.ruler, theme);
-        let gap = self.ruler.saturating_sub(lower.width()) + 1;
-        lower.push_span(" ".repeat(gap) + &left("best single action", self.action) + " " + &right("data", TRUST));
+        if self.form != Form::Tall {
+            let gap = self.ruler.saturating_sub(lower.width()) + 1;
+            lower.push_span(" ".repeat(gap) + &left("best single action", self.action) + " " + &right("data", TRUST));
+        }
         self.joined(Line::raw(upper), lower).into_iter().map(|line| line.style(theme.quiet())).collect()
     }
 
@@ -94,26 +114,36 @@ impl Columns {
             None => Line::raw(left(&why_blind(assessment), self.ruler)),
         };
         let (trust, trusted) = trust(assessment);
-        lower.push_span(format!(" {} ", left(&best_action(assessment), self.action)));
-        lower.push_span(Span::raw(" ".repeat(TRUST.saturating_sub(trust.chars().count()))));
-        lower.push_span(Span::styled(trust, if trusted { theme.quiet() } else { theme.caution() }));
+        let trust = Span::styled(trust, if trusted { theme.quiet() } else { theme.caution() });
+        let best = best_action(assessment);
+        if self.form == Form::Tall {
+            let best = if best.is_empty() { best } else { format!("best: {best}") };
+            let exporter = assessment
+                .exporter
+                .as_deref()
+                .map_or(String::new(), |bus| format!("{} exports   ", text::cut(bus, 20)));
+            let right = vec![Span::styled(exporter, theme.quiet()), trust];
+            let last = text::spread(vec![" ".repeat(INDENT).into(), best.into()], right, self.ruler + INDENT);
+            return self.joined(upper, lower).into_iter().chain([last, Line::default()]).collect();
+        }
+        lower.push_span(format!(" {} ", left(&best, self.action)));
+        lower.push_span(Span::raw(" ".repeat(TRUST.saturating_sub(trust.width()))));
+        lower.push_span(trust);
         self.joined(upper, lower)
     }
 
     /// A corridor that has not.
-    pub fn waiting(self, name: &str, chosen: bool, theme: Theme) -> Vec<Line<'static>> {
-        let upper = Line::from(vec![
+    pub fn waiting(self, name: &str, chosen: bool, theme: Theme) -> Line<'static> {
+        Line::from(vec![
             Span::raw(cursor(chosen)),
             Span::raw("  "),
             Span::styled(left(name, self.name), if chosen { theme.strong() } else { theme.quiet() }),
             Span::raw(" no frame yet"),
-        ]);
-        let width = usize::from(!self.one_line);
-        std::iter::once(upper).chain(vec![Line::default(); width]).collect()
+        ])
     }
 
     fn joined(self, mut upper: Line<'static>, lower: Line<'static>) -> Vec<Line<'static>> {
-        if self.one_line {
+        if self.form == Form::Line {
             upper.push_span(" ");
             upper.spans.extend(lower.spans);
             vec![upper]

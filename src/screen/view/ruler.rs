@@ -59,7 +59,7 @@ impl Ruler {
         let now = column(self.now, width);
         fill(&mut cells, 0, now, '━');
         let (from, until, label) = match (self.after, self.top, self.limit) {
-            _ if self.separates => (now + 1, width, " parts the two sides".to_string()),
+            _ if self.separates => (now + 1, width, "parts the two sides".into()),
             (Some(after), Some(top), Some(limit)) => {
                 let (after, top, limit) = (column(after, width), column(top, width), column(limit, width));
                 fill(&mut cells, now, after, '─');
@@ -98,9 +98,14 @@ impl Ruler {
     /// Writes the label, or what of it fits, into the middle of a stretch.
     fn labelled(&self, cells: &[char], from: usize, until: usize, label: &str, theme: Theme) -> Line<'static> {
         let room = until.saturating_sub(from);
-        let short = label.split(' ').next().unwrap_or_default();
+        // “58° left” still reads as “58°”, and whatever is not survived as “lost”.
+        let short = match (label, self.top) {
+            ("", _) => "",
+            (_, Some(_)) => label.split(' ').next().unwrap_or_default(),
+            (_, None) => "lost",
+        };
         let text = [label, short].into_iter().find(|text| text.width() + 2 <= room).unwrap_or_default();
-        let text = if text.is_empty() { String::new() } else { format!(" {} ", text.trim()) };
+        let text = if text.is_empty() { String::new() } else { format!(" {text} ") };
         let start = from + (room - text.width().min(room)) / 2;
         let end = start + text.width();
         let run = |range: &[char]| range.iter().collect::<String>();
@@ -131,7 +136,8 @@ pub fn scale(width: usize, theme: Theme) -> Line<'static> {
     for tick in (0..=180).step_by(step) {
         let label = format!("{tick}°");
         let at = if tick == 180 { width.saturating_sub(label.width()) } else { column(f64::from(tick), width) };
-        if at >= text.width() {
+        let clear = tick == 180 || at + label.width() + "180°".width() < width;
+        if clear && (text.is_empty() || at > text.width()) {
             text += &" ".repeat(at - text.width());
             text += &label;
         }

@@ -10,5 +10,8 @@ mod stage;
 mod drawings;
 #[path = "screen/keys.rs"]
 mod keys;
+#[cfg(unix)]
+#[path = "screen/terminal.rs"]
+mod terminal;
 #[path = "screen/unbreakable.rs"]
 mod unbreakable;

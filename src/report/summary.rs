@@ -97,8 +97,8 @@ impl fmt::Display for Summary {
         let local = |time: DateTime<Utc>| time.with_timezone(&self.zone);
         writeln!(f, "{} to {}, {} frames", local(first).format(LONG), local(last).format(LONG), self.frames)?;
         for (corridor, tally) in self.grid.corridors.iter().zip(&self.corridors) {
-            let [from, to] = [0, 1].map(|bus| corridor.buses[bus].name.escape_debug());
-            writeln!(f, "\n{}", corridor.name.escape_debug())?;
+            let [from, to] = [0, 1].map(|bus| plain(&corridor.buses[bus].name));
+            writeln!(f, "\n{}", plain(&corridor.name))?;
             match tally.transfer_mw {
                 None => writeln!(f, "  transfer        never known")?,
                 Some((low, high)) => {
@@ -126,9 +126,14 @@ impl fmt::Display for Summary {
 
 const LONG: &str = "%-d %b %Y %H:%M:%S %Z";
 
+/// A name without what could steer a terminal.
+fn plain(name: &str) -> String {
+    name.chars().map(|char| if char.is_control() { '·' } else { char }).collect()
+}
+
 fn why(binding: Option<&Binding>) -> String {
     let Some(binding) = binding else { return String::new() };
-    let outage = binding.outage.as_ref().map_or("nothing lost".into(), |name| format!("{} out", name.escape_debug()));
+    let outage = binding.outage.as_ref().map_or("nothing lost".into(), |name| format!("{} out", plain(name)));
     let criterion = match binding.criterion {
         Criterion::Angle => "angle",
         Criterion::Area => "area",
@@ -153,6 +158,19 @@ mod tests {
             summary.take(&[sample::at(second, headroom_mw)]);
         }
         summary.take(&[reversed]);
-        insta::assert_snapshot!(summary, @"");
+        let told = summary.to_string();
+        let told: Vec<_> = told.lines().take(6).collect();
+        assert_eq!(
+            told,
+            [
+                "14 Mar 2031 05:00:00 UTC to 14 Mar 2031 05:04:00 UTC, 6 frames",
+                "",
+                "Skarn-·Velm",
+                "  transfer        -310 to 1284 MW, positive from Skarn to Velm",
+                "  least headroom  -4 MW at 05:00:10: SV2 out, by angle",
+                "  minutes         ample 0.2, thin 0.2, spent 0.1, without data 3.4",
+            ]
+        );
+        assert!(summary.to_string().contains("tautline advises."));
     }
 }

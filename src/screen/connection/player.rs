@@ -148,3 +148,109 @@ impl Player {
         Ok(())
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use std::{fmt::Write, fs, path::PathBuf};
+
+    use chrono::TimeDelta;
+
+    use super::*;
+    use crate::{config::Config, feed::Holder};
+
+    const START: &str = "2031-03-14T05:00:00Z";
+
+    /// A thousand frames, two seconds apart, of one slowly loaded circuit pair that is switched now and then.
+    fn recorded() -> String {
+        let start: DateTime<Utc> = START.parse().unwrap();
+        (0..1000).fold(String::new(), |mut lines, second| {
+            let time = (start + TimeDelta::seconds(2 * second)).to_rfc3339();
+            let closed = u8::from(second % 300 > 20);
+            let mw = 300.0 + 0.3 * second as f64;
+            let _ = writeln!(
+                lines,
+                r#"{{"time":"{time}","values":{{"Skarn.kv":404.0,"Velm.kv":400.5,"A.closed":{closed},"A.from.mw":{},"B.from.mw":{mw}}}}}"#,
+                mw * f64::from(closed),
+            );
+            lines
+        })
+    }
+
+    fn player(name: &str) -> (Player, PathBuf) {
+        let config = Config::parse(
+            r#"
+            [grid]
+            frequency_hz = 50
+            [[corridor]]
+            name = "Skarn-Velm"
+            from = { bus = "Skarn", nominal_kv = 400, source = { r_ohm = 1.5, x_ohm = 22.0, spread = 0.3 } }
+            to = { bus = "Velm", nominal_kv = 400, source = { r_ohm = 1.0, x_ohm = 14.0, spread = 0.3 } }
+            circuit = [
+                { name = "A", r_ohm = 7.0, x_ohm = 75.0, b_us = 880 },
+                { name = "B", r_ohm = 7.0, x_ohm = 75.0, b_us = 880 },
+            ]
+            "#,
+            "test.toml",
+        )
+        .unwrap();
+        let path = std::env::temp_dir().join(format!("tautline-{}-{name}.jsonl", std::process::id()));
+        fs::write(&path, recorded()).unwrap();
+        let channels = Arc::new(Channels::new(&config));
+        let holder = Holder::new(&channels, TimeDelta::seconds(10));
+        let desk = Desk::new(&config, &channels);
+        (Player::new(Recording::Files(vec![path.clone()]), channels, holder, desk).unwrap(), path)
+    }
+
+    fn go(player: &mut Player, goal: Goal) {
+        player.leap(goal).unwrap();
+        while !player.is_at(goal) {
+            player.step();
+        }
+    }
+
+    /// Everything that can be seen of a place.
+    fn seen(player: &Player) -> String {
+        let here = player.here();
+        let tracks: Vec<_> = here.chronicle.tracks.iter().map(|track| format!("{track:?}")).collect();
+        format!("{} {:?} {tracks:?} {:?}", here.taken, here.time, here.chronicle.events)
+    }
+
+    #[test]
+    fn every_way_to_a_place_leads_to_the_same() {
+        let (mut straight, path) = player("straight");
+        go(&mut straight, Goal::Taken(700));
+        assert!(straight.here().chronicle.events.len() > 2, "the frames should tell of switching");
+        let expected = seen(&straight);
+
+        let (mut astray, other) = player("astray");
+        let at = straight.here().time.unwrap();
+        let between = at + TimeDelta::milliseconds(500);
+        for detour in [Goal::Taken(999), Goal::Taken(10), Goal::Taken(703), Goal::Time(START.parse().unwrap())] {
+            for goal in [Goal::Taken(700), Goal::Time(at), Goal::Time(between)] {
+                go(&mut astray, detour);
+                go(&mut astray, goal);
+                assert_eq!(seen(&astray), expected, "by way of {detour:?} to {goal:?}");
+            }
+        }
+        for path in [path, other] {
+            fs::remove_file(path).unwrap();
+        }
+    }
+
+    #[test]
+    fn it_stays_within_the_recording_and_keeps_few_places() {
+        let (mut player, path) = player("within");
+        go(&mut player, Goal::Time("2040-01-01T00:00:00Z".parse().unwrap()));
+        assert_eq!(player.here().taken, 1000);
+        assert!(!player.step());
+        go(&mut player, Goal::Time("2000-01-01T00:00:00Z".parse().unwrap()));
+        assert_eq!(player.here().taken, 0);
+        player.kept_max = 2;
+        player.spacing = 16;
+        player.kept.truncate(1);
+        go(&mut player, Goal::Taken(1000));
+        assert!(player.kept.len() <= 3, "{}", player.kept.len());
+        assert_eq!(player.kept[0].taken, 0);
+        fs::remove_file(path).unwrap();
+    }
+}

@@ -67,7 +67,8 @@ fn reason(assessment: &Assessment) -> String {
     match (&assessment.binding, assessment.headroom_mw) {
         (Some(binding), Some(headroom)) => {
             let outage = binding.outage.as_deref().map_or("nothing lost".into(), |outage| format!("{outage} out"));
-            format!(": {:+.0} MW, {outage}, by {}", headroom.floor(), criterion(binding.criterion))
+            let headroom = format!("{:+.0}", headroom.floor()).replace('-', "−");
+            format!(": {headroom} MW ({outage}, {})", criterion(binding.criterion))
         }
         _ if !assessment.fit.missing.is_empty() => format!(": {} missing", assessment.fit.missing.len()),
         _ => String::new(),

@@ -90,8 +90,7 @@ fn verdict_line(subject: &Subject, width: usize) -> Line<'static> {
     let spans = vec![
         Span::styled(" headroom ", theme.quiet()),
         Span::styled(format!("{} MW", headroom(assessment)), theme.strong()),
-        Span::styled("  set by ", theme.quiet()),
-        Span::raw(set_by(assessment)),
+        Span::raw(format!(" ({})", set_by(assessment))),
         Span::raw(format!("  {}", trend::words(subject.track))),
         Span::raw(if best.is_empty() { String::new() } else { format!("  {best}") }),
     ];
@@ -99,7 +98,7 @@ fn verdict_line(subject: &Subject, width: usize) -> Line<'static> {
 }
 
 fn draw_ruler(frame: &mut Frame, scale: Rect, line: Rect, subject: &Subject) {
-    let name = subject.outage.map_or("nothing lost".into(), |outage| format!("{} out", outage.name));
+    let name = subject.outage.map_or(String::new(), |outage| format!("{} out", outage.name));
     let name_width = 14.min(scale.width / 4);
     let [name_at, ruler_at] = Layout::horizontal([Constraint::Length(name_width), Constraint::Fill(1)]).areas(line);
     let width = usize::from(ruler_at.width).saturating_sub(1);

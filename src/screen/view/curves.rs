@@ -21,7 +21,7 @@ use crate::margin::{OutagePicture, PowerAngle};
 
 /// Columns left of the plot, for MW.
 const GUTTER: u16 = 7;
-const LEGEND: &str = "dashed now  solid after  dotted fault on  ▒ dense: speeds up  ░ light: slows down";
+const LEGEND: &str = "dashed now, solid after, dotted fault on; dense: speeds up, light: slows down";
 
 /// Draws them for the chosen outage.
 pub fn draw(frame: &mut Frame, area: Rect, subject: &Subject) {
@@ -48,7 +48,13 @@ pub fn draw(frame: &mut Frame, area: Rect, subject: &Subject) {
         cells: (plot.width, plot.height),
     };
     let bounds = drawing.bounds_mw();
-    let canvas = Canvas::default().x_bounds([0.0, END_DEG]).y_bounds(bounds).paint(|context| context.draw(&drawing));
+    let labels = drawing.labels(subject.outage.map_or("", |outage| &outage.name));
+    let canvas = Canvas::default().x_bounds([0.0, END_DEG]).y_bounds(bounds).paint(|context| {
+        context.draw(&drawing);
+        for (angle_deg, mw, label) in &labels {
+            context.print(*angle_deg, *mw, Line::raw(label.clone()));
+        }
+    });
     frame.render_widget(canvas, plot);
     draw_ticks(frame, gutter, bounds, transfer_mw, subject);
     let width = usize::from(plot.width);
@@ -119,7 +125,30 @@ impl Drawing {
         let tops = curves.into_iter().flatten().map(|curve| curve.mean_mw + curve.amplitude_mw + self.raise_mw);
         let top = tops.fold(self.p_m_mw + self.raise_mw, f64::max);
         let bottom = (self.p_m_mw + self.raise_mw).min(0.0);
-        if top.is_finite() && bottom.is_finite() && top > bottom { [bottom, 1.05 * top] } else { [0.0, 1.0] }
+        if top.is_finite() && bottom.is_finite() && top > bottom {
+            [bottom, bottom + 1.1 * (top - bottom)]
+        } else {
+            [0.0, 1.0]
+        }
+    }
+
+    /// A name over the top of each curve: where, and what.
+    fn labels(&self, outage: &str) -> Vec<(f64, f64, String)> {
+        let cell_deg = END_DEG / f64::from(self.cells.0.max(1));
+        let [bottom, top] = self.bounds_mw();
+        let cell_mw = (top - bottom) / f64::from(self.cells.1.max(1));
+        let curves = [
+            (Some(self.now), "now".to_string()),
+            (self.after.map(|after| after.curve), format!("{} out", text::cut(outage, 20))),
+            (self.after.and_then(|after| after.fault), "fault on".to_string()),
+        ];
+        let named = curves.into_iter().filter_map(|(curve, name)| Some((curve?, format!(" {name} "))));
+        named
+            .map(|(curve, name)| {
+                let start_deg = 90.0 + curve.shift_rad.to_degrees() - 0.5 * cell_deg * name.chars().count() as f64;
+                (start_deg, curve.mean_mw + curve.amplitude_mw + self.raise_mw + cell_mw, name)
+            })
+            .collect()
     }
 
     /// The power that acts at an angle of the first swing; `None` where the swing does not come.

@@ -22,21 +22,25 @@ pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
         format!(" Changes of state, of data and of switches, newest first; the last {EVENTS_KEPT} are kept."),
         theme.quiet(),
     ));
-    let events = app.parcel.iter().flat_map(|parcel| parcel.chronicle.events.iter().rev());
-    let name_width = (width / 5).clamp(8, 24);
-    for event in events {
-        let time = event.time.with_timezone(&app.zone).format(" %-d %b %H:%M:%S ").to_string();
-        let mark = event.state.map_or(Span::raw(" "), |state| Span::styled(theme.mark(state), theme.badge(state)));
-        let corridor = text::left(event.corridor.as_deref().unwrap_or("feed"), name_width);
-        let room = width.saturating_sub(time.chars().count() + name_width + 3);
-        lines.push(Line::from(vec![
-            Span::styled(text::left(&time, 17), theme.quiet()),
-            mark,
-            Span::raw(format!(" {corridor} {}", text::cut(&event.text, room))),
-        ]));
-    }
+    lines.extend(events(app, theme, width));
     if lines.len() == 1 {
         lines.push(Line::raw(" Nothing yet."));
     }
     lines
+}
+
+/// Every event on a line, newest first.
+pub fn events(app: &App, theme: Theme, width: usize) -> impl Iterator<Item = Line<'static>> {
+    let name_width = (width / 5).clamp(8, 24);
+    let events = app.parcel.iter().flat_map(|parcel| parcel.chronicle.events.iter().rev());
+    events.map(move |event| {
+        let time = event.time.with_timezone(&app.zone).format(" %-d %b %H:%M:%S").to_string();
+        let mark = event.state.map_or(Span::raw(" "), |state| Span::styled(theme.mark(state), theme.badge(state)));
+        let corridor = text::left(event.corridor.as_deref().unwrap_or("feed"), name_width);
+        Line::from(vec![
+            Span::styled(text::left(&time, 17), theme.quiet()),
+            mark,
+            Span::raw(format!(" {corridor} {}", text::cut(&event.text, width.saturating_sub(name_width + 20)))),
+        ])
+    })
 }

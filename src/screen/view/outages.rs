@@ -16,7 +16,7 @@ use super::{
     text::{cut, left, right},
 };
 use crate::{
-    desk::{Binding, Criterion, OutageRecord},
+    desk::{Assessment, Binding, Criterion, OutageRecord},
     grid::Corridor,
     screen::state::{Drawn, Target},
 };
@@ -25,11 +25,7 @@ use crate::{
 pub fn draw(frame: &mut Frame, area: Rect, subject: &Subject, drawn: &mut Drawn) {
     let assessment = &subject.track.latest;
     if assessment.outages.is_empty() {
-        return nothing(
-            frame,
-            area,
-            "No outage is judged: the corridor has no state at this frame. See Data for what is missing.",
-        );
+        return nothing(frame, area, &why_none(assessment));
     }
     let width = usize::from(area.width);
     let name = width.saturating_sub(65).clamp(8, 30);
@@ -56,12 +52,21 @@ pub fn draw(frame: &mut Frame, area: Rect, subject: &Subject, drawn: &mut Drawn)
     frame.render_widget(Paragraph::new(story), rest.intersection(area));
 }
 
+fn why_none(assessment: &Assessment) -> String {
+    let missing: Vec<_> = assessment.fit.missing.iter().take(12).map(|name| cut(name, 30)).collect();
+    let missing = if missing.is_empty() { "nothing by name".into() } else { missing.join(", ") };
+    format!(
+        "BLIND: too little is measured to fix the state, so no outage is judged and no headroom is told. \
+         Missing: {missing}. Bring these back, or judge the corridor by your own rules until then."
+    )
+}
+
 fn heading(corridor: Option<&Corridor>, name: usize, theme: Theme) -> Vec<Line<'static>> {
     let clear = corridor
         .and_then(|corridor| corridor.fault)
         .map_or(String::new(), |fault| format!("of {}", number(Some(fault.clear_ms), 0)));
-    let gap = " ".repeat(name + 2);
-    let upper = format!("{gap}├ limit MW by criterion ─┤├ margin ──┤  clearing  short  lowest");
+    let mark = left(" ◂ sets it", name + 2);
+    let upper = format!("{mark}├ limit MW by criterion ─┤├ margin ──┤  clearing  short  lowest");
     let lower = format!("  {} angle  area  load  volt  angle  area  ms {:<7}  load      kV", left("lost", name), clear);
     vec![Line::styled(upper, theme.quiet()), Line::styled(lower, theme.quiet())]
 }

@@ -1,9 +1,11 @@
 //! All corridors: as cards where they fit, else in four lines each, in two, or in one on a wide screen.
 
+use std::iter;
+
 use ratatui::{Frame, layout::Rect, text::Line, widgets::Paragraph};
 
 use super::{
-    Theme, card,
+    Theme, card, messages,
     row::{Columns, Form},
     ruler, text,
 };
@@ -13,6 +15,9 @@ use crate::screen::state::{App, Drawn, Target};
 const CARD_WIDTH: u16 = 100;
 /// From this width a corridor fits on one line.
 const LINE_WIDTH: u16 = 160;
+
+/// Rows left over from which the latest messages are worth showing.
+const NEWS_HEIGHT: u16 = 4;
 
 /// Draws the overview.
 pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
@@ -65,6 +70,14 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
         }
         targets.push((at, Target::Corridor(index)));
     }
+    let used = count.saturating_mul(height);
+    let below = Rect { y: list.y.saturating_add(used), height: list.height.saturating_sub(used), ..list };
+    if below.height >= NEWS_HEIGHT {
+        let title = format!("─ latest messages {}", "─".repeat(usize::from(below.width).saturating_sub(19)));
+        let news = messages::events(app, theme, usize::from(below.width)).take(usize::from(below.height) - 1);
+        let lines: Vec<_> = iter::once(Line::styled(title, theme.quiet())).chain(news).collect();
+        frame.render_widget(Paragraph::new(lines), below);
+    }
     Drawn { first_row, rows_shown, scroll_max: 0, targets }
 }
 
@@ -80,7 +93,7 @@ fn waiting(frame: &mut Frame, area: Rect, app: &App) -> Drawn {
         String::new(),
         if ended { "The feed ended without a single frame." } else { "Waiting for the first frame." }.into(),
         String::new(),
-        format!("{} corridor(s) are configured. Inputs:", app.grid.corridors.len()),
+        format!("Corridors in the configuration: {}.", app.grid.corridors.len()),
     ];
     let feed = app.parcel.as_ref().map(|parcel| &parcel.feed);
     for input in feed.iter().flat_map(|feed| &feed.inputs) {

@@ -107,7 +107,7 @@ mod tests {
     #[test]
     fn the_right_edge_is_kept() {
         let line = spread(vec!["a long left text".into()], vec!["right".into()], 12);
-        assert_eq!(line.to_string(), "a long… right");
+        assert_eq!(line.to_string(), "a long…right");
         assert_eq!(spread(vec!["left".into()], vec!["right".into()], 12).to_string(), "left   right");
     }
 }

@@ -1,4 +1,6 @@
-//! Assessments for other programs and other people: one file a format.
+//! Assessments and configurations for other programs and other people: one file a format.
 
+pub mod check;
 pub mod jsonl;
 pub mod summary;
+mod table;

@@ -3,7 +3,7 @@
 use std::{fs, io::Write, path::Path, sync::Arc};
 
 use flate2::{Compression, write::GzEncoder};
-use tautline::feed::{Frame, InputState, Reader, Recorded};
+use tautline::feed::{Feed, Format, Frame, InputState, Patience, Reader, Recorded};
 use tempfile::TempDir;
 
 use crate::bed::{channels, lines, open, rest, seconds, status};
@@ -114,7 +114,7 @@ async fn what_cannot_be_opened_is_named() {
     let missing = folder.path().join("missing.jsonl");
     for path in [folder.path(), &missing] {
         let input = path.to_str().unwrap().parse().unwrap();
-        let error = tautline::feed::Feed::open(&[input], &channels(), Default::default()).await.unwrap_err();
+        let error = Feed::open(&[input], &channels(), Patience::default()).await.unwrap_err();
         assert!(error.to_string().starts_with(&format!("cannot open {}: ", path.display())), "{error}");
     }
 }
@@ -122,8 +122,7 @@ async fn what_cannot_be_opened_is_named() {
 #[test]
 fn memory_stays_flat_over_an_endless_line() {
     let endless = std::io::repeat(b'{');
-    let reader =
-        Reader::new("endless", std::io::Read::take(endless, 200 << 20), tautline::feed::Format::JsonLines, &channels());
+    let reader = Reader::new("endless", std::io::Read::take(endless, 200 << 20), Format::JsonLines, &channels());
     let before = resident_bytes();
     let channels: Arc<_> = channels();
     let mut recorded = Recorded::new(vec![reader], &channels);

@@ -2,7 +2,7 @@
 
 use std::net::SocketAddr;
 
-use tautline::feed::{Feed, InputState};
+use tautline::feed::{Feed, InputState, Patience};
 use tempfile::TempDir;
 use tokio::{
     io::{AsyncReadExt, AsyncWriteExt},
@@ -158,6 +158,6 @@ async fn too_many_datagrams_push_out_the_oldest() {
 async fn an_address_in_use_is_named() {
     let taken = TcpListener::bind("127.0.0.1:0").await.unwrap();
     let input = format!("tcp-listen://{}", taken.local_addr().unwrap());
-    let error = Feed::open(&[input.parse().unwrap()], &channels(), Default::default()).await.unwrap_err();
+    let error = Feed::open(&[input.parse().unwrap()], &channels(), Patience::default()).await.unwrap_err();
     assert!(error.to_string().starts_with(&format!("cannot open {input}: ")), "{error}");
 }

@@ -189,7 +189,7 @@ fn state_of(headroom_mw: f64) -> State {
 
 fn judged(name: &str, peak_mw: f64, before: &Picture) -> OutageRecord {
     let curve = PowerAngle { mean_mw: 0.0, amplitude_mw: peak_mw, shift_rad: 0.0 };
-    let fault = (!name.ends_with("SC")).then(|| PowerAngle { amplitude_mw: 0.3 * PEAK_MW, ..curve });
+    let fault = (!name.ends_with("SC")).then_some(PowerAngle { amplitude_mw: 0.3 * PEAK_MW, ..curve });
     let p_m = before.p_m_mw;
     let equilibrium = (p_m < peak_mw).then(|| (p_m / peak_mw).asin());
     let acceleration = fault.map_or(0.0, |fault| (p_m - fault.at(before.angle_rad)) / M_MW_S2);

@@ -100,14 +100,14 @@ impl Player {
 
     fn keep(&mut self) {
         let taken = self.here.taken;
-        if taken % self.spacing != 0 || self.kept.last().is_some_and(|last| last.taken >= taken) {
+        if !taken.is_multiple_of(self.spacing) || self.kept.last().is_some_and(|last| last.taken >= taken) {
             return;
         }
         self.kept.push(self.here.clone());
         if self.kept.len() > self.kept_max {
             self.spacing *= 2;
             let spacing = self.spacing;
-            self.kept.retain(|place| place.taken % spacing == 0);
+            self.kept.retain(|place| place.taken.is_multiple_of(spacing));
         }
     }
 

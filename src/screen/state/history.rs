@@ -20,7 +20,7 @@ impl History {
     pub(super) fn take(&mut self, time: DateTime<Utc>, headroom_mw: Option<f64>) {
         let minute = time.timestamp().div_euclid(60);
         let fresh = if self.lowest_mw.is_empty() { 1 } else { (minute - self.minute).max(0) };
-        for _ in 0..fresh.min(MINUTES_KEPT as i64) {
+        for _ in 0..usize::try_from(fresh).map_or(MINUTES_KEPT, |fresh| fresh.min(MINUTES_KEPT)) {
             if self.lowest_mw.len() == MINUTES_KEPT {
                 self.lowest_mw.pop_front();
             }

@@ -131,11 +131,7 @@ impl App {
         match code {
             KeyCode::Char(char) if typed.chars().count() < TYPED_MAX && !char.is_control() => typed.push(char),
             KeyCode::Backspace => drop(typed.pop()),
-            KeyCode::Esc => {
-                if self.typing.take() == Some(Typing::Filter) {
-                    self.filter.clear();
-                }
-            }
+            KeyCode::Esc if self.typing.take() == Some(Typing::Filter) => self.filter.clear(),
             KeyCode::Enter => {
                 if let Some(Typing::Time(text)) = self.typing.take() {
                     let near = self.playback()?.now?;
@@ -159,8 +155,8 @@ impl App {
             Page::Overview => self.move_in(&self.rows(), by),
             Page::Corridor if self.walks_outages() => self.walk_outages(by),
             _ => {
-                self.scroll =
-                    self.scroll.min(self.drawn.scroll_max).saturating_add_signed(by).min(self.drawn.scroll_max)
+                let end = self.drawn.scroll_max;
+                self.scroll = self.scroll.min(end).saturating_add_signed(by).min(end);
             }
         }
     }

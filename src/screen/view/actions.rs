@@ -16,7 +16,7 @@ pub fn lines(subject: &Subject, width: usize) -> Vec<Line<'static>> {
     let mut lines = Vec::new();
     match assessment.headroom_mw {
         None => {
-            lines.extend(paragraph("Nothing can be said of actions: the corridor has no state at this frame.", width))
+            lines.extend(paragraph("Nothing can be said of actions: the corridor has no state at this frame.", width));
         }
         Some(now) => {
             lines.push(heading("headroom after a single action, MW", theme));
@@ -66,16 +66,15 @@ fn reclose_words(reclose: &Reclose, max_angle_deg: f64, max_voltage_pct: f64) ->
         Some(false) => "must not be closed now",
         None => "cannot be judged",
     };
-    let mut words = format!(
-        "{} {verdict}: angle {} (check {}), voltage difference {} % (check {} %)",
+    let fits = reclose.transfer_to_fit_mw.map_or(String::new(), |transfer| {
+        format!("; the angle fits at {} MW of transfer", figures::mw(Some(transfer.floor())))
+    });
+    format!(
+        "{} {verdict}: angle {} (check {}), voltage difference {} % (check {} %){fits}",
         text::clean(&reclose.circuit),
         deg(reclose.angle_deg),
         deg(Some(max_angle_deg)),
         number(reclose.voltage_pct, 1),
         number(Some(max_voltage_pct), 0),
-    );
-    if let Some(transfer) = reclose.transfer_to_fit_mw {
-        words += &format!("; the angle fits at {} MW of transfer", figures::mw(Some(transfer.floor())));
-    }
-    words
+    )
 }

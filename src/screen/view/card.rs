@@ -83,7 +83,7 @@ pub fn title(track: &Track, chosen: bool, app: &App, theme: Theme, width: usize)
     ];
     let used: usize = left.iter().chain(&right).map(Span::width).sum();
     let rule = Span::styled("─".repeat(width.saturating_sub(used + 1)) + " ", theme.quiet());
-    Line::from_iter(left.into_iter().chain([rule]).chain(right))
+    left.into_iter().chain([rule]).chain(right).collect()
 }
 
 /// Transfer with its direction.

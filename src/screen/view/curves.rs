@@ -180,13 +180,13 @@ impl Shape for Drawing {
             if let Some(acting) = self.acting_mw(angle_rad) {
                 shade(painter, column, row_at(acting), level, rows);
             }
-            if column % 4 == 0 && level >= 0.0 {
+            if column.is_multiple_of(4) && level >= 0.0 {
                 dot(painter, column, level, rows);
             }
             let curves = [
                 (Some(self.now), column % 6 < 3),
                 (self.after.map(|after| after.curve), true),
-                (self.after.and_then(|after| after.fault), column % 3 == 0),
+                (self.after.and_then(|after| after.fault), column.is_multiple_of(3)),
             ];
             for ((curve, inked), last) in curves.into_iter().zip(&mut last) {
                 let Some(row) = curve.map(|curve| row_at(curve.at(angle_rad))) else { continue };
@@ -205,7 +205,11 @@ fn shade(painter: &mut Painter, column: usize, acting: f64, level: f64, rows: us
     for row in 0..rows {
         let at = row as f64;
         let inside = at > acting.min(level) && at < acting.max(level);
-        let inked = if speeds_up { column % 2 == 0 || row % 2 == 0 } else { column % 3 == 0 && row % 2 == 0 };
+        let inked = if speeds_up {
+            column.is_multiple_of(2) || row.is_multiple_of(2)
+        } else {
+            column.is_multiple_of(3) && row.is_multiple_of(2)
+        };
         if inside && inked {
             painter.paint(column, row, Color::Reset);
         }

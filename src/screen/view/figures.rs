@@ -54,7 +54,12 @@ pub fn duration(span: TimeDelta) -> String {
 
 /// Minutes ahead, rounded down.
 pub fn minutes(minutes: f64) -> String {
-    if minutes < 1.0 { "under 1 min".into() } else { duration(TimeDelta::seconds((minutes.min(1e6) * 60.0) as i64)) }
+    if minutes < 1.0 {
+        return "under 1 min".into();
+    }
+    #[allow(clippy::cast_possible_truncation, reason = "bounded; not a number gives the bound")]
+    let seconds = (minutes.min(1e6) * 60.0) as i64;
+    duration(TimeDelta::seconds(seconds))
 }
 
 /// Time of day.

@@ -169,9 +169,10 @@ fn story(outage: &OutageRecord, corridor: Option<&Corridor>) -> String {
     }
     let Some(picture) = outage.picture else { return format!("{name} out: nothing could be computed.") };
     let deg = |angle: Option<f64>| figures::deg(angle.map(f64::to_degrees));
-    let mut words = format!("{name} out: ");
-    words += &match (picture.equilibrium_rad, picture.swing_peak_rad) {
-        (None, _) => "the remaining network cannot carry this transfer: no balance, the sides fall out of step.".into(),
+    let swing = match (picture.equilibrium_rad, picture.swing_peak_rad) {
+        (None, _) => {
+            "the remaining network cannot carry this transfer: no balance, the sides fall out of step.".to_string()
+        }
         (Some(_), None) => format!(
             "the first swing passes the tipping point at {} and the sides fall out of step.",
             deg(picture.tipping_rad)
@@ -183,16 +184,13 @@ fn story(outage: &OutageRecord, corridor: Option<&Corridor>) -> String {
             deg(picture.tipping_rad)
         ),
     };
-    if let (Some(circuit), Some(_)) = (&outage.loaded_circuit, outage.loading_pct) {
-        words += &format!(
-            " Busiest: {} at {} of its short-time rating.",
-            cut(circuit, 20),
-            figures::percent(outage.loading_pct)
-        );
-    }
-    if let Some(low) = lowest_kv(outage, corridor) {
+    let busiest = outage.loaded_circuit.as_ref().map_or(String::new(), |circuit| {
+        let loading = figures::percent(outage.loading_pct);
+        format!(" Busiest: {} at {loading} of its short-time rating.", cut(circuit, 20))
+    });
+    let lowest = lowest_kv(outage, corridor).map_or(String::new(), |low| {
         let floor = low.floor_kv.map_or(String::new(), |floor| format!(" (floor {})", number(Some(floor), 0)));
-        words += &format!(" Lowest: {} at {} kV{floor}.", cut(low.bus, 20), number(Some(low.kv), 1));
-    }
-    words
+        format!(" Lowest: {} at {} kV{floor}.", cut(low.bus, 20), number(Some(low.kv), 1))
+    });
+    format!("{name} out: {swing}{busiest}{lowest}")
 }

@@ -7,10 +7,7 @@
 //! The line is taut up to now (●), goes on to the balance after the outage (◆) and the top of the swing (▶). What is
 //! left from there to the tipping point (┃) is dotted, so that the eye sees the distance that counts.
 
-use ratatui::{
-    style::Style,
-    text::{Line, Span},
-};
+use ratatui::text::{Line, Span};
 use unicode_width::UnicodeWidthStr;
 
 use super::{Theme, figures};
@@ -143,7 +140,7 @@ pub fn scale(width: usize, theme: Theme) -> Line<'static> {
             text += &label;
         }
     }
-    Line::styled(text, Style::from(theme.quiet()))
+    Line::styled(text, theme.quiet())
 }
 
 /// The cell of an angle.

@@ -28,7 +28,7 @@ const POSSIBLE: std::ops::Range<f64> = 0.1..3.0;
 const LONGEST_STEP: f64 = 0.5;
 
 /// Measurements in use, unknowns, and everything that an iteration needs.
-#[derive(Debug, Default)]
+#[derive(Debug, Clone, Default)]
 pub(super) struct Estimator {
     /// By meter: value, one over σ (0: not used), and the load drawn at nominal voltage where it is assumed.
     pub z: Vec<f64>,

@@ -6,7 +6,7 @@ const WIDEST_SPREAD: f64 = 0.1;
 const ROUNDING: f64 = 1e-13;
 
 /// Symmetric positive definite, lower triangle, with one more row and column that takes what concerns fixed quantities.
-#[derive(Debug, Default)]
+#[derive(Debug, Clone, Default)]
 pub(super) struct Gain {
     unknowns: usize,
     g: Vec<f64>,

@@ -11,7 +11,7 @@ use crate::{
 const REMEMBERED: usize = 8;
 
 /// A circuit in service.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub(super) struct Wire {
     pub buses: [BusIndex; 2],
     pub meters: [Meter; 4],
@@ -31,7 +31,7 @@ pub(super) struct Flow {
 }
 
 /// What one topology joins.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub(super) struct Wiring {
     pub topology: Topology,
     /// By bus: the terminal that holds it, `TO` where both do; `None`: not in service.
@@ -40,7 +40,7 @@ pub(super) struct Wiring {
 }
 
 /// Branches of circuits by the state of their banks.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub(super) struct Branches(Vec<Vec<(Vec<bool>, Branch)>>);
 
 impl Branches {

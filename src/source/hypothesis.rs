@@ -1,0 +1,193 @@
+//! What a step was, and what it says about the impedances.
+//!
+//! With the terminal states before and after it, the voltages behind the sources may be eliminated: a side that did not
+//! move has the same E = |V + Z·I| on both sides of the step, but for its background wander; a side that moved has it to
+//! within the size of steps. So all four cases are the same two measurements, E_after − E_before = 0 for either side, with
+//! different variances, of x = (Z, state before, state after). δ is free in all of them.
+
+use nalgebra::{Complex, Matrix2, SMatrix, SVector, Vector2, Vector3, Vector4};
+
+use super::{
+    estimate::Belief,
+    log::Moved,
+    terminal::{Terminal, behind},
+};
+
+const CASES: [Moved; 4] = [Moved::Neither, Moved::From, Moved::To, Moved::Both];
+/// Iterations of the extended Kalman update.
+const ITERATIONS: usize = 5;
+
+type State = SVector<f64, 10>;
+type Covariance = SMatrix<f64, 10, 10>;
+type Jacobian = SMatrix<f64, 2, 10>;
+
+/// One side of a step: terminal state, its covariance, and the network at the time.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Moment {
+    pub(super) state: Vector3<f64>,
+    pub(super) covariance: nalgebra::Matrix3<f64>,
+    pub(super) y: Matrix2<Complex<f64>>,
+}
+
+impl Moment {
+    pub(super) fn new(fit: &Terminal, covariance: nalgebra::Matrix3<f64>, y: Matrix2<Complex<f64>>) -> Self {
+        Self { state: fit.state, covariance, y }
+    }
+}
+
+/// A step to be judged.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Event {
+    pub(super) before: Moment,
+    pub(super) after: Moment,
+    /// Variance of the wander of each side's voltage, kV².
+    pub(super) wander: [f64; 2],
+    /// Variance of the voltage of a side that moves, kV².
+    pub(super) move_variance: f64,
+    /// Probabilities of the cases beforehand: neither, from, to, both.
+    pub(super) prior: [f64; 4],
+}
+
+/// The step judged.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Verdict {
+    pub(super) belief: Belief,
+    /// Of the cases: neither, from, to, both.
+    pub(super) probability: [f64; 4],
+    pub(super) de_kv: [f64; 2],
+    /// Normalised innovation (root of the squared sum over the sides that stood still) of each case.
+    pub(super) innovation: [f64; 4],
+}
+
+impl Verdict {
+    pub(super) fn most_probable(&self) -> (Moved, f64) {
+        let best = (0..4).max_by(|&a, &b| self.probability[a].total_cmp(&self.probability[b])).unwrap_or(0);
+        (CASES[best], self.probability[best])
+    }
+}
+
+struct Updated {
+    belief: Belief,
+    log_likelihood: f64,
+    innovation: f64,
+}
+
+impl Event {
+    /// Updates each case, weighs it by its likelihood, and merges all to one mean and covariance (Bar-Shalom, Li and
+    /// Kirubarajan 2001, 11.6). `None` where no case can be computed.
+    pub(super) fn judge(&self, prior: &Belief) -> Option<Verdict> {
+        let mut cases: [Option<Updated>; 4] = [None, None, None, None];
+        let possible = prior.log_possible();
+        for (k, case) in CASES.iter().enumerate() {
+            cases[k] = self.update(prior, *case);
+        }
+        let log_weight: [f64; 4] = std::array::from_fn(|k| match &cases[k] {
+            Some(case) => self.prior[k].ln() + case.log_likelihood + case.belief.log_possible() - possible,
+            None => f64::NEG_INFINITY,
+        });
+        let largest = log_weight.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+        if !largest.is_finite() {
+            return None;
+        }
+        let weight = log_weight.map(|w| (w - largest).exp());
+        let total: f64 = weight.iter().sum();
+        let probability = weight.map(|w| w / total);
+        let belief = merge(&cases, &probability);
+        let [r1, r2] = self.change(&belief.cut_at_zero().mean).0.into();
+        Some(Verdict {
+            belief,
+            probability,
+            de_kv: [r1, r2],
+            innovation: std::array::from_fn(|k| cases[k].as_ref().map_or(f64::INFINITY, |c| c.innovation)),
+        })
+    }
+
+    /// E_after − E_before of both sides, and its Jacobian.
+    fn change(&self, z: &Vector4<f64>) -> (Vector2<f64>, Jacobian) {
+        self.change_at(z, &self.before.state, &self.after.state)
+    }
+
+    fn change_at(&self, z: &Vector4<f64>, before: &Vector3<f64>, after: &Vector3<f64>) -> (Vector2<f64>, Jacobian) {
+        let old = behind(z, before, &self.before.y);
+        let new = behind(z, after, &self.after.y);
+        let mut jacobian = Jacobian::zeros();
+        for side in 0..2 {
+            for k in 0..2 {
+                jacobian[(side, 2 * side + k)] = new[side].by_impedance[k] - old[side].by_impedance[k];
+            }
+            for k in 0..3 {
+                jacobian[(side, 4 + k)] = -old[side].by_state[k];
+                jacobian[(side, 7 + k)] = new[side].by_state[k];
+            }
+        }
+        (Vector2::from_fn(|side, _| new[side].e_kv - old[side].e_kv), jacobian)
+    }
+
+    /// Iterated extended Kalman update (Bar-Shalom, Li and Kirubarajan 2001, 10.5.2), covariance in Joseph's form.
+    fn update(&self, prior: &Belief, case: Moved) -> Option<Updated> {
+        let moved = [matches!(case, Moved::From | Moved::Both), matches!(case, Moved::To | Moved::Both)];
+        let noise = Matrix2::from_diagonal(&Vector2::from_fn(|side, _| {
+            self.wander[side] + if moved[side] { self.move_variance } else { 0.0 }
+        }));
+        let mut mean = State::zeros();
+        let mut covariance = Covariance::zeros();
+        mean.fixed_rows_mut::<4>(0).copy_from(&prior.mean);
+        mean.fixed_rows_mut::<3>(4).copy_from(&self.before.state);
+        mean.fixed_rows_mut::<3>(7).copy_from(&self.after.state);
+        covariance.fixed_view_mut::<4, 4>(0, 0).copy_from(&prior.covariance);
+        covariance.fixed_view_mut::<3, 3>(4, 4).copy_from(&self.before.covariance);
+        covariance.fixed_view_mut::<3, 3>(7, 7).copy_from(&self.after.covariance);
+
+        let mut x = mean;
+        for _ in 0..ITERATIONS {
+            let (innovation, h, spread) = self.innovation(&x, &mean, &covariance, &noise);
+            x = mean + covariance * h.transpose() * spread.cholesky()?.solve(&innovation);
+        }
+        let (innovation, h, spread) = self.innovation(&x, &mean, &covariance, &noise);
+        let root = spread.cholesky()?;
+        let gain = covariance * h.transpose() * root.inverse();
+        let rest = Covariance::identity() - gain * h;
+        let posterior = rest * covariance * rest.transpose() + gain * noise * gain.transpose();
+        let distance = innovation.dot(&root.solve(&innovation));
+        let still: f64 =
+            (0..2).filter(|&side| !moved[side]).map(|side| innovation[side].powi(2) / spread[(side, side)]).sum();
+        let belief = Belief {
+            mean: x.fixed_rows::<4>(0).into_owned(),
+            covariance: symmetric(&posterior.fixed_view::<4, 4>(0, 0).into_owned()),
+        };
+        let finite = belief.mean.iter().chain(belief.covariance.iter()).all(|v| v.is_finite());
+        finite.then(|| Updated {
+            belief,
+            log_likelihood: -0.5 * (distance + root.determinant().ln()),
+            innovation: still.sqrt(),
+        })
+    }
+
+    /// Innovation about the point `x`, its Jacobian and its covariance.
+    fn innovation(
+        &self,
+        x: &State,
+        mean: &State,
+        covariance: &Covariance,
+        noise: &Matrix2<f64>,
+    ) -> (Vector2<f64>, Jacobian, Matrix2<f64>) {
+        let z = x.fixed_rows::<4>(0).into_owned();
+        let (change, h) =
+            self.change_at(&z, &x.fixed_rows::<3>(4).into_owned(), &x.fixed_rows::<3>(7).into_owned());
+        (-change - h * (mean - x), h, h * covariance * h.transpose() + noise)
+    }
+}
+
+fn merge(cases: &[Option<Updated>; 4], probability: &[f64; 4]) -> Belief {
+    let weighted = || cases.iter().zip(probability).filter_map(|(case, p)| case.as_ref().map(|c| (&c.belief, *p)));
+    let mean = weighted().fold(Vector4::zeros(), |sum, (belief, p)| sum + belief.mean * p);
+    let covariance = weighted().fold(SMatrix::zeros(), |sum, (belief, p)| {
+        let off = belief.mean - mean;
+        sum + (belief.covariance + off * off.transpose()) * p
+    });
+    Belief { mean, covariance: symmetric(&covariance) }
+}
+
+fn symmetric(matrix: &SMatrix<f64, 4, 4>) -> SMatrix<f64, 4, 4> {
+    (matrix + matrix.transpose()) * 0.5
+}

@@ -1,0 +1,1 @@
+//! Keeps what was learned over a restart.

@@ -16,6 +16,8 @@ use super::{
 const CASES: [Moved; 4] = [Moved::Neither, Moved::From, Moved::To, Moved::Both];
 /// Iterations of the extended Kalman update.
 const ITERATIONS: usize = 5;
+/// Stands for any change of a voltage that may move freely.
+const FREE_KV: f64 = 1e4;
 
 type State = SVector<f64, 10>;
 type Covariance = SMatrix<f64, 10, 10>;
@@ -124,11 +126,14 @@ impl Event {
     }
 
     /// Iterated extended Kalman update (Bar-Shalom, Li and Kirubarajan 2001, 10.5.2), covariance in Joseph's form.
+    ///
+    /// A side that moved says nothing about its impedance: its size only weighs the case.
     fn update(&self, prior: &Belief, case: Moved) -> Option<Updated> {
         let moved = [matches!(case, Moved::From | Moved::Both), matches!(case, Moved::To | Moved::Both)];
-        let noise = Matrix2::from_diagonal(&Vector2::from_fn(|side, _| {
-            self.wander[side] + if moved[side] { self.move_variance } else { 0.0 }
-        }));
+        let noise = |of_move: f64| {
+            Matrix2::from_diagonal(&Vector2::from_fn(|side, _| self.wander[side] + if moved[side] { of_move } else { 0.0 }))
+        };
+        let free = noise(FREE_KV.powi(2));
         let mut mean = State::zeros();
         let mut covariance = Covariance::zeros();
         mean.fixed_rows_mut::<4>(0).copy_from(&prior.mean);
@@ -140,21 +145,26 @@ impl Event {
 
         let mut x = mean;
         for _ in 0..ITERATIONS {
-            let (innovation, h, spread) = self.innovation(&x, &mean, &covariance, &noise);
+            let (innovation, h) = self.innovation(&x, &mean);
+            let spread = h * covariance * h.transpose() + free;
             x = mean + covariance * h.transpose() * spread.cholesky()?.solve(&innovation);
         }
-        let (innovation, h, spread) = self.innovation(&x, &mean, &covariance, &noise);
-        let root = spread.cholesky()?;
-        let gain = covariance * h.transpose() * root.inverse();
+        let (innovation, h) = self.innovation(&x, &mean);
+        let gain = covariance * h.transpose() * (h * covariance * h.transpose() + free).cholesky()?.inverse();
         let rest = Covariance::identity() - gain * h;
-        let posterior = rest * covariance * rest.transpose() + gain * noise * gain.transpose();
+        let posterior = rest * covariance * rest.transpose() + gain * free * gain.transpose();
+        let spread = h * covariance * h.transpose() + noise(self.move_variance);
+        let root = spread.cholesky()?;
         let distance = innovation.dot(&root.solve(&innovation));
         let still: f64 =
             (0..2).filter(|&side| !moved[side]).map(|side| innovation[side].powi(2) / spread[(side, side)]).sum();
-        let belief = Belief {
-            mean: x.fixed_rows::<4>(0).into_owned(),
-            covariance: symmetric(&posterior.fixed_view::<4, 4>(0, 0).into_owned()),
-        };
+        let covariance_z = symmetric(&posterior.fixed_view::<4, 4>(0, 0).into_owned());
+        let mean_z = x.fixed_rows::<4>(0).into_owned();
+        let of_state = h.fixed_view::<2, 6>(0, 4) * covariance.fixed_view::<6, 6>(4, 4) * h.fixed_view::<2, 6>(0, 4).transpose();
+        let share = std::array::from_fn(|side| {
+            if moved[side] { 0.0 } else { self.wander[side] / (self.wander[side] + of_state[(side, side)]) }
+        });
+        let belief = Belief { mean: mean_z + covariance_z * self.volume_slope(&mean_z, &share), covariance: covariance_z };
         let finite = belief.mean.iter().chain(belief.covariance.iter()).all(|v| v.is_finite());
         finite.then(|| Updated {
             belief,
@@ -163,18 +173,30 @@ impl Event {
         })
     }
 
-    /// Innovation about the point `x`, its Jacobian and its covariance.
-    fn innovation(
-        &self,
-        x: &State,
-        mean: &State,
-        covariance: &Covariance,
-        noise: &Matrix2<f64>,
-    ) -> (Vector2<f64>, Jacobian, Matrix2<f64>) {
+    /// The wander of a side's voltage drives its own current, so that least squares alone reads every impedance too small.
+    /// The likelihood of what was measured holds the volume that the voltages behind the impedances gain over
+    /// those at the terminals, |∂E/∂V|; this is the slope of its logarithm by the impedances, as far as wander and
+    /// not noise makes up the residual (`share`).
+    fn volume_slope(&self, z: &Vector4<f64>, share: &[f64; 2]) -> Vector4<f64> {
+        const STEP_OHM: f64 = 1e-3;
+        let log_volume = |z: &Vector4<f64>| {
+            let [a, b] = behind(z, &self.after.state, &self.after.y).map(|side| side.by_state);
+            (a[0] * b[1] - a[1] * b[0]).abs().max(f64::MIN_POSITIVE).ln()
+        };
+        Vector4::from_fn(|k, _| {
+            let mut up = *z;
+            let mut down = *z;
+            up[k] += STEP_OHM;
+            down[k] -= STEP_OHM;
+            share[k / 2] * (log_volume(&up) - log_volume(&down)) / (2.0 * STEP_OHM)
+        })
+    }
+
+    /// Innovation about the point `x` and its Jacobian.
+    fn innovation(&self, x: &State, mean: &State) -> (Vector2<f64>, Jacobian) {
         let z = x.fixed_rows::<4>(0).into_owned();
-        let (change, h) =
-            self.change_at(&z, &x.fixed_rows::<3>(4).into_owned(), &x.fixed_rows::<3>(7).into_owned());
-        (-change - h * (mean - x), h, h * covariance * h.transpose() + noise)
+        let (change, h) = self.change_at(&z, &x.fixed_rows::<3>(4).into_owned(), &x.fixed_rows::<3>(7).into_owned());
+        (-change - h * (mean - x), h)
     }
 }
 

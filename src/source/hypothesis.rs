@@ -68,10 +68,13 @@ impl Verdict {
     }
 }
 
-struct Updated {
-    belief: Belief,
+/// One case, updated.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Updated {
+    pub(super) belief: Belief,
     log_likelihood: f64,
-    innovation: f64,
+    /// Normalised innovation: root of the squared sum over the sides that stood still.
+    pub(super) innovation: f64,
 }
 
 impl Event {
@@ -128,7 +131,7 @@ impl Event {
     /// Iterated extended Kalman update (Bar-Shalom, Li and Kirubarajan 2001, 10.5.2), covariance in Joseph's form.
     ///
     /// A side that moved says nothing about its impedance: its size only weighs the case.
-    fn update(&self, prior: &Belief, case: Moved) -> Option<Updated> {
+    pub(super) fn update(&self, prior: &Belief, case: Moved) -> Option<Updated> {
         let moved = [matches!(case, Moved::From | Moved::Both), matches!(case, Moved::To | Moved::Both)];
         let noise = |of_move: f64| {
             Matrix2::from_diagonal(&Vector2::from_fn(|side, _| self.wander[side] + if moved[side] { of_move } else { 0.0 }))

@@ -30,10 +30,14 @@ const GAP_BEFORE: f64 = 0.25;
 const MOVE_PART: f64 = 0.01;
 /// Probabilities beforehand of neither, from, to and both having moved.
 const PRIOR: [f64; 4] = [0.05, 0.45, 0.45, 0.05];
+/// How fast the share of steps that moved both sides is followed.
+const BOTH_MEMORY: f64 = 0.05;
 /// The same when the corridor itself was switched.
 const PRIOR_SWITCHED: [f64; 4] = [0.8, 0.09, 0.09, 0.02];
 /// Normalised innovation beyond which a case does not explain a step.
 const UNEXPLAINED: f64 = 5.0;
+/// Normalised innovation up to which two such steps agree.
+const AGREES: f64 = 3.0;
 const UNEXPLAINED_WITHIN_S: f64 = 3600.0;
 
 /// Learns both sides' impedances of one corridor.
@@ -57,7 +61,8 @@ pub struct Learner {
     candidate: Option<Candidate>,
     switched: Option<Onset>,
     quiet_from_s: f64,
-    unexplained_s: [Option<f64>; 2],
+    doubt: [Option<Doubt>; 2],
+    both: f64,
     steps: VecDeque<Step>,
     history: VecDeque<SpreadPoint>,
 }
@@ -69,6 +74,13 @@ struct Candidate {
     score: f64,
     change: Measured,
     first_s: f64,
+}
+
+/// What an impedance would be after a step that fits it no more.
+#[derive(Debug, Clone, Copy)]
+struct Doubt {
+    time_s: f64,
+    belief: Belief,
 }
 
 /// The last instant before a step and the first after it.
@@ -102,7 +114,8 @@ impl Learner {
             candidate: None,
             switched: None,
             quiet_from_s: f64::NEG_INFINITY,
-            unexplained_s: [None; 2],
+            doubt: [None; 2],
+            both: PRIOR[3],
             steps: VecDeque::with_capacity(LOGGED),
             history: VecDeque::with_capacity(HISTORY),
         };
@@ -289,7 +302,7 @@ impl Learner {
         let event = self.event(&before, &after, onset.switched)?;
         self.age(onset.after_s);
         let verdict = event.judge(&self.belief)?;
-        Some(self.settle(onset, &verdict))
+        Some(self.settle(onset, &event, &verdict))
     }
 
     fn event(&mut self, before: &Window, after: &Window, switched: bool) -> Option<Event> {
@@ -310,14 +323,19 @@ impl Learner {
             after: to,
             wander,
             move_variance: (MOVE_PART * 0.5 * (before.measured[0] + before.measured[1])).powi(2),
-            prior: if switched { PRIOR_SWITCHED } else { PRIOR },
+            prior: if switched { PRIOR_SWITCHED } else { self.prior() },
         })
     }
 
+    /// The cases beforehand, with both sides at once as frequent as they were lately.
+    fn prior(&self) -> [f64; 4] {
+        let rest = (1.0 - self.both) / (1.0 - PRIOR[3]);
+        [PRIOR[0] * rest, PRIOR[1] * rest, PRIOR[2] * rest, self.both]
+    }
+
     /// Takes over a verdict and writes it down.
-    fn settle(&mut self, onset: &Onset, verdict: &Verdict) -> Step {
+    fn settle(&mut self, onset: &Onset, event: &Event, verdict: &Verdict) -> Step {
         let (moved, probability) = verdict.most_probable();
-        self.belief = verdict.belief;
         let [neither, from, to, _] = verdict.probability;
         if neither + to > 0.5 {
             self.estimate.steps[0] += 1;
@@ -325,8 +343,12 @@ impl Learner {
         if neither + from > 0.5 {
             self.estimate.steps[1] += 1;
         }
+        if !onset.switched {
+            self.both += BOTH_MEMORY * (verdict.probability[3] - self.both);
+            self.both = self.both.max(PRIOR[3]);
+        }
         let explained = verdict.innovation[..3].iter().any(|i| *i <= UNEXPLAINED);
-        let widened = self.watch(onset.after_s, verdict, explained);
+        let widened = self.watch(onset.after_s, event, verdict, explained);
         self.refresh();
         let step = Step {
             time: time(0.5 * (onset.before_s + onset.after_s)),
@@ -341,27 +363,37 @@ impl Learner {
         step
     }
 
-    /// Widens the spread of a side again that two steps within an hour do not fit, with none between that does.
-    fn watch(&mut self, now_s: f64, verdict: &Verdict, explained: bool) -> bool {
+    /// Takes the belief over, and widens it again for a side whose impedance two steps within an hour contradict, both in
+    /// favour of the same other value, with none between that fits.
+    fn watch(&mut self, now_s: f64, event: &Event, verdict: &Verdict, explained: bool) -> bool {
+        self.belief = verdict.belief;
         let [_, from, to, _] = verdict.innovation;
-        let tested = usize::from(from < to);
+        let (tested, case) = if from < to { (1, Moved::From) } else { (0, Moved::To) };
         if explained {
             let [neither, from, to, _] = verdict.probability;
             if [neither + to, neither + from][tested] > 0.5 {
-                self.unexplained_s[tested] = None;
+                self.doubt[tested] = None;
             }
             return false;
         }
-        let again = self.unexplained_s[tested].is_some_and(|s| now_s - s <= UNEXPLAINED_WITHIN_S);
-        self.unexplained_s[tested] = if again { None } else { Some(now_s) };
-        if again {
-            for k in [2 * tested, 2 * tested + 1] {
-                self.belief.covariance.row_mut(k).fill(0.0);
-                self.belief.covariance.column_mut(k).fill(0.0);
-                self.belief.covariance[(k, k)] = self.configured.covariance[(k, k)];
-            }
+        let earlier = self.doubt[tested].take().filter(|d| now_s - d.time_s <= UNEXPLAINED_WITHIN_S);
+        let fits = |belief: &Belief| event.update(belief, case).filter(|u| u.innovation <= AGREES);
+        if earlier.is_some_and(|d| fits(&d.belief).is_some()) {
+            self.widen(tested);
+            return true;
         }
-        again
+        let mut open = self.clone();
+        open.widen(tested);
+        self.doubt[tested] = fits(&open.belief).map(|u| Doubt { time_s: now_s, belief: u.belief });
+        false
+    }
+
+    fn widen(&mut self, side: usize) {
+        for k in [2 * side, 2 * side + 1] {
+            self.belief.covariance.row_mut(k).fill(0.0);
+            self.belief.covariance.column_mut(k).fill(0.0);
+            self.belief.covariance[(k, k)] = self.configured.covariance[(k, k)];
+        }
     }
 
     /// Lets the spread grow with time, up to the configured one.

@@ -1,6 +1,6 @@
 //! What is known of both impedances: a normal distribution, and what remains of it where R ≥ 0 and X > 0.
 
-use nalgebra::{Matrix4, Vector4};
+use nalgebra::{Complex, Matrix4, Vector4};
 use statrs::function::erf::erfc;
 
 use crate::grid::ConfiguredSource;
@@ -17,6 +17,22 @@ pub struct Estimate {
 }
 
 impl Estimate {
+    /// As configured.
+    pub fn configured(sources: &[ConfiguredSource; 2]) -> Self {
+        let [a, b] = sources;
+        let sd = Vector4::new(a.r_sd_ohm(), a.x_sd_ohm(), b.r_sd_ohm(), b.x_sd_ohm());
+        Self {
+            mean: Vector4::new(a.r_ohm, a.x_ohm, b.r_ohm, b.x_ohm),
+            covariance: Matrix4::from_diagonal(&sd.component_mul(&sd)),
+            steps: [0, 0],
+        }
+    }
+
+    /// The impedances behind `from` and `to`, ohm.
+    pub fn z_ohm(&self) -> [Complex<f64>; 2] {
+        [0, 2].map(|k| Complex::new(self.mean[k], self.mean[k + 1]))
+    }
+
     /// Standard deviation of each.
     pub fn sd(&self) -> Vector4<f64> {
         self.covariance.diagonal().map(|v| v.max(0.0).sqrt())
@@ -32,12 +48,19 @@ pub(super) struct Belief {
 
 impl Belief {
     pub(super) fn configured(sources: &[ConfiguredSource; 2]) -> Self {
-        let [a, b] = sources;
-        let sd = Vector4::new(a.r_sd_ohm(), a.x_sd_ohm(), b.r_sd_ohm(), b.x_sd_ohm());
-        Self {
-            mean: Vector4::new(a.r_ohm, a.x_ohm, b.r_ohm, b.x_ohm),
-            covariance: Matrix4::from_diagonal(&sd.component_mul(&sd)),
+        let Estimate { mean, covariance, .. } = Estimate::configured(sources);
+        Self { mean, covariance }
+    }
+
+    /// The same with one side's spread as configured.
+    pub(super) fn opened(&self, side: usize, configured: &Self) -> Self {
+        let mut open = *self;
+        for k in [2 * side, 2 * side + 1] {
+            open.covariance.row_mut(k).fill(0.0);
+            open.covariance.column_mut(k).fill(0.0);
+            open.covariance[(k, k)] = configured.covariance[(k, k)];
         }
+        open
     }
 
     /// Logarithm of the probability that all four are possible, each taken alone.

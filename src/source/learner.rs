@@ -5,14 +5,14 @@ use std::collections::VecDeque;
 use chrono::{DateTime, TimeDelta, Utc};
 
 use super::{
-    Estimate, Moved, Observation, Settings, SpreadPoint, Step,
+    Estimate, Moved, Observation, SpreadPoint, Step,
     background::Background,
     estimate::Belief,
     hypothesis::{Event, Moment, Verdict},
     terminal::{Measured, Terminal, behind, state_covariance},
     window::{Bin, Recent, Window},
 };
-use crate::grid::ConfiguredSource;
+use crate::{config::LearningSettings, grid::ConfiguredSource};
 
 /// Steps kept in the log.
 const LOGGED: usize = 64;
@@ -43,7 +43,7 @@ const UNEXPLAINED_WITHIN_S: f64 = 3600.0;
 /// Learns both sides' impedances of one corridor.
 #[derive(Debug, Clone)]
 pub struct Learner {
-    settings: Settings,
+    settings: LearningSettings,
     configured: Belief,
     belief: Belief,
     aged_s: Option<f64>,
@@ -93,14 +93,14 @@ struct Onset {
 
 impl Learner {
     /// Starts from what is configured.
-    pub fn new(sources: &[ConfiguredSource; 2], settings: Settings) -> Self {
+    pub fn new(sources: &[ConfiguredSource; 2], settings: LearningSettings) -> Self {
         let configured = Belief::configured(sources);
         let mut learner = Self {
             settings,
             configured,
             belief: configured,
             aged_s: None,
-            estimate: Estimate { mean: configured.mean, covariance: configured.covariance, steps: [0; 2] },
+            estimate: Estimate::configured(sources),
             recent: Recent::new(),
             open: None,
             segment: 0,
@@ -379,21 +379,12 @@ impl Learner {
         let earlier = self.doubt[tested].take().filter(|d| now_s - d.time_s <= UNEXPLAINED_WITHIN_S);
         let fits = |belief: &Belief| event.update(belief, case).filter(|u| u.innovation <= AGREES);
         if earlier.is_some_and(|d| fits(&d.belief).is_some()) {
-            self.widen(tested);
+            self.belief = self.belief.opened(tested, &self.configured);
             return true;
         }
-        let mut open = self.clone();
-        open.widen(tested);
-        self.doubt[tested] = fits(&open.belief).map(|u| Doubt { time_s: now_s, belief: u.belief });
+        let open = self.belief.opened(tested, &self.configured);
+        self.doubt[tested] = fits(&open).map(|u| Doubt { time_s: now_s, belief: u.belief });
         false
-    }
-
-    fn widen(&mut self, side: usize) {
-        for k in [2 * side, 2 * side + 1] {
-            self.belief.covariance.row_mut(k).fill(0.0);
-            self.belief.covariance.column_mut(k).fill(0.0);
-            self.belief.covariance[(k, k)] = self.configured.covariance[(k, k)];
-        }
     }
 
     /// Lets the spread grow with time, up to the configured one.

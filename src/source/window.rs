@@ -69,9 +69,6 @@ impl Recent {
         self.bins.push_back(bin);
     }
 
-    pub(super) fn last(&self) -> Option<&Bin> {
-        self.bins.back()
-    }
 
     pub(super) fn iter(&self) -> impl DoubleEndedIterator<Item = &Bin> {
         self.bins.iter()

@@ -5,11 +5,11 @@ mod orrin_tesk;
 mod simulator;
 
 use simulator::Drill;
-use tautline::source::{Learner, Moved, Settings};
+use tautline::{config::LearningSettings, source::{Learner, Moved}};
 
 #[test]
 fn a_recorded_day_comes_to_the_truth() {
-    let mut learner = Learner::new(&orrin_tesk::configured(), Settings::default());
+    let mut learner = Learner::new(&orrin_tesk::configured(), LearningSettings::default());
     for seen in orrin_tesk::day() {
         if let Some(step) = learner.observe(&seen) { let e = learner.estimate(); let sd = e.sd();
             println!("{} {:?} p={:.2} de={:.2} {:.2} topo={} ex={} | X1 {:.2}±{:.2} X2 {:.2}±{:.2} R {:.2}±{:.2} {:.2}±{:.2}", step.time.format("%H:%M:%S"), step.moved, step.probability, step.de_kv[0], step.de_kv[1], step.topology_changed, step.explained, e.mean[1], sd[1], e.mean[3], sd[3],e.mean[0], sd[0], e.mean[2], sd[2]); }
@@ -24,7 +24,7 @@ fn a_recorded_day_comes_to_the_truth() {
 fn run(drill: simulator::Drill) -> Outcome {
     let mut simulator = simulator::Simulator::new(drill);
     let f = |k: &str, d: f64| std::env::var(k).ok().and_then(|v| v.parse().ok()).unwrap_or(d);
-    let mut learner = Learner::new(&simulator.configured, Settings { window_s: f("W", 10.0), gap_s: f("G", 6.0), step_threshold: f("T", 5.0), aging_ohm_per_sqrt_day: f("A", 1.0), ..Settings::default() });
+    let mut learner = Learner::new(&simulator.configured, LearningSettings { window_s: f("W", 10.0), gap_s: f("G", 6.0), step_threshold: f("T", 5.0), aging_ohm_per_sqrt_day: f("A", 1.0), ..LearningSettings::default() });
     let mut steps = Vec::new();
     while let Some(seen) = simulator.next() {
         steps.extend(learner.observe(&seen));

@@ -165,7 +165,7 @@ struct Seat {
 }
 
 impl Bench {
-    fn new(options: &Options, config: &Config, channels: &Channels) -> Result<Self, Failure> {
+    fn new(options: &Options, config: &Config, channels: &Arc<Channels>) -> Result<Self, Failure> {
         let max_age = TimeDelta::milliseconds((config.feed.max_age_s * 1000.0) as i64);
         let seat = |desk| Seat { desk, last_only: options.last, last: None, records: Vec::new(), ends: Vec::new() };
         Ok(Self {

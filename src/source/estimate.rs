@@ -63,6 +63,40 @@ impl Belief {
         open
     }
 
+    /// The same with what `other` is sure of exactly as it is there.
+    pub(super) fn pinned_as(&self, other: &Self) -> Self {
+        let mut pinned = *self;
+        for k in (0..4).filter(|&k| other.covariance[(k, k)] <= 0.0) {
+            pinned.mean[k] = other.mean[k];
+            pinned.covariance.row_mut(k).fill(0.0);
+            pinned.covariance.column_mut(k).fill(0.0);
+        }
+        pinned
+    }
+
+    /// The same with a covariance larger by `factor`, but no spread beyond the configured one.
+    pub(super) fn scaled(&self, factor: f64, configured: &Self) -> Self {
+        let root = Vector4::from_fn(|k, _| {
+            let room = configured.covariance[(k, k)] / self.covariance[(k, k)];
+            if room.is_finite() { factor.min(room.max(1.0)).sqrt() } else { 1.0 }
+        });
+        let scale = Matrix4::from_diagonal(&root);
+        Self { mean: self.mean, covariance: scale * self.covariance * scale }
+    }
+
+    /// Whether it is a distribution that learning can come to from the configured one.
+    pub(super) fn is_within(&self, configured: &Self) -> bool {
+        const ROUNDING: f64 = 1e-9;
+        let largest = configured.covariance.diagonal().max();
+        self.mean.iter().chain(&self.covariance).all(|v| v.is_finite() && v.abs() < 1e6)
+            && (self.covariance - self.covariance.transpose()).amax() <= ROUNDING * largest
+            && self.covariance.symmetric_eigenvalues().min() >= -ROUNDING * largest
+            && (0..4).all(|k| {
+                let pinned = configured.covariance[(k, k)] <= 0.0;
+                !pinned || (self.covariance[(k, k)] == 0.0 && (self.mean[k] - configured.mean[k]).abs() <= ROUNDING)
+            })
+    }
+
     /// Logarithm of the probability that all four are possible, each taken alone.
     pub(super) fn log_possible(&self) -> f64 {
         (0..4)

@@ -57,8 +57,8 @@ pub(super) struct Verdict {
     /// Of the cases: neither, from, to, both.
     pub(super) probability: [f64; 4],
     pub(super) de_kv: [f64; 2],
-    /// Normalised innovation (root of the squared sum over the sides that stood still) of each case.
-    pub(super) innovation: [f64; 4],
+    /// Neither, from, to, both; `None` where a case cannot be computed.
+    pub(super) cases: [Option<Updated>; 4],
 }
 
 impl Verdict {
@@ -81,11 +81,8 @@ impl Event {
     /// Updates each case, weighs it by its likelihood, and merges all to one mean and covariance (Bar-Shalom, Li and
     /// Kirubarajan 2001, 11.6). `None` where no case can be computed.
     pub(super) fn judge(&self, prior: &Belief) -> Option<Verdict> {
-        let mut cases: [Option<Updated>; 4] = [None, None, None, None];
+        let cases = CASES.map(|case| self.update(prior, case));
         let possible = prior.log_possible();
-        for (k, case) in CASES.iter().enumerate() {
-            cases[k] = self.update(prior, *case);
-        }
         let log_weight: [f64; 4] = std::array::from_fn(|k| match &cases[k] {
             Some(case) => self.prior[k].ln() + case.log_likelihood + case.belief.log_possible() - possible,
             None => f64::NEG_INFINITY,
@@ -97,22 +94,13 @@ impl Event {
         let weight = log_weight.map(|w| (w - largest).exp());
         let total: f64 = weight.iter().sum();
         let probability = weight.map(|w| w / total);
-        let belief = merge(&cases, &probability);
-        let [r1, r2] = self.change(&belief.cut_at_zero().mean).0.into();
-        Some(Verdict {
-            belief,
-            probability,
-            de_kv: [r1, r2],
-            innovation: std::array::from_fn(|k| cases[k].as_ref().map_or(f64::INFINITY, |c| c.innovation)),
-        })
+        let belief = merge(&cases, &probability).pinned_as(prior);
+        let de_kv = self.change(&belief.cut_at_zero().mean, &self.before.state, &self.after.state).0.into();
+        Some(Verdict { belief, probability, de_kv, cases })
     }
 
     /// E_after − E_before of both sides, and its Jacobian.
-    fn change(&self, z: &Vector4<f64>) -> (Vector2<f64>, Jacobian) {
-        self.change_at(z, &self.before.state, &self.after.state)
-    }
-
-    fn change_at(&self, z: &Vector4<f64>, before: &Vector3<f64>, after: &Vector3<f64>) -> (Vector2<f64>, Jacobian) {
+    fn change(&self, z: &Vector4<f64>, before: &Vector3<f64>, after: &Vector3<f64>) -> (Vector2<f64>, Jacobian) {
         let old = behind(z, before, &self.before.y);
         let new = behind(z, after, &self.after.y);
         let mut jacobian = Jacobian::zeros();
@@ -134,7 +122,9 @@ impl Event {
     pub(super) fn update(&self, prior: &Belief, case: Moved) -> Option<Updated> {
         let moved = [matches!(case, Moved::From | Moved::Both), matches!(case, Moved::To | Moved::Both)];
         let noise = |of_move: f64| {
-            Matrix2::from_diagonal(&Vector2::from_fn(|side, _| self.wander[side] + if moved[side] { of_move } else { 0.0 }))
+            Matrix2::from_diagonal(&Vector2::from_fn(|side, _| {
+                self.wander[side] + if moved[side] { of_move } else { 0.0 }
+            }))
         };
         let free = noise(FREE_KV.powi(2));
         let mut mean = State::zeros();
@@ -163,11 +153,13 @@ impl Event {
             (0..2).filter(|&side| !moved[side]).map(|side| innovation[side].powi(2) / spread[(side, side)]).sum();
         let covariance_z = symmetric(&posterior.fixed_view::<4, 4>(0, 0).into_owned());
         let mean_z = x.fixed_rows::<4>(0).into_owned();
-        let of_state = h.fixed_view::<2, 6>(0, 4) * covariance.fixed_view::<6, 6>(4, 4) * h.fixed_view::<2, 6>(0, 4).transpose();
+        let of_state =
+            h.fixed_view::<2, 6>(0, 4) * covariance.fixed_view::<6, 6>(4, 4) * h.fixed_view::<2, 6>(0, 4).transpose();
         let share = std::array::from_fn(|side| {
             if moved[side] { 0.0 } else { self.wander[side] / (self.wander[side] + of_state[(side, side)]) }
         });
-        let belief = Belief { mean: mean_z + covariance_z * self.volume_slope(&mean_z, &share), covariance: covariance_z };
+        let belief =
+            Belief { mean: mean_z + covariance_z * self.volume_slope(&mean_z, &share), covariance: covariance_z };
         let finite = belief.mean.iter().chain(belief.covariance.iter()).all(|v| v.is_finite());
         finite.then(|| Updated {
             belief,
@@ -198,7 +190,7 @@ impl Event {
     /// Innovation about the point `x` and its Jacobian.
     fn innovation(&self, x: &State, mean: &State) -> (Vector2<f64>, Jacobian) {
         let z = x.fixed_rows::<4>(0).into_owned();
-        let (change, h) = self.change_at(&z, &x.fixed_rows::<3>(4).into_owned(), &x.fixed_rows::<3>(7).into_owned());
+        let (change, h) = self.change(&z, &x.fixed_rows::<3>(4).into_owned(), &x.fixed_rows::<3>(7).into_owned());
         (-change - h * (mean - x), h)
     }
 }

@@ -5,11 +5,13 @@ use std::collections::VecDeque;
 use chrono::{DateTime, TimeDelta, Utc};
 
 use super::{
-    Estimate, Moved, Observation, SpreadPoint, Step,
+    Estimate, Observation, SpreadPoint, Step,
     background::Background,
     estimate::Belief,
     hypothesis::{Event, Moment, Verdict},
+    store::{Memory, StoreError},
     terminal::{Measured, Terminal, behind, state_covariance},
+    watch::{Watch, is_explained},
     window::{Bin, Recent, Window},
 };
 use crate::{config::LearningSettings, grid::ConfiguredSource};
@@ -32,13 +34,10 @@ const MOVE_PART: f64 = 0.01;
 const PRIOR: [f64; 4] = [0.05, 0.45, 0.45, 0.05];
 /// How fast the share of steps that moved both sides is followed.
 const BOTH_MEMORY: f64 = 0.05;
+/// Share of such steps beyond which those that seem to move one side only are doubtful too.
+const BOTH_USUAL: f64 = 0.25;
 /// The same when the corridor itself was switched.
 const PRIOR_SWITCHED: [f64; 4] = [0.8, 0.09, 0.09, 0.02];
-/// Normalised innovation beyond which a case does not explain a step.
-const UNEXPLAINED: f64 = 5.0;
-/// Normalised innovation up to which two such steps agree.
-const AGREES: f64 = 3.0;
-const UNEXPLAINED_WITHIN_S: f64 = 3600.0;
 
 /// Learns both sides' impedances of one corridor.
 #[derive(Debug, Clone)]
@@ -61,7 +60,7 @@ pub struct Learner {
     candidate: Option<Candidate>,
     switched: Option<Onset>,
     quiet_from_s: f64,
-    doubt: [Option<Doubt>; 2],
+    watch: [Watch; 2],
     both: f64,
     steps: VecDeque<Step>,
     history: VecDeque<SpreadPoint>,
@@ -74,13 +73,6 @@ struct Candidate {
     score: f64,
     change: Measured,
     first_s: f64,
-}
-
-/// What an impedance would be after a step that fits it no more.
-#[derive(Debug, Clone, Copy)]
-struct Doubt {
-    time_s: f64,
-    belief: Belief,
 }
 
 /// The last instant before a step and the first after it.
@@ -114,7 +106,7 @@ impl Learner {
             candidate: None,
             switched: None,
             quiet_from_s: f64::NEG_INFINITY,
-            doubt: [None; 2],
+            watch: [Watch::default(); 2],
             both: PRIOR[3],
             steps: VecDeque::with_capacity(LOGGED),
             history: VecDeque::with_capacity(HISTORY),
@@ -138,6 +130,43 @@ impl Learner {
         self.history.iter()
     }
 
+    /// What to keep over a restart; nothing before the first frame.
+    pub fn memory(&self) -> Option<Memory> {
+        Some(Memory {
+            configured: self.fingerprint(),
+            mean: self.belief.mean.into(),
+            covariance: self.belief.covariance.into(),
+            steps: self.estimate.steps,
+            both: self.both,
+            time: time(self.aged_s?),
+            recent: self.steps.iter().copied().collect(),
+        })
+    }
+
+    /// Takes up what was kept, if it was learned from the same configured sources and makes sense.
+    pub fn recall(&mut self, memory: &Memory) -> Result<(), StoreError> {
+        let (kept, own) = (memory.configured.as_flattened(), self.fingerprint());
+        if kept.iter().zip(own.as_flattened()).any(|(a, b)| (a - b).abs() > 1e-9 * b.abs()) {
+            return Err(StoreError::OtherSources);
+        }
+        let belief = Belief { mean: memory.mean.into(), covariance: memory.covariance.into() };
+        if !belief.is_within(&self.configured) || !(0.0..=1.0).contains(&memory.both) {
+            return Err(StoreError::Impossible);
+        }
+        self.belief = belief;
+        self.both = memory.both;
+        self.estimate.steps = memory.steps;
+        self.aged_s = Some(seconds(memory.time));
+        self.steps.clear();
+        self.steps.extend(memory.recent.iter().rev().take(LOGGED).rev());
+        self.refresh();
+        Ok(())
+    }
+
+    fn fingerprint(&self) -> [[f64; 2]; 4] {
+        std::array::from_fn(|k| [self.configured.mean[k], self.configured.covariance[(k, k)]])
+    }
+
     /// Takes one frame; returns a step once its after window is complete.
     pub fn observe(&mut self, seen: &Observation) -> Option<Step> {
         if !self.settings.enabled || !seen.is_usable() {
@@ -152,8 +181,7 @@ impl Learner {
         }
         if self.topology.is_some_and(|t| t != seen.topology) {
             self.cut();
-            self.switched =
-                self.last_s.map(|before_s| Onset { before_s, after_s: now_s, switched: true });
+            self.switched = self.last_s.map(|before_s| Onset { before_s, after_s: now_s, switched: true });
         }
         self.topology = Some(seen.topology);
         self.class = seen.sigma;
@@ -244,7 +272,8 @@ impl Learner {
         let before_to = after.first_s - self.settings.gap_s.max(1.5 * self.frame_s);
         let before = self.recent.mean(before_to - window_s + JITTER_S, before_to + JITTER_S)?;
         let same = before.segment == after.segment && before.segment == self.segment;
-        let full = before.count * 3 >= after.count * 2 && after.last_s - after.first_s >= 0.5 * (window_s - self.frame_s);
+        let full =
+            before.count * 3 >= after.count * 2 && after.last_s - after.first_s >= 0.5 * (window_s - self.frame_s);
         (same && full).then_some((before, after))
     }
 
@@ -343,12 +372,17 @@ impl Learner {
         if neither + from > 0.5 {
             self.estimate.steps[1] += 1;
         }
+        let mut doubtful = 0.0;
         if !onset.switched {
             self.both += BOTH_MEMORY * (verdict.probability[3] - self.both);
             self.both = self.both.max(PRIOR[3]);
+            doubtful = (self.both - BOTH_USUAL).max(0.0);
         }
-        let explained = verdict.innovation[..3].iter().any(|i| *i <= UNEXPLAINED);
-        let widened = self.watch(onset.after_s, event, verdict, explained);
+        let lost = Watch::look(&mut self.watch, onset.after_s, event, verdict, &self.belief, &self.configured);
+        self.belief = verdict.belief.scaled(1.0 + doubtful, &self.configured);
+        for side in (0..2).filter(|&side| lost[side]) {
+            self.belief = self.belief.opened(side, &self.configured);
+        }
         self.refresh();
         let step = Step {
             time: time(0.5 * (onset.before_s + onset.after_s)),
@@ -356,35 +390,11 @@ impl Learner {
             probability,
             de_kv: verdict.de_kv,
             topology_changed: onset.switched,
-            explained,
-            widened,
+            explained: is_explained(verdict),
+            widened: lost.contains(&true),
         };
         push(&mut self.steps, step, LOGGED);
         step
-    }
-
-    /// Takes the belief over, and widens it again for a side whose impedance two steps within an hour contradict, both in
-    /// favour of the same other value, with none between that fits.
-    fn watch(&mut self, now_s: f64, event: &Event, verdict: &Verdict, explained: bool) -> bool {
-        self.belief = verdict.belief;
-        let [_, from, to, _] = verdict.innovation;
-        let (tested, case) = if from < to { (1, Moved::From) } else { (0, Moved::To) };
-        if explained {
-            let [neither, from, to, _] = verdict.probability;
-            if [neither + to, neither + from][tested] > 0.5 {
-                self.doubt[tested] = None;
-            }
-            return false;
-        }
-        let earlier = self.doubt[tested].take().filter(|d| now_s - d.time_s <= UNEXPLAINED_WITHIN_S);
-        let fits = |belief: &Belief| event.update(belief, case).filter(|u| u.innovation <= AGREES);
-        if earlier.is_some_and(|d| fits(&d.belief).is_some()) {
-            self.belief = self.belief.opened(tested, &self.configured);
-            return true;
-        }
-        let open = self.belief.opened(tested, &self.configured);
-        self.doubt[tested] = fits(&open).map(|u| Doubt { time_s: now_s, belief: u.belief });
-        false
     }
 
     /// Lets the spread grow with time, up to the configured one.

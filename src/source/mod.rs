@@ -23,6 +23,7 @@ mod learner;
 mod log;
 pub mod store;
 mod terminal;
+mod watch;
 mod window;
 
 pub use estimate::Estimate;

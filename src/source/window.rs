@@ -69,7 +69,6 @@ impl Recent {
         self.bins.push_back(bin);
     }
 
-
     pub(super) fn iter(&self) -> impl DoubleEndedIterator<Item = &Bin> {
         self.bins.iter()
     }

@@ -1,6 +1,10 @@
 //! A recorded day with known truth: 26 and 18 ohm, configured as 20 and 24.
 
-use std::{fs::File, io::{BufRead, BufReader}, path::Path};
+use std::{
+    fs::File,
+    io::{BufRead, BufReader},
+    path::Path,
+};
 
 use chrono::{DateTime, Utc};
 use flate2::read::GzDecoder;

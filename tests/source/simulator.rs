@@ -2,12 +2,14 @@
 
 use chrono::{DateTime, TimeDelta, Utc};
 use nalgebra::{Matrix2, Vector2};
-use rand::{Rng, RngExt, SeedableRng};
+use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, Exp1, StandardNormal};
 use tautline::{grid::ConfiguredSource, source::Observation};
 
 use crate::corridor::{C, Line};
+
+pub const START: &str = "2031-03-14T00:00:00Z";
 
 /// What one drill is made of.
 #[derive(Debug, Clone, Copy)]
@@ -24,14 +26,15 @@ pub struct Drill {
 }
 
 impl Drill {
-    pub fn plain(seed: u64) -> Self {
+    /// A day at one frame in two seconds through skewed, deadbanded telemetry, every other one with a trip.
+    pub fn day(seed: u64) -> Self {
         Self {
             seed,
             hours: 24.0,
             frame_s: 2.0,
             steps_per_hour: 6.0,
             coincident_per_hour: 0.0,
-            trip: seed % 2 == 0,
+            trip: seed.is_multiple_of(2),
             skew: true,
             deadband: true,
             swing: true,
@@ -163,6 +166,12 @@ impl Simulator {
         simulator
     }
 
+    /// The grid behind a side changes.
+    pub fn replace_source(&mut self, side: usize, z: C) {
+        self.truth[side] = z;
+        self.network = Network::new(&self.lines, self.network.closed.clone(), &self.truth);
+    }
+
     fn normal(&mut self) -> f64 {
         StandardNormal.sample(&mut self.dice)
     }
@@ -241,7 +250,7 @@ impl Simulator {
     }
 
     fn frame(&mut self) -> Observation {
-        let start: DateTime<Utc> = "2031-03-14T00:00:00Z".parse().unwrap();
+        let start: DateTime<Utc> = START.parse().unwrap();
         let now_s = (self.ticks - 1) as f64 * self.tick_s;
         let (mut kv, mut mw, mut mvar) = ([0.0; 2], [0.0; 2], [0.0; 2]);
         for end in 0..2 {
@@ -249,7 +258,10 @@ impl Simulator {
             kv[end] = self.see(end, value, 0.4, 0.2);
             for line in 0..self.lines.len() {
                 let channel = 2 + 4 * line + 2 * end;
-                let (p, q) = (self.past[self.delay[channel]].1[line][end].re, self.past[self.delay[channel + 1]].1[line][end].im);
+                let (p, q) = (
+                    self.past[self.delay[channel]].1[line][end].re,
+                    self.past[self.delay[channel + 1]].1[line][end].im,
+                );
                 if self.network.closed[line] {
                     mw[end] += self.see(channel, p, 1.5, 1.0);
                     mvar[end] += self.see(channel + 1, q, 1.5, 1.0);

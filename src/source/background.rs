@@ -119,7 +119,9 @@ fn spread(scratch: &mut Vec<f64>, values: impl Iterator<Item = f64>) -> (f64, f6
     scratch.clear();
     scratch.extend(values);
     let center = median(scratch);
-    scratch.iter_mut().for_each(|v| *v = (*v - center).abs());
+    for value in scratch.iter_mut() {
+        *value = (*value - center).abs();
+    }
     (center, MAD_TO_SIGMA * median(scratch))
 }
 

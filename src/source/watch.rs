@@ -15,7 +15,7 @@ const AGREES: f64 = 3.0;
 /// Cumulative sum of standardised corrections (Page, Biometrika 1954): what is let go at every step, in standard deviations;
 /// the sum that says so; and the most that one step adds, for a step that moved both sides looks like a contradiction.
 const ALLOWANCE: f64 = 0.5;
-const ALARM: f64 = 8.0;
+const ALARM: f64 = 12.0;
 const MOST: f64 = 2.0;
 
 /// Watches over one side's impedance.

@@ -415,8 +415,10 @@ impl Learner {
         }
     }
 
+    /// Before the first step, what is configured stands as it is.
     fn refresh(&mut self) {
-        let cut = self.belief.cut_at_zero();
+        let untouched = self.estimate.steps == [0, 0];
+        let cut = if untouched { self.belief } else { self.belief.cut_at_zero() };
         self.estimate.mean = cut.mean;
         self.estimate.covariance = cut.covariance;
     }

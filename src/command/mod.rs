@@ -4,8 +4,10 @@ pub mod assess;
 pub mod check;
 pub mod demo;
 pub mod drill;
+mod inputs;
 pub mod replay;
 pub mod shell;
+mod stage;
 pub mod watch;
 
 use clap::{Parser, Subcommand};

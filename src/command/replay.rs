@@ -1,14 +1,117 @@
-//! `tautline replay`.
+//! `tautline replay`: recorded files on the screen, or in a summary where there is none.
+
+use std::{
+    io::{IsTerminal, Write, stdout},
+    path::PathBuf,
+    sync::{Arc, mpsc::sync_channel},
+    thread,
+};
 
 use clap::Args;
+use tokio::sync::watch;
 
-use super::Failure;
+use super::{Failure, inputs, stage};
+use crate::{
+    config::Config,
+    desk::Desk,
+    feed::{Channels, Holder, Monitor},
+    report::summary::Summary,
+    screen::{
+        connection::{Player, Recording, Replay},
+        state::parse_time,
+    },
+};
+
+/// Orders that wait at most.
+const ORDERS_WAITING: usize = 64;
 
 /// Options of `replay`.
 #[derive(Debug, Args)]
-pub struct Options {}
+pub struct Options {
+    /// Configuration file
+    #[arg(long, value_name = "FILE")]
+    config: PathBuf,
+    /// Recorded frames: JSON Lines or .csv, also as .gz or .zst; several are merged by time
+    #[arg(required = true, value_name = "FILES")]
+    files: Vec<PathBuf>,
+    #[command(flatten)]
+    start: Start,
+}
+
+/// How to start.
+#[derive(Debug, Args)]
+pub struct Start {
+    /// Recorded seconds in a second
+    #[arg(long, value_name = "N", default_value_t = 1, value_parser = clap::value_parser!(u32).range(1..=3600))]
+    pub speed: u32,
+    /// Time to start at: 14:03, 14:03:20 or 2031-03-14T14:03:20Z
+    #[arg(long, value_name = "TIME")]
+    pub at: Option<String>,
+    /// Start paused
+    #[arg(long)]
+    pub paused: bool,
+}
 
 /// Runs it.
-pub fn run(_options: &Options) -> Result<(), Failure> {
-    Err("not there yet".into())
+pub fn run(options: &Options) -> Result<(), Failure> {
+    let config = Config::load(&options.config)?;
+    play(&config, Recording::Files(options.files.clone()), &options.start)
+}
+
+/// Plays a recording on the screen; where there is none to draw on, prints its summary.
+pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Result<(), Failure> {
+    let channels = Arc::new(Channels::new(config));
+    let (desk, holder) = (Desk::new(config, &channels), inputs::holder(config, &channels));
+    if !stdout().is_terminal() {
+        return summarise(config, &recording, &channels, desk, holder);
+    }
+    let mut player = Player::new(recording.clone(), channels.clone(), holder, desk)?;
+    let Some(first) = player.next_time() else {
+        let findings = player.monitor().inputs().into_iter().flat_map(|input| input.tally.findings());
+        let findings: Vec<_> = findings.collect();
+        return Err(format!("not a single frame was read from {}\n{}", recording.name(), findings.join("\n"))
+            .trim_end()
+            .into());
+    };
+    let at = start.at.as_deref().map(|text| parse_time(text, config.time_zone, first)).transpose()?;
+
+    let (sender, parcels) = watch::channel(None);
+    let (orders, taken) = sync_channel(ORDERS_WAITING);
+    let mut replay = Replay::new(player, recording, &channels, sender, taken);
+    let (speed, playing) = (start.speed, !start.paused);
+    let connection = thread::spawn(move || {
+        replay.begin(at, speed, playing);
+        replay.run();
+    });
+    stage::show(stage::runtime()?, config, parcels, orders, connection)
+}
+
+/// Every frame as fast as it goes, and what came of it as text.
+fn summarise(
+    config: &Config,
+    recording: &Recording,
+    channels: &Arc<Channels>,
+    mut desk: Desk,
+    mut holder: Holder,
+) -> Result<(), Failure> {
+    let frames = recording.open(channels)?;
+    let monitor = frames.monitor().clone();
+    let mut summary = Summary::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
+    let mut any = false;
+    for frame in frames {
+        if let Some(snapshot) = holder.take(&frame) {
+            summary.take(&desk.assess(&snapshot));
+            any = true;
+        }
+    }
+    if !any {
+        return Err(no_frame(recording, &monitor));
+    }
+    write!(stdout(), "tautline, {}: {summary}", recording.name())?;
+    Ok(())
+}
+
+fn no_frame(recording: &Recording, monitor: &Monitor) -> Failure {
+    let findings: Vec<_> = monitor.inputs().iter().flat_map(|input| input.tally.findings()).collect();
+    format!("not a single frame was read from {}\n{}", recording.name(), findings.join("\n")).trim_end().into()
 }

@@ -1,14 +1,48 @@
-//! `tautline watch`.
+//! `tautline watch`: live inputs on the screen.
+
+use std::{
+    path::PathBuf,
+    sync::{Arc, mpsc::sync_channel},
+    thread,
+};
 
 use clap::Args;
+use tokio::sync::watch;
 
-use super::Failure;
+use super::{Failure, inputs, stage};
+use crate::{
+    config::Config,
+    desk::Desk,
+    feed::{Channels, Feed, Input, Patience},
+    screen::connection,
+};
 
 /// Options of `watch`.
 #[derive(Debug, Args)]
-pub struct Options {}
+pub struct Options {
+    /// Configuration file
+    #[arg(long, value_name = "FILE")]
+    config: PathBuf,
+    /// Where frames come from, any number of times: PATH, -, tcp://HOST:PORT, tcp-listen://[HOST]:PORT,
+    /// udp-listen://[HOST]:PORT, unix:PATH or follow:PATH [default: the configuration's]
+    #[arg(long, value_name = "INPUT")]
+    input: Vec<Input>,
+}
 
 /// Runs it.
-pub fn run(_options: &Options) -> Result<(), Failure> {
-    Err("not there yet".into())
+pub fn run(options: &Options) -> Result<(), Failure> {
+    let config = Config::load(&options.config)?;
+    let inputs = inputs::chosen(&options.input, &config)?;
+    stage::needs_terminal()?;
+    let channels = Arc::new(Channels::new(&config));
+    let (desk, holder) = (Desk::new(&config, &channels), inputs::holder(&config, &channels));
+
+    let runtime = stage::runtime()?;
+    let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::default()))?;
+    let (sender, parcels) = watch::channel(None);
+    let handle = runtime.handle().clone();
+    let connection = thread::spawn(move || handle.block_on(connection::watch(feed, desk, holder, sender)));
+    // Nobody takes orders: a live feed cannot be played.
+    let (orders, _) = sync_channel(1);
+    stage::show(runtime, &config, parcels, orders, connection)
 }

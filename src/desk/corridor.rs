@@ -14,7 +14,7 @@ use crate::{
 };
 
 /// One corridor with what is remembered of it.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub struct CorridorDesk {
     corridor: Arc<Corridor>,
     channels: Arc<Channels>,

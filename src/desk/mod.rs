@@ -15,7 +15,7 @@ use crate::{
 };
 
 /// All corridors of a configuration.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub struct Desk {
     /// One each, in the order of the configuration: they share nothing and may run on different threads.
     pub corridors: Vec<CorridorDesk>,

@@ -22,7 +22,7 @@ pub(super) enum Origin {
 }
 
 /// Every sentence there may be, by bus and the origins of its MW and Mvar.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub(super) struct Assumptions(Vec<[[Option<Arc<str>>; 3]; 3]>);
 
 impl Assumptions {

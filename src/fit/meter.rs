@@ -13,7 +13,7 @@ pub(super) type Meter = usize;
 const WIDER: f64 = 3.0;
 
 /// A corridor's measurements and channels.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub(super) struct Meters {
     buses: usize,
     pub slots: Vec<Slot>,

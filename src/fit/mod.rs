@@ -93,7 +93,7 @@ impl Fit {
 }
 
 /// Fits one corridor, snapshot after snapshot. It remembers nothing of earlier ones but what is quicker to keep.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub struct Fitter {
     corridor: Arc<Corridor>,
     meters: Meters,

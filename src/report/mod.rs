@@ -2,4 +2,5 @@
 
 pub mod check;
 pub mod jsonl;
+pub mod summary;
 mod table;

@@ -1,0 +1,36 @@
+//! What the commands that read frames have in common.
+
+use chrono::TimeDelta;
+
+use super::Failure;
+use crate::{
+    config::Config,
+    feed::{Channels, Holder, Input},
+};
+
+/// The inputs named on the command line, else those of the configuration.
+pub(super) fn chosen(named: &[Input], config: &Config) -> Result<Vec<Input>, Failure> {
+    let mut inputs = named.to_vec();
+    if inputs.is_empty() {
+        inputs = config.feed.inputs.iter().map(|input| input.parse()).collect::<Result<_, _>>()?;
+    }
+    if inputs.is_empty() {
+        return Err("no input: name one with --input, or set `inputs` under [feed] in the configuration".into());
+    }
+    if inputs.iter().filter(|input| **input == Input::Stdin).count() > 1 {
+        return Err("standard input can be read only once".into());
+    }
+    Ok(inputs)
+}
+
+/// How long a value stands.
+pub(super) fn max_age(config: &Config) -> TimeDelta {
+    #[allow(clippy::cast_possible_truncation, reason = "saturates")]
+    let milliseconds = (config.feed.max_age_s * 1000.0) as i64;
+    TimeDelta::try_milliseconds(milliseconds).unwrap_or(TimeDelta::MAX)
+}
+
+/// Keeps values as long as the configuration says.
+pub(super) fn holder(config: &Config, channels: &Channels) -> Holder {
+    Holder::new(channels, max_age(config))
+}

@@ -1,0 +1,54 @@
+//! Brings up the screen over a connection on a thread of its own.
+
+use std::{
+    io::{IsTerminal, stdout},
+    sync::{Arc, mpsc::SyncSender},
+    thread::JoinHandle,
+};
+
+use tokio::{
+    runtime::{Builder, Runtime},
+    sync::watch,
+};
+
+use super::{Failure, inputs};
+use crate::{
+    config::Config,
+    screen::{
+        self, Ending,
+        connection::{Order, Parcel},
+        state::App,
+    },
+};
+
+/// Refuses where there is no terminal to draw on.
+pub(super) fn needs_terminal() -> Result<(), Failure> {
+    if stdout().is_terminal() {
+        Ok(())
+    } else {
+        Err("standard output is no terminal to draw on; `tautline assess` writes records instead".into())
+    }
+}
+
+/// A runtime for the screen and whatever it waits for.
+pub(super) fn runtime() -> Result<Runtime, Failure> {
+    Ok(Builder::new_multi_thread().worker_threads(2).enable_all().build()?)
+}
+
+/// Shows a connection until the user leaves, or it breaks.
+pub(super) fn show(
+    runtime: Runtime,
+    config: &Config,
+    parcels: watch::Receiver<Option<Parcel>>,
+    orders: SyncSender<Order>,
+    connection: JoinHandle<()>,
+) -> Result<(), Failure> {
+    let app = App::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
+    let ending = runtime.block_on(screen::run(app, parcels, orders));
+    // A thread that waits for standard input cannot be stopped, nor need it be waited for.
+    runtime.shutdown_background();
+    if ending? == Ending::Disconnected && connection.join().is_err() {
+        return Err("the thread that assesses failed; this is a fault of the program, please report it".into());
+    }
+    Ok(())
+}

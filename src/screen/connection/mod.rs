@@ -1,0 +1,17 @@
+//! Where assessments come from: a live feed or a recording, each on a thread of its own.
+//!
+//! What is sent is always the whole present, in a [`Parcel`] that is cheap to clone. Only the newest is kept, so a
+//! slow screen never slows the desk, and a fast desk never floods the screen.
+
+mod live;
+mod parcel;
+mod player;
+mod recording;
+mod replay;
+mod report;
+
+pub use live::watch;
+pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Seeking};
+pub use player::{Goal, Place, Player};
+pub use recording::{Extent, Recording};
+pub use replay::Replay;

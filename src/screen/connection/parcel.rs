@@ -1,0 +1,107 @@
+use std::{sync::Arc, time::Instant};
+
+use chrono::{DateTime, TimeDelta, Utc};
+
+use crate::screen::state::{Chronicle, Strip};
+
+/// Everything a screen shows, as it stands.
+#[derive(Debug, Clone)]
+pub struct Parcel {
+    /// The corridors, and what became of them so far.
+    pub chronicle: Chronicle,
+    /// How the feed does.
+    pub feed: FeedReport,
+    /// Live or recorded.
+    pub origin: Origin,
+}
+
+/// Where the frames come from.
+#[derive(Debug, Clone)]
+pub enum Origin {
+    /// Inputs that go on for as long as they like.
+    Live,
+    /// A recording that can be played.
+    Replay(Playback),
+}
+
+/// How the feed does.
+#[derive(Debug, Clone, Default, PartialEq)]
+pub struct FeedReport {
+    /// Every input.
+    pub inputs: Vec<InputReport>,
+    /// Frames taken so far.
+    pub frames: u64,
+    /// When the last frame came, by this computer's clock.
+    pub arrived: Option<Instant>,
+    /// Nothing more will come.
+    pub ended: bool,
+}
+
+/// How one input does, in words.
+#[derive(Debug, Clone, PartialEq)]
+pub struct InputReport {
+    /// The input as it was given.
+    pub name: Arc<str>,
+    /// What it is doing.
+    pub standing: String,
+    /// What came in that cannot be used.
+    pub findings: Vec<String>,
+}
+
+/// A recording being played.
+#[derive(Debug, Clone)]
+pub struct Playback {
+    /// What it is called.
+    pub name: Arc<str>,
+    /// Running, unless paused.
+    pub playing: bool,
+    /// Recorded seconds in a second.
+    pub speed: u32,
+    /// Where in the recording we are: the time of the last frame, or a little after it while playing.
+    pub now: Option<DateTime<Utc>>,
+    /// First and last time of the recording, once they are known.
+    pub extent: Option<(DateTime<Utc>, DateTime<Utc>)>,
+    /// Frames taken to get here.
+    pub taken: usize,
+    /// Frames of the recording, once they are counted.
+    pub total: Option<usize>,
+    /// On the way to another place.
+    pub seeking: Option<Seeking>,
+    /// The last frame is taken.
+    pub at_end: bool,
+    /// States of all corridors together, wherever this session has been.
+    pub seen: Arc<Strip>,
+}
+
+/// On the way to another place of the recording.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Seeking {
+    /// Where to; `None`: a number of frames.
+    pub to: Option<DateTime<Utc>>,
+    /// Done so far, 0 to 1.
+    pub done: f64,
+}
+
+/// What the screen asks of a recording.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Order {
+    /// Play or pause.
+    Toggle,
+    /// The next higher speed.
+    Faster,
+    /// The next lower speed.
+    Slower,
+    /// One frame on.
+    StepForward,
+    /// One frame back.
+    StepBack,
+    /// So much later, or earlier.
+    Jump(TimeDelta),
+    /// To the last frame at or before this time.
+    Seek(DateTime<Utc>),
+    /// Stop seeking where we are.
+    Cancel,
+}
+
+/// The speeds that keys step through.
+pub const SPEEDS: [u32; 12] = [1, 2, 5, 10, 30, 60, 120, 300, 600, 1200, 1800, 3600];

@@ -1,0 +1,118 @@
+use std::{io, sync::mpsc::SyncSender, time::Duration};
+
+use crossterm::event::{Event, EventStream, MouseEventKind};
+use futures::StreamExt;
+use tokio::{
+    signal::unix::{SignalKind, signal},
+    sync::watch,
+    time::{Instant, MissedTickBehavior, interval, sleep_until},
+};
+
+use super::{
+    connection::{Order, Parcel},
+    pace::{Pace, Why},
+    state::App,
+    terminal::Screen,
+    view::{self, Theme},
+};
+
+/// How a screen ends.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Ending {
+    /// The user left, or a signal asked for it.
+    Left,
+    /// The connection broke: whoever started it knows why.
+    Disconnected,
+}
+
+/// Shows what comes in until the user leaves or a signal ends it.
+pub async fn run(
+    mut app: App,
+    mut parcels: watch::Receiver<Option<Parcel>>,
+    orders: SyncSender<Order>,
+) -> io::Result<Ending> {
+    let theme = Theme::from_environment();
+    let mut interrupted = signal(SignalKind::interrupt())?;
+    let mut terminated = signal(SignalKind::terminate())?;
+    let mut hung_up = signal(SignalKind::hangup())?;
+    let mut continued = signal(SignalKind::from_raw(CONTINUE))?;
+    let mut second = interval(Duration::from_secs(1));
+    second.set_missed_tick_behavior(MissedTickBehavior::Skip);
+    let mut screen = Screen::take()?;
+    let mut keys = EventStream::new();
+    let mut pace = Pace::default();
+    pace.want(Why::Key);
+
+    while !app.leaving {
+        let due = pace.due(std::time::Instant::now());
+        tokio::select! {
+            biased;
+            event = keys.next() => match event {
+                Some(Ok(event)) => match answer(&mut app, &event) {
+                    Answer::Nothing => continue,
+                    Answer::Drawing => {}
+                    // A full queue means that orders are coming faster than anybody means them.
+                    Answer::Order(order) => drop(orders.try_send(order)),
+                },
+                Some(Err(error)) => return Err(error),
+                None => break,
+            },
+            _ = interrupted.recv() => break,
+            _ = terminated.recv() => break,
+            _ = hung_up.recv() => break,
+            _ = continued.recv() => screen.retake()?,
+            () = sleep_until(due.map_or_else(Instant::now, Instant::from_std)), if due.is_some() => {
+                app.clock = std::time::Instant::now();
+                app.size = screen.terminal.size()?;
+                let mut drawn = None;
+                screen.terminal.draw(|frame| drawn = Some(view::draw(frame, &app, theme)))?;
+                app.drawn = drawn.unwrap_or_default();
+                pace.done(std::time::Instant::now());
+                continue;
+            }
+            changed = parcels.changed() => {
+                if changed.is_err() {
+                    return Ok(Ending::Disconnected);
+                }
+                if let Some(parcel) = parcels.borrow_and_update().clone() {
+                    app.receive(parcel);
+                }
+                pace.want(Why::Data);
+                continue;
+            }
+            _ = second.tick() => {
+                if app.ticks() {
+                    pace.want(Why::Data);
+                }
+                continue;
+            }
+        }
+        pace.want(Why::Key);
+    }
+    Ok(Ending::Left)
+}
+
+/// SIGCONT (POSIX leaves the number open; this is its value on Linux).
+#[cfg(target_os = "linux")]
+const CONTINUE: i32 = 18;
+#[cfg(not(target_os = "linux"))]
+const CONTINUE: i32 = 19;
+
+enum Answer {
+    Nothing,
+    Drawing,
+    Order(Order),
+}
+
+fn answer(app: &mut App, event: &Event) -> Answer {
+    let order = match event {
+        Event::Key(key) => app.key(*key),
+        Event::Mouse(mouse) if matches!(mouse.kind, MouseEventKind::Moved | MouseEventKind::Drag(_)) => {
+            return Answer::Nothing;
+        }
+        Event::Mouse(mouse) => app.mouse(*mouse),
+        Event::Resize(..) => None,
+        _ => return Answer::Nothing,
+    };
+    order.map_or(Answer::Drawing, Answer::Order)
+}

@@ -1,0 +1,120 @@
+use std::{collections::VecDeque, sync::Arc};
+
+use chrono::{DateTime, Utc};
+
+use super::{Event, History, Strip, severity, transitions};
+use crate::desk::{Assessment, State};
+
+/// Events kept; older ones are forgotten.
+pub const EVENTS_KEPT: usize = 1000;
+
+/// What became of the corridors so far. A function of the frames alone, and cheap to clone.
+#[derive(Debug, Clone, Default)]
+pub struct Chronicle {
+    /// One for each corridor, in the order of the configuration; empty before the first frame.
+    pub tracks: Vec<Arc<Track>>,
+    /// Newest last.
+    pub events: Arc<VecDeque<Event>>,
+}
+
+/// One corridor over time.
+#[derive(Debug, Clone)]
+pub struct Track {
+    /// How it stands.
+    pub latest: Arc<Assessment>,
+    /// Since when it has been in this state.
+    pub since: DateTime<Utc>,
+    /// Its headroom over the last two hours.
+    pub history: History,
+    /// Its states so far.
+    pub strip: Strip,
+}
+
+impl Chronicle {
+    /// Takes in all corridors at one frame.
+    pub fn take(&mut self, assessments: Vec<Assessment>) {
+        for (index, assessment) in assessments.into_iter().enumerate() {
+            let assessment = Arc::new(assessment);
+            let before = self.tracks.get(index).map(|track| track.latest.clone());
+            for event in transitions(before.as_deref(), &assessment) {
+                self.note(event);
+            }
+            match self.tracks.get_mut(index) {
+                Some(track) => Arc::make_mut(track).take(assessment),
+                None => self.tracks.push(Arc::new(Track::new(assessment))),
+            }
+        }
+    }
+
+    /// Adds to the events.
+    pub fn note(&mut self, event: Event) {
+        let events = Arc::make_mut(&mut self.events);
+        if events.len() == EVENTS_KEPT {
+            events.pop_front();
+        }
+        events.push_back(event);
+    }
+
+    /// Time of the last frame.
+    pub fn time(&self) -> Option<DateTime<Utc>> {
+        self.tracks.first().map(|track| track.latest.time)
+    }
+
+    /// The worst state of all corridors.
+    pub fn worst(&self) -> Option<State> {
+        self.tracks.iter().map(|track| track.latest.state).max_by_key(|&state| severity(state))
+    }
+}
+
+impl Track {
+    fn new(assessment: Arc<Assessment>) -> Self {
+        let mut track = Self {
+            since: assessment.time,
+            history: History::default(),
+            strip: Strip::default(),
+            latest: assessment.clone(),
+        };
+        track.take(assessment);
+        track
+    }
+
+    fn take(&mut self, assessment: Arc<Assessment>) {
+        if self.latest.state != assessment.state {
+            self.since = assessment.time;
+        }
+        self.history.take(assessment.time, assessment.headroom_mw);
+        self.strip.take(assessment.time, assessment.state);
+        self.latest = assessment;
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::screen::state::sample;
+
+    #[test]
+    fn states_are_kept_with_their_beginning_and_told_once() {
+        let mut chronicle = Chronicle::default();
+        for (second, headroom_mw) in [(0, 212.0), (2, 80.0), (4, 70.0), (6, -3.0)] {
+            chronicle.take(vec![sample::at(second, headroom_mw)]);
+        }
+        let track = &chronicle.tracks[0];
+        assert_eq!(track.latest.state, State::Spent);
+        assert_eq!(track.since, sample::time(6));
+        let told: Vec<_> = chronicle.events.iter().map(|event| event.text.as_str()).collect();
+        assert_eq!(told.len(), 2, "{told:?}");
+        assert!(told[0].starts_with("ample → thin"), "{told:?}");
+        assert!(told[1].starts_with("thin → spent"), "{told:?}");
+    }
+
+    #[test]
+    fn events_are_bounded() {
+        let mut chronicle = Chronicle::default();
+        for second in 0..2 * i64::try_from(EVENTS_KEPT).unwrap() {
+            chronicle.take(vec![sample::at(second, if second % 2 == 0 { 212.0 } else { -3.0 })]);
+        }
+        assert_eq!(chronicle.events.len(), EVENTS_KEPT);
+        assert_eq!(chronicle.events.back().unwrap().time, sample::time(1999));
+    }
+}

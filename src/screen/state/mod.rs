@@ -1,0 +1,217 @@
+//! What the screen remembers: a pure model that takes keys and parcels in and gives orders out. No terminal.
+
+mod chronicle;
+mod event;
+mod history;
+mod instant;
+mod keys;
+mod panel;
+mod pointer;
+
+use std::{sync::Arc, time::Instant};
+
+use chrono::TimeDelta;
+use chrono_tz::Tz;
+use ratatui::layout::Size;
+
+pub use chronicle::{Chronicle, EVENTS_KEPT, Track};
+pub use event::{Event, criterion, severity, transitions, word};
+pub use history::{History, Strip};
+pub use instant::parse_time;
+pub use keys::KEYS;
+pub use panel::Panel;
+pub use pointer::{Drawn, Target};
+
+use super::connection::{Origin, Parcel, Playback};
+use crate::{
+    desk::{Assessment, OutageRecord},
+    grid::{Corridor, Grid},
+};
+
+/// Everything the screen remembers.
+#[derive(Debug)]
+pub struct App {
+    /// What is watched.
+    pub grid: Arc<Grid>,
+    /// Zone for display.
+    pub zone: Tz,
+    /// How long a value stands, so how old a frame may get before the screen says so.
+    pub max_age: TimeDelta,
+    /// The newest of what the connection sent; `None` before anything came.
+    pub parcel: Option<Parcel>,
+    /// The page shown.
+    pub page: Page,
+    /// The page that help and messages return to.
+    under: Page,
+    /// The corridor with the cursor, by its place in the configuration.
+    pub selected: usize,
+    /// Order of the overview.
+    pub sort: Sort,
+    /// What the overview is narrowed to; empty: everything.
+    pub filter: String,
+    /// What is being typed.
+    pub typing: Option<Typing>,
+    /// The outage chosen by hand; `None`: the one that sets the headroom.
+    pub outage: Option<Arc<str>>,
+    /// The panel of the corridor page that has the keys.
+    pub panel: Panel,
+    /// First line shown of a page that is longer than the screen.
+    pub scroll: usize,
+    /// Of the terminal.
+    pub size: Size,
+    /// This computer's clock at the last drawing.
+    pub clock: Instant,
+    /// A word on the last key, until the next.
+    pub notice: Option<String>,
+    /// What the last drawing found out.
+    pub drawn: Drawn,
+    /// The user has had enough.
+    pub leaving: bool,
+}
+
+/// The pages.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Page {
+    /// All corridors.
+    Overview,
+    /// One corridor.
+    Corridor,
+    /// What happened.
+    Messages,
+    /// Keys, numbers, caution.
+    Help,
+}
+
+/// Orders of the overview.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Sort {
+    /// As in the configuration.
+    Configured,
+    /// Least headroom first, spent and blind before the rest.
+    WorstFirst,
+}
+
+/// A line being typed.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum Typing {
+    /// Narrowing the overview; it applies as it is typed.
+    Filter,
+    /// A time to go to.
+    Time(String),
+}
+
+impl App {
+    /// Nothing known yet.
+    pub fn new(grid: Arc<Grid>, zone: Tz, max_age: TimeDelta) -> Self {
+        let page = if grid.corridors.len() == 1 { Page::Corridor } else { Page::Overview };
+        Self {
+            grid,
+            zone,
+            max_age,
+            parcel: None,
+            page,
+            under: page,
+            selected: 0,
+            sort: Sort::Configured,
+            filter: String::new(),
+            typing: None,
+            outage: None,
+            panel: Panel::Outages,
+            scroll: 0,
+            size: Size::new(80, 24),
+            clock: Instant::now(),
+            notice: None,
+            drawn: Drawn::default(),
+            leaving: false,
+        }
+    }
+
+    /// Takes in what the connection sent.
+    pub fn receive(&mut self, parcel: Parcel) {
+        self.parcel = Some(parcel);
+    }
+
+    /// The corridors of the overview, by their place in the configuration.
+    pub fn rows(&self) -> Vec<usize> {
+        let wanted = self.filter.to_lowercase();
+        let fits = |&index: &usize| {
+            let state = self.track(index).map_or("", |track| word(track.latest.state));
+            wanted.is_empty()
+                || state.starts_with(&wanted)
+                || self.grid.corridors[index].name.to_lowercase().contains(&wanted)
+        };
+        let mut rows: Vec<_> = (0..self.grid.corridors.len()).filter(fits).collect();
+        if self.sort == Sort::WorstFirst {
+            rows.sort_by(|&one, &other| {
+                let key = |index| {
+                    self.track(index).map_or((0, f64::INFINITY), |track| {
+                        (severity(track.latest.state), track.latest.headroom_mw.unwrap_or(f64::INFINITY))
+                    })
+                };
+                let (one, other) = (key(one), key(other));
+                other.0.cmp(&one.0).then(one.1.total_cmp(&other.1))
+            });
+        }
+        rows
+    }
+
+    /// A corridor over time; `None` before its first frame.
+    pub fn track(&self, index: usize) -> Option<&Track> {
+        self.parcel.as_ref()?.chronicle.tracks.get(index).map(AsRef::as_ref)
+    }
+
+    /// The corridor with the cursor; `None` in an empty grid.
+    pub fn corridor(&self) -> Option<&Corridor> {
+        self.grid.corridors.get(self.selected)
+    }
+
+    /// The outage looked at: the chosen one, else the one that sets the headroom.
+    pub fn outage<'a>(&self, assessment: &'a Assessment) -> Option<&'a OutageRecord> {
+        let chosen = self.outage.as_ref().and_then(|name| assessment.outages.iter().find(|o| o.name == *name));
+        chosen.or_else(|| worst_outage(assessment))
+    }
+
+    /// The recording, where one is played.
+    pub fn playback(&self) -> Option<&Playback> {
+        match &self.parcel.as_ref()?.origin {
+            Origin::Live => None,
+            Origin::Replay(playback) => Some(playback),
+        }
+    }
+
+    /// How long ago the last frame was: since it came, or by the clock of the recording.
+    pub fn age(&self) -> Option<TimeDelta> {
+        let parcel = self.parcel.as_ref()?;
+        match &parcel.origin {
+            Origin::Live => TimeDelta::from_std(self.clock.saturating_duration_since(parcel.feed.arrived?)).ok(),
+            Origin::Replay(playback) => Some((playback.now? - parcel.chronicle.time()?).max(TimeDelta::zero())),
+        }
+    }
+
+    /// Whether the picture changes by the passing of time alone.
+    pub fn ticks(&self) -> bool {
+        self.parcel.as_ref().is_some_and(|parcel| matches!(parcel.origin, Origin::Live) && !parcel.feed.ended)
+    }
+}
+
+/// The outage that sets the headroom, else the one with the smallest limit.
+pub fn worst_outage(assessment: &Assessment) -> Option<&OutageRecord> {
+    let binding = assessment.binding.as_ref().and_then(|binding| binding.outage.as_ref());
+    let by_name = binding.and_then(|name| assessment.outages.iter().find(|outage| outage.name == *name));
+    by_name.or_else(|| assessment.outages.iter().min_by(|one, other| smallest(one).total_cmp(&smallest(other))))
+}
+
+fn smallest(outage: &OutageRecord) -> f64 {
+    let limits = outage.limit_mw;
+    [limits.angle, limits.area, limits.loading, limits.voltage, limits.separation]
+        .into_iter()
+        .flatten()
+        .fold(f64::INFINITY, f64::min)
+}
+
+#[cfg(test)]
+pub(crate) mod sample {
+    #![allow(dead_code, missing_docs, reason = "shared with tests/screen.rs, which uses the rest")]
+    use crate as tautline;
+    include!(concat!(env!("CARGO_MANIFEST_DIR"), "/tests/screen/sample.rs"));
+}

@@ -1,0 +1,62 @@
+use ratatui::text::{Line, Span};
+use unicode_width::UnicodeWidthStr;
+
+use super::{Theme, text};
+use crate::screen::state::{App, Page, Typing};
+
+/// What is being typed, else the keys of this page that fit.
+pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
+    let prompt = match &app.typing {
+        Some(Typing::Filter) => Some(("show names with, or states", &app.filter, "Enter keeps it, Esc drops it")),
+        Some(Typing::Time(text)) => {
+            Some(("go to (14:03, 14:03:20, 2031-03-14T14:03Z)", text, "Enter goes, Esc does not"))
+        }
+        None => None,
+    };
+    if let Some((what, typed, then)) = prompt {
+        let left = vec![
+            Span::styled(format!(" {what}: "), theme.strong()),
+            Span::raw(text::clean(typed).into_owned()),
+            Span::styled(" ", ratatui::style::Style::new().add_modifier(ratatui::style::Modifier::REVERSED)),
+        ];
+        return text::spread(left, vec![Span::styled(format!("  {then} "), theme.quiet())], width);
+    }
+    let page: &[(&str, &str)] = match app.page {
+        Page::Overview => &[
+            ("?", "help"),
+            ("q", "quit"),
+            ("↑↓", "choose"),
+            ("Enter", "open"),
+            ("s", "sort"),
+            ("/", "find"),
+            ("m", "messages"),
+        ],
+        Page::Corridor => &[
+            ("?", "help"),
+            ("Esc", "all corridors"),
+            ("↑↓", "outage"),
+            ("Tab", "next part"),
+            ("[ ]", "corridor"),
+            ("m", "messages"),
+        ],
+        Page::Messages | Page::Help => &[("Esc", "back"), ("↑↓", "scroll"), ("q", "quit")],
+    };
+    let replay: &[(&str, &str)] = match app.playback() {
+        Some(playback) if playback.playing => {
+            &[("Space", "pause"), ("+ -", "speed"), ("t", "go to time"), (". ,", "step")]
+        }
+        Some(_) => &[("Space", "play"), (". ,", "step"), ("t", "go to time"), ("+ -", "speed")],
+        None => &[],
+    };
+    let mut spans = Vec::new();
+    let mut used = 0;
+    for (key, what) in page.iter().take(4).chain(replay).chain(page.iter().skip(4)) {
+        let wide = key.width() + what.width() + 4;
+        if used + wide <= width {
+            used += wide;
+            spans.push(Span::styled(format!(" {key}"), theme.strong()));
+            spans.push(Span::styled(format!(" {what}  "), theme.quiet()));
+        }
+    }
+    Line::from(spans)
+}

@@ -1,0 +1,46 @@
+use ratatui::{
+    layout::Rect,
+    text::{Line, Span},
+};
+
+use super::{Theme, text};
+use crate::screen::state::{App, EVENTS_KEPT};
+
+/// What happened, newest first.
+pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
+    let width = usize::from(area.width);
+    let mut lines = Vec::new();
+    if let Some(parcel) = &app.parcel {
+        for input in &parcel.feed.inputs {
+            lines.push(Line::raw(text::cut(&format!(" input {}: {}", input.name, input.standing), width)));
+            for finding in &input.findings {
+                lines.push(Line::raw(text::cut(&format!("   ! {finding}"), width)));
+            }
+        }
+    }
+    lines.push(Line::styled(
+        format!(" Changes of state, of data and of switches, newest first; the last {EVENTS_KEPT} are kept."),
+        theme.quiet(),
+    ));
+    lines.extend(events(app, theme, width));
+    if lines.len() == 1 {
+        lines.push(Line::raw(" Nothing yet."));
+    }
+    lines
+}
+
+/// Every event on a line, newest first.
+pub fn events(app: &App, theme: Theme, width: usize) -> impl Iterator<Item = Line<'static>> {
+    let name_width = (width / 5).clamp(8, 24);
+    let events = app.parcel.iter().flat_map(|parcel| parcel.chronicle.events.iter().rev());
+    events.map(move |event| {
+        let time = event.time.with_timezone(&app.zone).format(" %-d %b %H:%M:%S").to_string();
+        let mark = event.state.map_or(Span::raw(" "), |state| Span::styled(theme.mark(state), theme.badge(state)));
+        let corridor = text::left(event.corridor.as_deref().unwrap_or("feed"), name_width);
+        Line::from(vec![
+            Span::styled(text::left(&time, 17), theme.quiet()),
+            mark,
+            Span::raw(format!(" {corridor} {}", text::cut(&event.text, width.saturating_sub(name_width + 20)))),
+        ])
+    })
+}

@@ -1,0 +1,62 @@
+use ratatui::style::{Color, Modifier, Style};
+
+use crate::{desk::State, screen::state::word};
+
+/// How things look. Colour is for what is abnormal, and never alone.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Theme {
+    /// Whether colours may be used at all.
+    pub colour: bool,
+}
+
+impl Theme {
+    /// Monochrome where the environment asks for it (no-color.org).
+    pub fn from_environment() -> Self {
+        Self { colour: std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty()) }
+    }
+
+    /// A state's word: capitals when it is abnormal.
+    pub fn word(self, state: State) -> String {
+        if state == State::Ample { word(state).into() } else { word(state).to_uppercase() }
+    }
+
+    /// A state's mark, one cell wide.
+    pub fn mark(self, state: State) -> &'static str {
+        match state {
+            State::Ample => "·",
+            State::Thin => "!",
+            State::Spent => "✕",
+            State::Blind => "?",
+        }
+    }
+
+    /// The style of a state's word. Colours come in pairs, so that they read on light and dark terminals alike, and
+    /// differ in brightness, so that they do for the colour-blind.
+    pub fn badge(self, state: State) -> Style {
+        let pair = |fg, bg| Style::new().fg(fg).bg(bg);
+        match (state, self.colour) {
+            (State::Ample, _) => Style::new(),
+            (State::Thin, true) => pair(Color::Black, Color::Yellow),
+            (State::Thin, false) => Style::new().add_modifier(Modifier::BOLD | Modifier::UNDERLINED),
+            (State::Spent, true) => pair(Color::White, Color::Red).add_modifier(Modifier::BOLD),
+            (State::Spent, false) => Style::new().add_modifier(Modifier::BOLD | Modifier::REVERSED),
+            (State::Blind, true) => pair(Color::Black, Color::Cyan),
+            (State::Blind, false) => Style::new().add_modifier(Modifier::REVERSED),
+        }
+    }
+
+    /// Something that needs attention without being a state.
+    pub fn caution(self) -> Style {
+        self.badge(State::Thin)
+    }
+
+    /// Headings and what has the cursor.
+    pub fn strong(self) -> Style {
+        Style::new().add_modifier(Modifier::BOLD)
+    }
+
+    /// Scales, units and what is only there to be found.
+    pub fn quiet(self) -> Style {
+        Style::new().add_modifier(Modifier::DIM)
+    }
+}

@@ -1,0 +1,17 @@
+//! The screen as it is drawn, and how it answers keys.
+
+#[path = "screen/sample.rs"]
+#[allow(dead_code, reason = "shared with the library's own tests")]
+mod sample;
+#[path = "screen/stage.rs"]
+mod stage;
+
+#[path = "screen/drawings.rs"]
+mod drawings;
+#[path = "screen/keys.rs"]
+mod keys;
+#[cfg(unix)]
+#[path = "screen/terminal.rs"]
+mod terminal;
+#[path = "screen/unbreakable.rs"]
+mod unbreakable;

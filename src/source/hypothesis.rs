@@ -7,11 +7,7 @@
 
 use nalgebra::{Complex, Matrix2, SMatrix, SVector, Vector2, Vector3, Vector4};
 
-use super::{
-    estimate::Belief,
-    log::Moved,
-    terminal::{Terminal, behind},
-};
+use super::{estimate::Belief, log::Moved, terminal::behind};
 
 const CASES: [Moved; 4] = [Moved::Neither, Moved::From, Moved::To, Moved::Both];
 /// Iterations of the extended Kalman update.
@@ -29,12 +25,6 @@ pub(super) struct Moment {
     pub(super) state: Vector3<f64>,
     pub(super) covariance: nalgebra::Matrix3<f64>,
     pub(super) y: Matrix2<Complex<f64>>,
-}
-
-impl Moment {
-    pub(super) fn new(fit: &Terminal, covariance: nalgebra::Matrix3<f64>, y: Matrix2<Complex<f64>>) -> Self {
-        Self { state: fit.state, covariance, y }
-    }
 }
 
 /// A step to be judged.

@@ -6,13 +6,11 @@ use chrono::{DateTime, TimeDelta, Utc};
 
 use super::{
     Estimate, Observation, SpreadPoint, Step,
-    background::Background,
+    detector::{Detector, Onset, Sudden},
     estimate::Belief,
-    hypothesis::{Event, Moment, Verdict},
+    hypothesis::{Event, Verdict},
     store::{Memory, StoreError},
-    terminal::{Measured, Terminal, behind, state_covariance},
     watch::{Watch, is_explained},
-    window::{Bin, Recent, Window},
 };
 use crate::{config::LearningSettings, grid::ConfiguredSource};
 
@@ -22,22 +20,16 @@ const LOGGED: usize = 64;
 const HISTORY: usize = 288;
 const HISTORY_EVERY_S: f64 = 300.0;
 const DAY_S: f64 = 86_400.0;
-/// Bins in two windows and the gap, where frames are more frequent.
-const BINS_IN_SPAN: f64 = 52.0;
-/// A window holds at least this many frames' time, where frames are rare.
-const FRAMES_IN_WINDOW: f64 = 2.5;
-/// Part of the gap that lies before a step, for channels that run ahead; the rest is for swings and late channels.
-const GAP_BEFORE: f64 = 0.25;
 /// A side that moves does so by about this part of its voltage.
 const MOVE_PART: f64 = 0.01;
 /// Probabilities beforehand of neither, from, to and both having moved.
 const PRIOR: [f64; 4] = [0.05, 0.45, 0.45, 0.05];
+/// The same when the corridor itself was switched.
+const PRIOR_SWITCHED: [f64; 4] = [0.8, 0.09, 0.09, 0.02];
 /// How fast the share of steps that moved both sides is followed.
 const BOTH_MEMORY: f64 = 0.05;
 /// Share of such steps beyond which those that seem to move one side only are doubtful too.
 const BOTH_USUAL: f64 = 0.25;
-/// The same when the corridor itself was switched.
-const PRIOR_SWITCHED: [f64; 4] = [0.8, 0.09, 0.09, 0.02];
 
 /// Learns both sides' impedances of one corridor.
 #[derive(Debug, Clone)]
@@ -47,72 +39,29 @@ pub struct Learner {
     belief: Belief,
     aged_s: Option<f64>,
     estimate: Estimate,
-    recent: Recent,
-    open: Option<Bin>,
-    segment: u64,
-    topology: Option<u64>,
-    last_s: Option<f64>,
-    frame_s: f64,
-    class: [f64; 6],
-    background: Background,
-    gains: [Measured; 2],
-    e_spread: [f64; 2],
-    candidate: Option<Candidate>,
-    switched: Option<Onset>,
-    quiet_from_s: f64,
+    detector: Detector,
     watch: [Watch; 2],
     both: f64,
     steps: VecDeque<Step>,
     history: VecDeque<SpreadPoint>,
 }
 
-/// A step that may still be outdone by a larger one nearby.
-#[derive(Debug, Clone, Copy)]
-struct Candidate {
-    time_s: f64,
-    score: f64,
-    change: Measured,
-    first_s: f64,
-}
-
-/// The last instant before a step and the first after it.
-#[derive(Debug, Clone, Copy)]
-struct Onset {
-    before_s: f64,
-    after_s: f64,
-    switched: bool,
-}
-
 impl Learner {
     /// Starts from what is configured.
     pub fn new(sources: &[ConfiguredSource; 2], settings: LearningSettings) -> Self {
         let configured = Belief::configured(sources);
-        let mut learner = Self {
+        Self {
             settings,
             configured,
             belief: configured,
             aged_s: None,
             estimate: Estimate::configured(sources),
-            recent: Recent::new(),
-            open: None,
-            segment: 0,
-            topology: None,
-            last_s: None,
-            frame_s: 0.0,
-            class: [0.0; 6],
-            background: Background::new(settings.background_s),
-            gains: [Measured::zeros(); 2],
-            e_spread: [f64::INFINITY; 2],
-            candidate: None,
-            switched: None,
-            quiet_from_s: f64::NEG_INFINITY,
+            detector: Detector::new(&settings),
             watch: [Watch::default(); 2],
             both: PRIOR[3],
             steps: VecDeque::with_capacity(LOGGED),
             history: VecDeque::with_capacity(HISTORY),
-        };
-        learner.refresh();
-        learner
+        }
     }
 
     /// What is known now.
@@ -172,187 +121,24 @@ impl Learner {
         if !self.settings.enabled || !seen.is_usable() {
             return None;
         }
-        let now_s = seconds(seen.time);
-        if let Some(last_s) = self.last_s {
-            if now_s <= last_s {
-                return None;
-            }
-            self.follow(now_s - last_s);
-        }
-        if self.topology.is_some_and(|t| t != seen.topology) {
-            self.cut();
-            self.switched = self.last_s.map(|before_s| Onset { before_s, after_s: now_s, switched: true });
-        }
-        self.topology = Some(seen.topology);
-        self.class = seen.sigma;
-        self.last_s = Some(now_s);
-        let length_s = self.bin_s();
-        match &mut self.open {
-            Some(bin) if bin.holds(now_s, self.segment, length_s) => {
-                bin.add(now_s, seen);
-                None
-            }
-            open => {
-                let closed = open.replace(Bin::new(now_s, self.segment, seen))?;
-                self.recent.push(closed);
-                (closed.segment == self.segment).then(|| self.look(closed.time_s)).flatten()
-            }
-        }
-    }
-
-    /// Follows the frames' spacing; a gap ends a segment.
-    fn follow(&mut self, passed_s: f64) {
-        if self.frame_s > 0.0 && passed_s > (3.0 * self.frame_s).max(0.5 * self.settings.window_s) {
-            self.cut();
-        }
-        let towards = if self.frame_s > 0.0 { passed_s.min(4.0 * self.frame_s) } else { passed_s };
-        self.frame_s += 0.1 * (towards - self.frame_s) + if self.frame_s > 0.0 { 0.0 } else { 0.9 * passed_s };
-    }
-
-    fn cut(&mut self) {
-        self.segment += 1;
-        self.candidate = None;
-        self.switched = None;
-    }
-
-    fn bin_s(&self) -> f64 {
-        (2.0 * self.settings.window_s + self.settings.gap_s) / BINS_IN_SPAN
-    }
-
-    fn window_s(&self) -> f64 {
-        self.settings.window_s.max(FRAMES_IN_WINDOW * self.frame_s)
-    }
-
-    /// Looks for a step at each closed bin.
-    fn look(&mut self, now_s: f64) -> Option<Step> {
-        self.note_spread(now_s);
-        if let Some(onset) = self.switched {
-            if now_s >= self.after_from(&onset) + self.window_s() {
-                self.switched = None;
-                return self.judge(&onset);
-            }
-            return None;
-        }
-        self.compare(now_s);
-        let candidate = self.candidate?;
-        if now_s < candidate.time_s + 0.5 * self.window_s() + self.settings.gap_s {
-            return None;
-        }
-        self.candidate = None;
-        let onset = self.onset(&candidate)?;
-        self.judge(&onset)
-    }
-
-    /// Compares the windows that end now with the background.
-    fn compare(&mut self, now_s: f64) {
-        let Some((before, after)) = self.windows(now_s) else { return };
-        let change = after.measured - before.measured;
-        if let Some(bin_change) = self.recent.last_change()
-            && self.background.sample(now_s, bin_change, change, after.count.min(before.count), &self.class)
-        {
-            self.follow_background(&after);
-        }
-        let Some(spread) = self.background.spread else { return };
-        if before.first_s < self.quiet_from_s {
-            return;
-        }
-        let channels = change.component_div(&spread).amax();
-        let sides = (0..2).map(|k| self.gains[k].dot(&change).abs() / self.e_spread[k]);
-        let score = sides.fold(channels, f64::max);
-        if score > self.settings.step_threshold && self.candidate.is_none_or(|c| score > c.score) {
-            self.candidate = Some(Candidate { time_s: now_s, score, change, first_s: before.first_s });
-        }
-    }
-
-    /// The windows of which the second ends now.
-    fn windows(&self, now_s: f64) -> Option<(Window, Window)> {
-        const JITTER_S: f64 = 1e-3;
-        let window_s = self.window_s();
-        let after = self.recent.mean(now_s - window_s + JITTER_S, now_s)?;
-        let before_to = after.first_s - self.settings.gap_s.max(1.5 * self.frame_s);
-        let before = self.recent.mean(before_to - window_s + JITTER_S, before_to + JITTER_S)?;
-        let same = before.segment == after.segment && before.segment == self.segment;
-        let full =
-            before.count * 3 >= after.count * 2 && after.last_s - after.first_s >= 0.5 * (window_s - self.frame_s);
-        (same && full).then_some((before, after))
-    }
-
-    /// Keeps what a change of the measurements does to the voltages behind the impedances.
-    fn follow_background(&mut self, now: &Window) {
-        let Some(fit) = Terminal::fit(&now.measured, &self.class, &now.y) else { return };
-        let sides = behind(&self.estimate.mean, &fit.state, &now.y);
-        for (k, side) in sides.iter().enumerate() {
-            self.gains[k] = fit.gain.transpose() * side.by_state;
-            let noise = 2.0 * (self.gains[k].transpose() * self.background.noise * self.gains[k])[0] / now.count as f64;
-            self.e_spread[k] = self.background.spread_along(&self.gains[k]).max(0.5 * noise.sqrt());
-        }
-    }
-
-    /// Finds the instant of a step as the best split of the measurements in two levels.
-    fn onset(&self, candidate: &Candidate) -> Option<Onset> {
-        let spread = self.background.spread?;
-        let weights = candidate.change.component_div(&spread.component_mul(&spread));
-        let first_s = candidate.first_s;
-        let bins = || {
-            self.recent
-                .iter()
-                .filter(move |b| b.segment == self.segment && b.time_s >= first_s && b.time_s <= candidate.time_s)
-                .map(|b| (b.time_s, b.measured.dot(&weights)))
-        };
-        let (count, sum) = bins().fold((0.0, 0.0), |(n, s), (_, v)| (n + 1.0, s + v));
-        let mut best: Option<(f64, Onset)> = None;
-        let (mut n, mut s) = (0.0, 0.0);
-        for ((before_s, value), (after_s, _)) in bins().zip(bins().skip(1)) {
-            n += 1.0;
-            s += value;
-            let between = (s / n - (sum - s) / (count - n)).powi(2) * n * (count - n);
-            if best.is_none_or(|(b, _)| between > b) {
-                best = Some((between, Onset { before_s, after_s, switched: false }));
-            }
-        }
-        best.map(|(_, onset)| onset)
-    }
-
-    fn after_from(&self, onset: &Onset) -> f64 {
-        let gap_s = self.settings.gap_s;
-        let middle = 0.5 * (onset.before_s + onset.after_s);
-        (middle + (1.0 - GAP_BEFORE) * gap_s).max(onset.after_s + 0.5 * gap_s)
-    }
-
-    fn judge(&mut self, onset: &Onset) -> Option<Step> {
-        let middle = 0.5 * (onset.before_s + onset.after_s);
-        let window_s = self.window_s();
-        let before_to = middle - GAP_BEFORE * self.settings.gap_s;
-        let after_from = self.after_from(onset);
-        let before = self.recent.mean((before_to - window_s).max(self.quiet_from_s), before_to)?;
-        let after = self.recent.mean(after_from, after_from + window_s)?;
-        self.quiet_from_s = after_from;
-        self.background.spread?;
-        let event = self.event(&before, &after, onset.switched)?;
-        self.age(onset.after_s);
+        let found = self.detector.take(seconds(seen.time), seen, &self.estimate.mean)?;
+        self.note_spread(found.now_s);
+        let sudden = found.sudden?;
+        let event = self.event(&sudden)?;
+        self.age(sudden.onset.after_s);
         let verdict = event.judge(&self.belief)?;
-        Some(self.settle(onset, &event, &verdict))
+        Some(self.settle(&sudden.onset, &event, &verdict))
     }
 
-    fn event(&mut self, before: &Window, after: &Window, switched: bool) -> Option<Event> {
-        let noise = self.background.noise;
-        let moment = |window: &Window| {
-            let fit = Terminal::fit(&window.measured, &self.class, &window.y)?;
-            Some(Moment::new(&fit, state_covariance(&fit, &noise, window.count), window.y))
-        };
-        let (from, to) = (moment(before)?, moment(after)?);
-        self.follow_background(before);
-        let count = before.count.min(after.count) as f64;
-        let wander = std::array::from_fn(|k| {
-            let of_noise = 2.0 * (self.gains[k].transpose() * noise * self.gains[k])[0] / count;
-            (self.e_spread[k].powi(2) - of_noise).max((0.05 * self.class[k]).powi(2))
-        });
+    fn event(&self, sudden: &Sudden) -> Option<Event> {
+        let [before, after] = &sudden.windows;
+        let kv = 0.5 * (before.measured[0] + before.measured[1]);
         Some(Event {
-            before: from,
-            after: to,
-            wander,
-            move_variance: (MOVE_PART * 0.5 * (before.measured[0] + before.measured[1])).powi(2),
-            prior: if switched { PRIOR_SWITCHED } else { self.prior() },
+            before: self.detector.moment(before)?,
+            after: self.detector.moment(after)?,
+            wander: sudden.wander,
+            move_variance: (MOVE_PART * kv).powi(2),
+            prior: if sudden.onset.switched { PRIOR_SWITCHED } else { self.prior() },
         })
     }
 
@@ -415,8 +201,8 @@ impl Learner {
         }
     }
 
-    /// Before the first step, what is configured stands as it is.
     fn refresh(&mut self) {
+        // Without a step yet, the configured values stand as they are.
         let untouched = self.estimate.steps == [0, 0];
         let cut = if untouched { self.belief } else { self.belief.cut_at_zero() };
         self.estimate.mean = cut.mean;
@@ -449,5 +235,6 @@ fn seconds(time: DateTime<Utc>) -> f64 {
 
 #[allow(clippy::cast_possible_truncation, reason = "saturates, and comes from a time")]
 fn time(seconds: f64) -> DateTime<Utc> {
-    DateTime::UNIX_EPOCH + TimeDelta::microseconds((seconds * 1e6).round() as i64)
+    let since = TimeDelta::microseconds((seconds * 1e6).round() as i64);
+    DateTime::UNIX_EPOCH.checked_add_signed(since).unwrap_or(DateTime::<Utc>::MAX_UTC)
 }

@@ -3,11 +3,11 @@
 //! A tap, a shunt, a lost unit moves one side of a corridor only, and by far more than its background. Judged at both
 //! ends together, such a step tells which side moved, and so how stiff the other one is:
 //!
-//! 1. [`Learner::observe`] takes terminal quantities frame by frame into short means ([`window`]), against a
-//!    robust background ([`background`]);
-//! 2. where the means before and after an instant differ by far more than that, [`terminal`] turns both into terminal
-//!    voltages, and [`hypothesis`] weighs what may have happened and updates the impedances;
-//! 3. [`Estimate`] says what is known, [`log`] what was seen, and [`store`] keeps it over a restart.
+//! 1. [`Learner::observe`] takes terminal quantities frame by frame into short means, and compares them with a robust
+//!    background;
+//! 2. where the means before and after an instant differ by far more than that, both are fitted to terminal voltages, four
+//!    cases of what may have happened are weighed, and the impedances updated;
+//! 3. [`Estimate`] says what is known, [`Step`] what was seen, and [`store`] keeps it over a restart.
 //!
 //! Everything is a deterministic function of configuration and observations, in constant memory.
 //!
@@ -17,6 +17,7 @@
 //! 1999 (Thevenin equivalents from local phasors) · Rousseeuw and Croux, JASA 1993 (median absolute deviation).
 
 mod background;
+mod detector;
 mod estimate;
 mod hypothesis;
 mod learner;

@@ -23,7 +23,7 @@ fn off(simulator: &Simulator, learner: &Learner) -> [f64; 2] {
 #[test]
 fn any_frame_rate_learns() {
     for (frame_s, hours) in [(0.02, 2.0), (0.1, 6.0), (1.0, 24.0), (5.0, 24.0), (10.0, 24.0)] {
-        let mut simulator = Simulator::new(Drill { frame_s, hours, ..Drill::day(3) });
+        let mut simulator = Simulator::new(Drill { hours, frame_s, ..Drill::day(3) });
         let mut learner = learner(&simulator);
         let before = learner.estimate().sd();
         for seen in simulator.by_ref() {
@@ -42,7 +42,7 @@ fn gaps_bad_fits_and_nonsense_slow_learning_and_no_more() {
         let mut simulator = Simulator::new(Drill::day(seed));
         let mut learner = learner(&simulator);
         let mut frames = 0_usize;
-        while let Some(mut seen) = simulator.next() {
+        for mut seen in simulator.by_ref() {
             frames += 1;
             let in_gap = frames % 3600 < 100;
             match frames % 97 {

@@ -68,7 +68,8 @@ fn drills_with_coincident_steps_come_near_their_truth() {
 #[test]
 #[ignore = "minutes; prints the statistics of 300 drills of each kind"]
 fn long_run() {
-    let kinds: [(&str, fn(u64) -> Drill); 8] = [
+    type Kind = (&'static str, fn(u64) -> Drill);
+    let kinds: [Kind; 8] = [
         ("clean telemetry", |s| Drill { skew: false, deadband: false, swing: false, trip: false, ..Drill::day(s) }),
         ("day", Drill::day),
         ("without trip", |s| Drill { trip: false, ..Drill::day(s) }),

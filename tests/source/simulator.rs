@@ -1,4 +1,10 @@
 //! A compact corridor with known sources: both sides wander, step at random, and are seen through poor telemetry.
+#![allow(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    clippy::struct_excessive_bools,
+    reason = "a test's own times and counts"
+)]
 
 use chrono::{DateTime, TimeDelta, Utc};
 use nalgebra::{Matrix2, Vector2};

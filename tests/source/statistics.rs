@@ -1,4 +1,5 @@
 //! How many drills came how near to their truth.
+#![allow(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "a test's own times and counts")]
 
 use std::fmt;
 

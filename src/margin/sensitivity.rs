@@ -44,7 +44,7 @@ impl Sensitivity {
             let side = usize::from(parameter / 2 != scene.set.exporter);
             let mut z = base.sources.z;
             let step = STEP * z[side].norm();
-            z[side] += if parameter % 2 == 0 { C64::new(step, 0.0) } else { C64::new(0.0, step) };
+            z[side] += if parameter.is_multiple_of(2) { C64::new(step, 0.0) } else { C64::new(0.0, step) };
             let (stress, _) = scene.stress(z);
             let limit_mw = limit(scene, &stress, tightest, crossing.as_ref()).filter(|_| step > 0.0);
             limit_mw.map_or(0.0, |limit_mw| (limit_mw - tightest.limit_mw) / step)

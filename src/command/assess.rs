@@ -4,7 +4,6 @@ use std::{
     io::{self, BufWriter, Write},
     num::NonZeroUsize,
     path::PathBuf,
-    pin::pin,
     sync::Arc,
     time::Duration,
 };
@@ -13,7 +12,10 @@ use chrono::TimeDelta;
 use clap::{Args, ValueEnum};
 use futures::FutureExt;
 use rayon::{ThreadPool, ThreadPoolBuilder, prelude::*};
-use tokio::{runtime, select, signal::ctrl_c};
+use tokio::{
+    runtime, select,
+    signal::unix::{SignalKind, signal},
+};
 
 use super::Failure;
 use crate::{
@@ -45,19 +47,18 @@ pub struct Options {
     /// Threads to assess on [default: one a processor]
     #[arg(long, value_name = "N")]
     threads: Option<NonZeroUsize>,
-    /// What stands behind the terminals
-    #[arg(long, value_enum, default_value_t)]
-    sources: Sources,
+    /// What stands behind the terminals [default: as the configuration says, else learned]
+    #[arg(long, value_enum)]
+    sources: Option<Sources>,
     /// End when live inputs end for the first time, instead of connecting again
     #[arg(long)]
     once: bool,
 }
 
 /// Where the sources' impedances come from.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, ValueEnum)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
 pub enum Sources {
     /// From the steps seen in the feed, beginning with the configured values
-    #[default]
     Learned,
     /// From the configuration alone
     Configured,
@@ -65,7 +66,10 @@ pub enum Sources {
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
-    let config = Config::load(&options.config)?;
+    let mut config = Config::load(&options.config)?;
+    if let Some(sources) = options.sources {
+        config.learning.enabled = sources == Sources::Learned;
+    }
     let inputs = options.inputs(&config)?;
     // Inputs are read beside the thread that assesses.
     let runtime = runtime::Builder::new_multi_thread().worker_threads(2).enable_all().build()?;
@@ -100,22 +104,23 @@ impl Options {
 
 async fn assess(options: &Options, config: &Config, inputs: &[Input]) -> Result<(), Failure> {
     let channels = Arc::new(Channels::new(config));
-    let patience = Patience { once: options.once, ..Patience::default() };
+    let patience = Patience { hold: Duration::try_from_secs_f64(config.feed.hold_s)?, once: options.once };
     let mut feed = Feed::open(inputs, &channels, patience).await?;
     let mut bench = Bench::new(options, config, &channels)?;
     let mut out = BufWriter::with_capacity(1 << 16, io::stdout().lock());
-    let mut interrupt = pin!(ctrl_c());
-    let mut interrupted = false;
-    loop {
+    let mut interrupt = signal(SignalKind::interrupt())?;
+    let mut terminate = signal(SignalKind::terminate())?;
+    let interrupted = loop {
         let batch = select! {
             biased;
-            _ = &mut interrupt => { interrupted = true; None }
+            _ = interrupt.recv() => break true,
+            _ = terminate.recv() => break true,
             batch = next_batch(&mut feed, &mut out) => batch?,
         };
-        let Some(batch) = batch else { break };
+        let Some(batch) = batch else { break false };
         bench.assess(&batch)?;
         bench.write(&mut out)?;
-    }
+    };
     bench.write_last(&mut out)?;
     out.flush()?;
     report(&feed.monitor().inputs(), interrupted)

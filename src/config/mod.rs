@@ -74,11 +74,13 @@ pub struct FeedSettings {
     pub inputs: Vec<String>,
     /// How long a value stands when no newer one comes, s (`max_age_s`).
     pub max_age_s: f64,
+    /// How long live inputs wait for one another's frames, s (`hold_s`).
+    pub hold_s: f64,
 }
 
 impl Default for FeedSettings {
     fn default() -> Self {
-        Self { inputs: Vec::new(), max_age_s: 10.0 }
+        Self { inputs: Vec::new(), max_age_s: 10.0, hold_s: 0.2 }
     }
 }
 
@@ -173,6 +175,7 @@ fn feed(mut section: Section<'_>) -> FeedSettings {
     FeedSettings {
         inputs: inputs.map_or(default.inputs, |inputs| inputs.into_iter().map(|input| input.text).collect()),
         max_age_s: section.number("max_age_s", POSITIVE.up_to(DAY_S)).unwrap_or(default.max_age_s),
+        hold_s: section.number("hold_s", NOT_NEGATIVE.up_to(DAY_S)).unwrap_or(default.hold_s),
     }
 }
 

@@ -2,13 +2,15 @@
 
 use std::{io, time::Duration};
 
+use socket2::{SockRef, TcpKeepalive};
 use tokio::{
     io::AsyncRead,
+    net::TcpStream,
     time::{sleep, timeout},
 };
 
 use super::{
-    InputState,
+    Address, InputState,
     stream::{Closed, Strand},
 };
 
@@ -18,6 +20,20 @@ const LONGEST_PAUSE: Duration = Duration::from_secs(10);
 const CONNECT_TIMEOUT: Duration = Duration::from_secs(10);
 /// With `once`, an address nobody has answered at is given up when the pause would grow beyond this.
 const LONGEST_PAUSE_ONCE: Duration = Duration::from_secs(4);
+
+/// Connects over TCP; a server that vanishes without a word will be missed.
+pub(super) async fn tcp(address: &Address) -> io::Result<TcpStream> {
+    let stream = TcpStream::connect((&*address.host, address.port)).await?;
+    keep_alive(&stream);
+    Ok(stream)
+}
+
+/// Gives up a peer that has not answered for some 30 s (keep-alives, RFC 9293, section 3.8.4).
+pub(super) fn keep_alive(stream: &TcpStream) {
+    let keepalive = TcpKeepalive::new().with_time(Duration::from_secs(15)).with_interval(Duration::from_secs(5));
+    // Where the system cannot do it, the peer is missed later.
+    let _unsupported = SockRef::from(stream).set_tcp_keepalive(&keepalive.with_retries(3));
+}
 
 /// Reads from one connection after another; with `once` only from the first.
 pub(super) async fn run<S: AsyncRead + Unpin>(

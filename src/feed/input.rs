@@ -85,10 +85,6 @@ impl Address {
         let is_possible = !host.is_empty() && !host.contains(|c: char| c.is_whitespace() || "/[]@".contains(c));
         is_possible.then(|| Self { host: host.into(), port })
     }
-
-    pub(super) fn as_pair(&self) -> (&str, u16) {
-        (&self.host, self.port)
-    }
 }
 
 impl fmt::Display for Address {

@@ -39,8 +39,8 @@ struct Object<'a> {
     time: Cow<'a, str>,
     #[serde(borrow)]
     values: Entries<'a>,
-    #[serde(borrow, default)]
-    quality: Entries<'a>,
+    #[serde(borrow)]
+    quality: Option<Entries<'a>>,
 }
 
 impl Object<'_> {
@@ -52,7 +52,7 @@ impl Object<'_> {
                 None => tally.unknown.count(name),
             }
         }
-        for (Name(name), quality) in &self.quality.0 {
+        for (Name(name), quality) in self.quality.iter().flat_map(|entries| &entries.0) {
             if let Some(slot) = channels.in_feed(name) {
                 draft.quality(slot, Quality::from_word(quality.get().trim_matches('"')));
             }
@@ -62,7 +62,6 @@ impl Object<'_> {
 }
 
 /// An object by channel name, in its own order and with what is given twice.
-#[derive(Default)]
 struct Entries<'a>(Vec<(Name<'a>, &'a RawValue)>);
 
 #[derive(Deserialize)]

@@ -3,7 +3,7 @@
 use std::{collections::VecDeque, time::Duration};
 
 use tokio::{
-    net::{TcpListener, UdpSocket},
+    net::{TcpListener, TcpStream, UdpSocket},
     select,
     sync::mpsc,
     task::JoinSet,
@@ -12,6 +12,7 @@ use tokio::{
 
 use super::{
     Frame, InputState,
+    connect::keep_alive,
     live::Inlet,
     merge::Lane,
     stream::{Closed, Queue, Strand, Stream},
@@ -36,18 +37,14 @@ pub(super) async fn tcp(
     loop {
         select! {
             accepted = listener.accept() => match accepted {
-                Ok((mut bytes, _)) if clients.len() < MAX_CLIENTS => {
+                Ok((_, from)) if clients.len() >= MAX_CLIENTS => {
+                    gauge.lock().tally.trouble(&format!("{from} turned away: {MAX_CLIENTS} clients are connected"));
+                }
+                Ok((client, _)) => {
                     let (queue, outlet) = Queue::new();
                     lanes.send(Lane::new(gauge.clone(), Inlet::new(outlet, true))).await.map_err(|_| Closed)?;
-                    let mut strand = Strand { stream: new_stream(), queue };
                     gauge.connected(false);
-                    clients.spawn(async move {
-                        strand.drain(&mut bytes).await?;
-                        strand.finish().await
-                    });
-                }
-                Ok((_, from)) => {
-                    gauge.lock().tally.trouble(&format!("{from} turned away: {MAX_CLIENTS} clients are connected"));
+                    clients.spawn(serve(client, Strand { stream: new_stream(), queue }));
                 }
                 Err(error) => {
                     // No descriptors left, most likely: leave time for some to be closed.
@@ -63,6 +60,12 @@ pub(super) async fn tcp(
             }
         }
     }
+}
+
+async fn serve(mut client: TcpStream, mut strand: Strand) -> Result<(), Closed> {
+    keep_alive(&client);
+    strand.drain(&mut client).await?;
+    strand.finish().await
 }
 
 /// Takes datagrams of one or more whole lines. Nobody can be made to wait: when too many wait, the oldest are dropped.

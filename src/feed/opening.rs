@@ -1,7 +1,7 @@
 use std::{io, sync::Arc};
 
 use tokio::{
-    net::{TcpListener, TcpStream, UdpSocket, UnixStream},
+    net::{TcpListener, UdpSocket, UnixStream},
     sync::mpsc,
     task::{JoinSet, spawn_blocking},
 };
@@ -43,10 +43,7 @@ impl<'a> Opening<'a> {
             }
             Input::Tcp(address) => {
                 let (strand, gauge) = self.strand(input, Format::JsonLines);
-                self.spawn(
-                    gauge,
-                    connect::run(strand, once, async move || TcpStream::connect(address.as_pair()).await),
-                );
+                self.spawn(gauge, connect::run(strand, once, async move || connect::tcp(&address).await));
             }
             Input::Unix(path) => {
                 let (strand, gauge) = self.strand(input, Format::JsonLines);
@@ -57,13 +54,13 @@ impl<'a> Opening<'a> {
                 self.spawn(gauge, async move { follow::run(&path, strand, once).await });
             }
             Input::UdpListen(address) => {
-                let socket = UdpSocket::bind(address.as_pair()).await?;
+                let socket = UdpSocket::bind((&*address.host, address.port)).await?;
                 let (strand, gauge) = self.strand(input, Format::JsonLines);
                 gauge.lock().address = socket.local_addr().ok();
                 self.spawn(gauge, listen::udp(socket, strand));
             }
             Input::TcpListen(address) => {
-                let listener = TcpListener::bind(address.as_pair()).await?;
+                let listener = TcpListener::bind((&*address.host, address.port)).await?;
                 let gauge = Gauge::new(&input.to_string());
                 gauge.lock().address = listener.local_addr().ok();
                 let (channels, of_clients) = (self.channels.clone(), gauge.clone());

@@ -1,6 +1,7 @@
 use std::{collections::BTreeSet, fmt, sync::Arc};
 
 use super::line_error::LineError;
+use crate::config::wording::is_unprintable;
 
 /// Names and reasons kept of each sort: the first few show what is wrong.
 const KEPT: usize = 5;
@@ -83,18 +84,13 @@ fn such_as(some: impl Iterator<Item = impl ToString>) -> String {
     if some.is_empty() { String::new() } else { format!(", such as {}", some.join("; ")) }
 }
 
-/// Text from outside, fit for a terminal: no control characters, bounded.
+/// Text from outside, fit for a terminal: bounded, without control characters and the like.
 pub(super) fn printable(text: &str) -> String {
-    let mut shown: String =
-        text.chars().map(|c| if is_harmless(c) { c } else { '\u{fffd}' }).take(TEXT_CHARS + 1).collect();
+    let shown = text.chars().map(|c| if is_unprintable(c) { '\u{fffd}' } else { c });
+    let mut shown: String = shown.take(TEXT_CHARS + 1).collect();
     if let Some((end, _)) = shown.char_indices().nth(TEXT_CHARS) {
         shown.truncate(end);
         shown.push('…');
     }
     shown
-}
-
-/// Neither a control character nor one that reorders the text around it (Unicode Standard Annex 9).
-fn is_harmless(c: char) -> bool {
-    !c.is_control() && !matches!(c, '\u{200e}' | '\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}')
 }

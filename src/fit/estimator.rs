@@ -3,13 +3,15 @@
 //! Unknowns are, for each bus in service, the voltage per unit of nominal and the angle (but that of `to`, and that of `from`
 //! where nothing tells it), and one angle common to all angle channels.
 
+mod judge;
+mod start;
+
 use super::{
     gain::{Gain, Singular},
     meter::{Meter, Meters},
-    wiring::{Flow, Wiring},
+    wiring::{Flow, Wire, Wiring},
 };
 use crate::{
-    feed::End,
     grid::{BusIndex, Corridor, FROM, TO},
     network::C64,
 };
@@ -86,42 +88,47 @@ impl Loss {
 }
 
 fn wrapped(angle: f64) -> f64 {
+    if angle.abs() < std::f64::consts::PI {
+        return angle;
+    }
     angle - std::f64::consts::TAU * (angle / std::f64::consts::TAU).round()
 }
 
 impl Estimator {
     /// Takes the measurements that concern this topology and lays the unknowns out.
     pub fn prepare(&mut self, corridor: &Corridor, meters: &Meters, wiring: &Wiring, z: &[f64], w: &[f64]) {
-        let buses = corridor.buses.len();
         self.z.clear();
         self.z.extend_from_slice(z);
         self.w.clear();
         self.w.resize(w.len(), 0.0);
         self.assumed.clear();
         self.assumed.resize(w.len(), 0.0);
-        for wire in &wiring.wires {
-            for meter in wire.meters {
-                self.w[meter] = w[meter];
-            }
+        for meter in wiring.wires.iter().flat_map(|wire| wire.meters) {
+            self.w[meter] = w[meter];
         }
-        let mut angles = [0, 0];
-        for bus in 0..buses {
-            let Some(side) = wiring.side[bus] else { continue };
+        for (bus, _) in corridor.buses.iter().enumerate().filter(|(bus, _)| wiring.live(*bus)) {
             self.w[Meters::kv(bus)] = w[Meters::kv(bus)];
-            angles[side] += usize::from(w[Meters::deg(bus)] > 0.0);
-            if bus > TO {
-                let configured = corridor.buses[bus].load.map_or([0.0; 2], |load| [load.mw, load.mvar]);
-                for (meter, power) in Meters::load(bus).into_iter().zip(configured) {
-                    self.w[meter] = w[meter];
-                    if w[meter] == 0.0 {
-                        self.w[meter] = meters.assumed_weight(meter);
-                        self.z[meter] = 0.0;
-                        self.assumed[meter] = power;
-                    }
+            self.w[Meters::deg(bus)] = w[Meters::deg(bus)];
+        }
+        for (bus, station) in corridor.buses.iter().enumerate().skip(TO + 1).filter(|(bus, _)| wiring.live(*bus)) {
+            let configured = station.load.map_or([0.0; 2], |load| [load.mw, load.mvar]);
+            for (meter, power) in Meters::load(bus).into_iter().zip(configured) {
+                self.w[meter] = w[meter];
+                if w[meter] == 0.0 {
+                    (self.z[meter], self.w[meter]) = (0.0, meters.assumed_weight(meter));
+                    self.assumed[meter] = power;
                 }
             }
         }
-        let angles_used = angles[FROM] + angles[TO] >= 2;
+        self.lay_out(wiring);
+    }
+
+    fn lay_out(&mut self, wiring: &Wiring) {
+        let mut angles = [0, 0];
+        for (bus, side) in wiring.side.iter().enumerate() {
+            angles[side.unwrap_or(TO)] += usize::from(self.w[Meters::deg(bus)] > 0.0);
+        }
+        let angles_used = angles[FROM] + angles[TO] > 1;
         self.angle_known = wiring.joined() || (angles[FROM] > 0 && angles[TO] > 0);
         self.unknowns = 0;
         let mut next = |wanted: bool| {
@@ -131,15 +138,16 @@ impl Estimator {
         };
         self.v_at.clear();
         self.angle_at.clear();
-        for bus in 0..buses {
+        for bus in 0..wiring.side.len() {
             let live = wiring.live(bus);
             self.v_at.push(next(live));
             self.angle_at.push(next(live && bus != TO && (bus != FROM || self.angle_known)));
-            if live && angles_used {
-                self.w[Meters::deg(bus)] = w[Meters::deg(bus)];
+            if !angles_used {
+                self.w[Meters::deg(bus)] = 0.0;
             }
         }
         self.offset_at = next(angles_used);
+        // What is fixed goes to the one place past the unknowns.
         let fixed = self.unknowns;
         for at in self.v_at.iter_mut().chain(&mut self.angle_at).chain([&mut self.offset_at]) {
             *at = fixed.min(*at);
@@ -149,59 +157,6 @@ impl Estimator {
     /// Measurements in use.
     pub fn count(&self) -> usize {
         self.w.iter().filter(|w| **w > 0.0).count()
-    }
-
-    /// A start near the state even if some measurements are far off: measured voltages where they are possible, and angles
-    /// from bus to bus as the middle one of what the MW readings say.
-    pub fn start(&mut self, wiring: &Wiring) {
-        let buses = wiring.side.len();
-        self.v.clear();
-        self.v.extend((0..buses).map(|bus| {
-            let kv = Meters::kv(bus);
-            if self.w[kv] > 0.0 && (0.5..1.5).contains(&self.z[kv]) { self.z[kv] } else { 1.0 }
-        }));
-        self.angle.clear();
-        self.angle.resize(buses, f64::NAN);
-        self.angle[TO] = 0.0;
-        if !wiring.joined() {
-            self.angle[FROM] = 0.0;
-        }
-        for _ in 0..buses {
-            for bus in 0..buses {
-                if wiring.live(bus) && self.angle[bus].is_nan() {
-                    self.angle[bus] = self.guess_angle(wiring, bus).unwrap_or(f64::NAN);
-                }
-            }
-        }
-        let reference = (0..buses).find(|bus| self.w[Meters::deg(*bus)] > 0.0);
-        self.offset = reference.map_or(0.0, |bus| self.z[Meters::deg(bus)] - self.angle[bus]);
-    }
-
-    /// The middle of what the circuits to buses of known angle say; `None` without such a circuit.
-    fn guess_angle(&mut self, wiring: &Wiring, bus: BusIndex) -> Option<f64> {
-        self.guesses.clear();
-        let mut neighbour = None;
-        for wire in &wiring.wires {
-            let [first, second] = wire.buses;
-            let (known, sign) = if first == bus { (self.angle[second], 1.0) } else { (self.angle[first], -1.0) };
-            if (first != bus && second != bus) || known.is_nan() {
-                continue;
-            }
-            neighbour = Some(known);
-            let v = wire.buses.map(|bus| self.v[bus]);
-            for (end, mw) in [(End::From, wire.meters[0]), (End::To, wire.meters[2])] {
-                if self.w[mw] > 0.0 {
-                    self.guesses.push(known + sign * wire.angle_by_mw(end, self.z[mw], v));
-                }
-            }
-        }
-        self.guesses.sort_unstable_by(f64::total_cmp);
-        let count = self.guesses.len();
-        if count == 0 {
-            return neighbour;
-        }
-        let [low, high] = [self.guesses[(count - 1) / 2], self.guesses[count / 2]];
-        Some(if high.abs() < low.abs() { high } else { low })
     }
 
     /// Iterates from where the unknowns stand to the least sum of squares and returns it. With a `bend`, residuals beyond it
@@ -254,53 +209,59 @@ impl Estimator {
         for wire in &wiring.wires {
             let [a, b] = wire.buses;
             let flow = wire.flow([self.v[a], self.v[b]], self.angle[a] - self.angle[b]);
-            // First over the two voltages and the angle across, then spread to the unknowns.
-            let (mut square, mut side) = ([[0.0; 3]; 3], [0.0; 3]);
-            for k in 0..4 {
-                let w = self.w[wire.meters[k]];
-                let residual = w * (self.z[wire.meters[k]] - flow.s[k]);
-                let factor = loss.take(residual);
-                let row = flow.d[k].map(|d| factor * w * d);
-                for i in 0..3 {
-                    side[i] += row[i] * factor * residual;
-                    for j in 0..=i {
-                        square[i][j] += row[i] * row[j];
-                    }
-                }
-            }
-            let at = [
-                (self.v_at[a], 0, 1.0),
-                (self.v_at[b], 1, 1.0),
-                (self.angle_at[a], 2, 1.0),
-                (self.angle_at[b], 2, -1.0),
-            ];
-            for (n, (i, k, sign)) in at.into_iter().enumerate() {
-                self.gain.b[i] += sign * side[k];
-                for &(j, l, other) in &at[..=n] {
-                    self.gain.add(i, j, sign * other * square[k.max(l)][k.min(l)]);
-                }
-            }
+            self.add_flow(wire, &flow, &mut loss);
             self.flows.push(flow);
         }
+        let mut row = std::mem::take(&mut self.row);
         for bus in (0..wiring.side.len()).filter(|bus| wiring.live(*bus)) {
-            let kv = Meters::kv(bus);
-            let w = self.w[kv];
-            let residual = w * (self.z[kv] - self.v[bus]);
+            let (kv, deg) = (Meters::kv(bus), Meters::deg(bus));
+            let residual = self.w[kv] * (self.z[kv] - self.v[bus]);
             let factor = loss.take(residual);
-            self.gain.b[self.v_at[bus]] += factor * factor * w * residual;
-            self.gain.add(self.v_at[bus], self.v_at[bus], (factor * w).powi(2));
-            for meter in kv + 1..kv + 4 {
-                if self.w[meter] > 0.0 {
-                    let mut row = std::mem::take(&mut self.row);
-                    let residual = self.row_of(wiring, meter, &mut row);
-                    let factor = loss.take(residual);
-                    row.iter_mut().for_each(|a| *a *= factor);
-                    self.gain.add_row(&row, factor * residual);
-                    self.row = row;
+            self.gain.add_ones(&[self.v_at[bus]], factor * self.w[kv], factor * residual);
+            if self.w[deg] > 0.0 {
+                let residual = self.w[deg] * wrapped(self.z[deg] - self.angle[bus] - self.offset);
+                let factor = loss.take(residual);
+                let at = [self.angle_at[bus], self.offset_at];
+                self.gain.add_ones(&at, factor * self.w[deg], factor * residual);
+            }
+            for load in Meters::load(bus).into_iter().filter(|load| self.w[*load] > 0.0) {
+                let residual = self.row_of(wiring, load, &mut row);
+                let factor = loss.take(residual);
+                for derivative in &mut row {
+                    *derivative *= factor;
+                }
+                self.gain.add_row(&row, factor * residual);
+            }
+        }
+        self.row = row;
+        loss.sum
+    }
+
+    /// Adds a circuit's four measurements: first over its two voltages and the angle across, then spread to the unknowns.
+    fn add_flow(&mut self, wire: &Wire, flow: &Flow, loss: &mut Loss) {
+        let (mut square, mut side) = ([[0.0; 3]; 3], [0.0; 3]);
+        for (k, meter) in wire.meters.into_iter().enumerate() {
+            let residual = self.w[meter] * (self.z[meter] - flow.s[k]);
+            let factor = loss.take(residual);
+            let row = flow.d[k].map(|d| factor * self.w[meter] * d);
+            for i in 0..3 {
+                side[i] += row[i] * factor * residual;
+                for j in 0..=i {
+                    square[i][j] += row[i] * row[j];
                 }
             }
         }
-        loss.sum
+        let [a, b] = wire.buses;
+        let at = [(self.v_at[a], 0), (self.v_at[b], 1), (self.angle_at[a], 2), (self.angle_at[b], 2)];
+        let signs = [1.0, 1.0, 1.0, -1.0];
+        for n in 0..4 {
+            let (i, k) = at[n];
+            self.gain.b[i] += signs[n] * side[k];
+            for m in 0..=n {
+                let (j, l) = at[m];
+                self.gain.add(i, j, signs[n] * signs[m] * square[k.max(l)][k.min(l)]);
+            }
+        }
     }
 
     /// Weighted derivatives of a measurement by the unknowns; returns its weighted residual. Flows must be up to date.
@@ -343,57 +304,6 @@ impl Estimator {
         row[self.unknowns] = 0.0;
         let residual = self.z[meter] - value;
         w * if kind == 1 && bus < wiring.side.len() { wrapped(residual) } else { residual }
-    }
-
-    /// Whether MW and angle channels alone fix the angles: Mvar cannot tell which way power goes.
-    pub fn angles_fixed(&mut self, wiring: &Wiring) -> bool {
-        if wiring.wires.iter().all(|wire| self.w[wire.meters[0]] + self.w[wire.meters[2]] > 0.0) {
-            return true;
-        }
-        self.assemble(wiring, f64::INFINITY);
-        self.gain.clear(self.unknowns);
-        let mut row = std::mem::take(&mut self.row);
-        for meter in (0..self.w.len()).filter(|meter| self.w[*meter] > 0.0) {
-            let active = if meter / 4 < wiring.side.len() { matches!(meter % 4, 1 | 2) } else { meter % 2 == 0 };
-            if active {
-                let residual = self.row_of(wiring, meter, &mut row);
-                self.v_at.iter().for_each(|at| row[*at] = 0.0);
-                self.gain.add_row(&row, residual);
-            }
-        }
-        self.row = row;
-        for &at in &self.v_at {
-            self.gain.add(at, at, f64::MAX.sqrt());
-        }
-        self.gain.factor().is_ok()
-    }
-
-    /// The measurement with the largest normalised residual |r|/√Ω (Abur & Expósito 2004, §5.7), where the equations are made
-    /// linear at a robust estimate, which a gross error does not drag along. Critical measurements (Ω = 0) say nothing.
-    pub fn worst(&mut self, wiring: &Wiring) -> Option<Meter> {
-        const BEND: f64 = 3.0;
-        const CRITICAL: f64 = 1e-5;
-        self.start(wiring);
-        // Wherever it ends is nearer than where it started.
-        let _ = self.iterate(wiring, BEND);
-        self.assemble(wiring, f64::INFINITY);
-        self.gain.factor().ok()?;
-        self.gain.solve(&mut self.step);
-        let mut row = std::mem::take(&mut self.row);
-        let mut worst = None;
-        let mut largest = 0.0;
-        for meter in (0..self.w.len()).filter(|meter| self.w[*meter] > 0.0) {
-            let before = self.row_of(wiring, meter, &mut row);
-            let residual = before - row.iter().zip(&self.step).map(|(h, s)| h * s).sum::<f64>();
-            self.gain.forward(&mut row);
-            let omega = 1.0 - row[..self.unknowns].iter().map(|y| y * y).sum::<f64>();
-            let normalised = residual.abs() / omega.sqrt();
-            if omega > CRITICAL && normalised > largest * (1.0 + 1e-9) {
-                (worst, largest) = (Some(meter), normalised);
-            }
-        }
-        self.row = row;
-        worst
     }
 
     /// Fitted voltage of a bus, kV.

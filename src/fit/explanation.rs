@@ -51,6 +51,11 @@ pub(super) struct Explanation {
 }
 
 impl Explanation {
+    /// Whether no measurement had to be set aside.
+    fn suffices(&self) -> bool {
+        self.verdict.passes() && self.set_aside.is_empty()
+    }
+
     /// Smaller is better.
     fn blame(&self) -> (bool, usize) {
         (!self.verdict.passes(), self.statuses.len() + self.set_aside.len())
@@ -76,9 +81,12 @@ impl Fitter {
             topology.closed[circuit] = true;
             statuses.push(self.meters.closed[circuit]);
         }
-        let mut best = self.try_topology(topology, statuses);
+        let mut best = self.try_topology(topology, statuses, usize::MAX);
+        if best.suffices() {
+            return best;
+        }
         let mut changes = Vec::new();
-        while !best.verdict.passes() || !best.set_aside.is_empty() {
+        while !best.suffices() {
             let better = self
                 .changes(&best, &carrying)
                 .into_iter()
@@ -99,6 +107,10 @@ impl Fitter {
 
     /// Changes worth a try.
     fn changes(&self, present: &Explanation, carrying: &[usize]) -> Vec<Change> {
+        if present.set_aside.is_empty() && present.verdict.limit.is_none() {
+            // Too little is measured to test anything.
+            return Vec::new();
+        }
         let closed = |circuit: &usize| present.topology.closed[*circuit];
         let circuits = 0..self.corridor.circuits.len();
         let mut changes: Vec<Change> =
@@ -131,15 +143,18 @@ impl Fitter {
                 statuses.push(self.meters.inserted[circuit][bank]);
             }
         }
-        self.try_topology(topology, statuses)
+        // No use going on where more is to blame than before.
+        let most = if present.verdict.passes() { present.blame().1.saturating_sub(statuses.len()) } else { usize::MAX };
+        self.try_topology(topology, statuses, most)
     }
 
-    /// Fits on a topology and sets aside one measurement after another until the test passes or nothing is left to spare.
-    fn try_topology(&mut self, topology: Topology, statuses: Vec<Slot>) -> Explanation {
+    /// Fits on a topology and sets aside one measurement after another, up to so many, until the test passes or nothing is left
+    /// to spare.
+    fn try_topology(&mut self, topology: Topology, statuses: Vec<Slot>, most: usize) -> Explanation {
         self.wire(&topology);
         let mut set_aside = Vec::new();
         let mut verdict = self.solve();
-        while verdict.limit.is_some() && !verdict.passes() {
+        while verdict.limit.is_some() && !verdict.passes() && set_aside.len() < most {
             let Some(worst) = self.estimator.worst(&self.wiring) else { break };
             self.estimator.w[worst] = 0.0;
             set_aside.push(worst);

@@ -1,4 +1,4 @@
-//! The normal equations: the gain matrix HᵀWH, its right-hand side and its Cholesky factor (Abur & Expósito 2004, §2.6).
+//! The normal equations: the gain matrix `HᵀWH`, its right-hand side and its Cholesky factor (Abur & Expósito 2004, §2.6).
 
 /// Unknowns are per unit of nominal and radians; one that no measurement fixes to within this spread is not known.
 const WIDEST_SPREAD: f64 = 0.1;
@@ -29,6 +29,14 @@ impl Gain {
     pub fn add(&mut self, i: usize, j: usize, value: f64) {
         let (row, column) = if i < j { (j, i) } else { (i, j) };
         self.g[row * (self.unknowns + 1) + column] += value;
+    }
+
+    /// Adds a measurement of the plain sum of some unknowns.
+    pub fn add_ones(&mut self, at: &[usize], weight: f64, residual: f64) {
+        for (n, &i) in at.iter().enumerate() {
+            self.b[i] += weight * residual;
+            at[..=n].iter().for_each(|&j| self.add(i, j, weight * weight));
+        }
     }
 
     /// Adds a weighted row over all unknowns and its weighted residual.

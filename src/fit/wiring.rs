@@ -18,6 +18,8 @@ pub(super) struct Wire {
     pub branch: Branch,
     /// Conjugates of the branch admittances at nominal voltages, MVA: first bus, transfer, second bus.
     y: [C64; 3],
+    /// Magnitude and argument of the transfer admittance's.
+    transfer: (f64, f64),
 }
 
 /// MW and Mvar at the first bus, MW and Mvar at the second; each with its derivatives by the first voltage, the second
@@ -79,14 +81,14 @@ impl Wire {
 
     /// Angle of the first bus against the second that MW at an end mean, on the stable side.
     pub fn angle_by_mw(&self, end: End, mw: f64, [v1, v2]: [f64; 2]) -> f64 {
-        let [y11, y12, y22] = self.y;
+        let [y11, _, y22] = self.y;
         let through = match end {
             End::From => mw - v1 * v1 * y11.re,
             End::To => mw - v2 * v2 * y22.re,
         };
         // through = v₁v₂·|Y₁₂|·cos(angle + arg Y₁₂*), where the argument is near -90°, or 90° when overcompensated.
-        let lean = y12.arg();
-        let arc = (through / (v1 * v2 * y12.norm())).clamp(-1.0, 1.0).acos();
+        let (size, lean) = self.transfer;
+        let arc = (through / (v1 * v2 * size)).clamp(-1.0, 1.0).acos();
         let angle = -lean + arc.copysign(lean);
         match end {
             End::From => angle,
@@ -103,7 +105,7 @@ impl Wiring {
             let branch = branches.of(index, circuit, &topology.inserted[index]);
             let [u1, u2] = circuit.between.map(|bus| corridor.buses[bus].nominal_kv);
             let y = [branch.y11 * (u1 * u1), branch.y12 * (u1 * u2), branch.y22 * (u2 * u2)].map(|y| y.conj());
-            Wire { buses: [first, second], meters: meters.flow(index), branch, y }
+            Wire { buses: [first, second], meters: meters.flow(index), branch, y, transfer: y[1].to_polar() }
         };
         let in_service =
             |(index, circuit): &(usize, &Circuit)| topology.closed[*index] && side[circuit.between[0]].is_some();

@@ -152,15 +152,15 @@ impl<'a> Outage<'a> {
 
     /// The internal angle at which the area margin falls below the required one. On the way up the margin rises to 1,
     /// where the fault neither speeds up nor brakes, and falls from there: where it holds at the start it fails once.
-    /// `known_rad` is any angle on the way that halves the work.
-    pub fn area_limit_rad(&self, known_rad: f64) -> Option<f64> {
+    /// `near_rad` is any angle on the way; the nearer the limit, the less work.
+    pub fn area_limit_rad(&self, near_rad: f64) -> Option<f64> {
         let &Stress { start_rad, end_rad, .. } = self.stress;
-        let known_rad = known_rad.clamp(start_rad, end_rad);
-        let [start, known] = [start_rad, known_rad].map(|angle| (angle, self.area_excess(angle)));
+        let [start, near] =
+            [start_rad, near_rad.clamp(start_rad, end_rad)].map(|angle| (angle, self.area_excess(angle)));
         if start.1 < 0.0 {
             return Some(start_rad);
         }
-        let bracket = if known.1 < 0.0 { (start, known) } else { (known, (end_rad, self.area_excess(end_rad))) };
+        let bracket = if near.1 < 0.0 { (start, near) } else { (near, (end_rad, self.area_excess(end_rad))) };
         (bracket.1.1 < 0.0)
             .then(|| root::bracketed(bracket.0, bracket.1, ANGLE_TOLERANCE_RAD, |angle| self.area_excess(angle)))
     }

@@ -1,7 +1,7 @@
 //! A bracketed root (Chandrupatla, Advances in Engineering Software 28, 1997).
 
-/// The root of `f` between `a` and `b`, where its values `fa` and `fb` differ in sign, to within `tolerance`;
-/// returns the end of the last bracket on the side of `a`.
+/// The root of `f` between `a` and `b`, where its values `fa` and `fb` differ in sign, to within `tolerance` or a
+/// value below 1e-10 of the larger of these.
 pub(super) fn bracketed(
     (mut a, mut fa): (f64, f64),
     (mut b, mut fb): (f64, f64),
@@ -9,7 +9,7 @@ pub(super) fn bracketed(
     mut f: impl FnMut(f64) -> f64,
 ) -> f64 {
     const ITERATIONS: usize = 100;
-    let holds = fa >= 0.0;
+    let negligible = 1e-10 * fa.abs().max(fb.abs());
     // `a` is the newest point, `b` the one across the root, `c` the one before.
     let (mut c, mut fc);
     let mut t = 0.5;
@@ -23,7 +23,7 @@ pub(super) fn bracketed(
         }
         (a, fa) = (x, fx);
         let width = (b - a).abs();
-        if width <= tolerance || fa == 0.0 {
+        if width <= tolerance || fa.abs() <= negligible {
             break;
         }
         let least = 0.5 * tolerance / width;
@@ -36,5 +36,5 @@ pub(super) fn bracketed(
         }
         .clamp(least, 1.0 - least);
     }
-    if (fa >= 0.0) == holds { a } else { b }
+    a
 }

@@ -110,21 +110,25 @@ impl Stress {
         self.settled.transfer.at(angle_rad)
     }
 
-    /// E_s = V + Z_s·I = E + j·swing_x·I at an internal angle.
+    /// E_s = V + Z_s·I = E + j·swing_x·I at an internal angle, and P_m = P_e = a·P_x + b·P_i of the present network
+    /// there, from voltages and currents.
     pub fn swing_at(&self, angle_rad: f64) -> SwingPoint {
         let Sources { e_kv: [ex, ei], swing_x_ohm: [xx, xi], .. } = self.sources;
-        let (e_kv, turned) = if xx == 0.0 && xi == 0.0 {
-            ([ex, ei], 0.0)
-        } else {
-            let rotation = C64::cis(angle_rad);
-            let y: &M2 = &self.settled.face.y;
-            // Each turned so that its own settled source is real.
-            let swing_x = (y.m11 * ex + y.m12 * ei * rotation.conj()) * C64::new(0.0, xx) + ex;
-            let swing_i = (y.m21 * ex * rotation + y.m22 * ei) * C64::new(0.0, xi) + ei;
-            ([swing_x.norm_sqr().sqrt(), swing_i.norm_sqr().sqrt()], (swing_x * swing_i.conj()).arg())
-        };
-        let angle_rad = angle_rad + turned;
-        SwingPoint { e_kv, angle_rad, p_m_mw: self.swing.curve(e_kv).at(angle_rad) }
+        let y: &M2 = &self.settled.face.y;
+        let rotation = C64::cis(angle_rad);
+        // Each side turned so that its settled source is real.
+        let current_x = y.m11 * ex + y.m12 * ei * rotation.conj();
+        let current_i = y.m21 * ex * rotation + y.m22 * ei;
+        let swing_x = C64::new(ex - xx * current_x.im, xx * current_x.re);
+        let swing_i = C64::new(ei - xi * current_i.im, xi * current_i.re);
+        let power_x = (swing_x * current_x.conj()).re;
+        let power_i = (swing_i * current_i.conj()).re;
+        let turned = if xx == 0.0 && xi == 0.0 { 0.0 } else { (swing_x * swing_i.conj()).arg() };
+        SwingPoint {
+            e_kv: [swing_x.norm_sqr().sqrt(), swing_i.norm_sqr().sqrt()],
+            angle_rad: angle_rad + turned,
+            p_m_mw: self.machine.exporter_share * power_x - self.machine.importer_share * power_i,
+        }
     }
 
     /// P_e of the present network with the sources of a swing.

@@ -38,6 +38,8 @@ fn quality_applies_wherever_it_stands() {
     assert_eq!(good(&frame, "Skarn.deg"), Some(2.0));
     assert!(is_invalid(&frame, "SM.from.mw"), "a word nobody knows objects to something");
     assert_eq!(reading(&frame, "SM.to.mw"), None, "no value, nothing to question");
+    let without = r#"{"time":"2031-03-14T05:00:00Z","values":{"Skarn.kv":400},"quality":null}"#;
+    assert_eq!(good(&crate::bed::frame(without), "Skarn.kv"), Some(400.0));
 }
 
 #[test]

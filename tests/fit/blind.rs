@@ -3,10 +3,10 @@
 use tautline::{
     feed::{End, Point, Quality, Quantity},
     fit::Standing,
-    grid::{FROM, TO},
+    grid::{FROM, Load, TO},
 };
 
-use crate::world::{World, configured, loaded_world, random_world};
+use crate::world::{World, loaded_world, random_world};
 
 #[test]
 fn nothing_measured_is_blind_and_everything_missing() {
@@ -70,7 +70,7 @@ fn a_questionable_reading_has_three_times_the_spread() {
 }
 
 fn with_configured_load(mut world: World, bus: usize, mw: f64, mvar: f64) -> World {
-    std::sync::Arc::make_mut(&mut world.corridor).buses[bus].load = configured(mw, mvar);
+    std::sync::Arc::make_mut(&mut world.corridor).buses[bus].load = Some(Load { mw, mvar });
     world
 }
 

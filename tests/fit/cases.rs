@@ -47,5 +47,7 @@ fn every_case_fits_exactly() {
     let cases = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/cases");
     let folders: Vec<_> = fs::read_dir(cases).unwrap().map(|entry| entry.unwrap().path()).collect();
     assert!(folders.len() >= 11);
-    folders.iter().for_each(|case| fits_exactly(case));
+    for case in &folders {
+        fits_exactly(case);
+    }
 }

@@ -6,11 +6,11 @@ use tautline::{
     config::MeasurementSettings,
     feed::{Channels, Quality, Reading, Snapshot},
     fit::{Fit, Fitter, Standing},
-    grid::{Bank, Circuit, Corridor, Line},
+    grid::{Bank, Circuit, Corridor, Line, Load},
     network::C64,
 };
 
-use crate::world::{circuit, config, configured, corridor};
+use crate::world::{circuit, config, corridor};
 
 fn value() -> impl Strategy<Value = f64> {
     prop_oneof![
@@ -65,7 +65,7 @@ fn any_corridor() -> impl Strategy<Value = Corridor> {
             let mut made = corridor(&names[..stations], circuits);
             for bus in &mut made.buses {
                 bus.nominal_kv = kv;
-                bus.load = if load { configured(100.0, -20.0) } else { None };
+                bus.load = load.then_some(Load { mw: 100.0, mvar: -20.0 });
             }
             made
         })

@@ -10,9 +10,7 @@ use tautline::{
     config::{Config, MeasurementSettings},
     feed::{Channels, End, Point, Quality, Quantity, Reading, Snapshot},
     fit::{Fit, Fitter},
-    grid::{
-        Bank, Bus, Circuit, ConfiguredSource, Corridor, FROM, Line, Load, Requirements, Side, SynchronismCheck, TO,
-    },
+    grid::{Bank, Bus, Circuit, ConfiguredSource, Corridor, FROM, Line, Requirements, Side, SynchronismCheck, TO},
     network::{Admittance, Branch, C64, Reduced, Topology},
 };
 
@@ -71,8 +69,8 @@ pub fn three_circuits() -> Corridor {
 }
 
 /// Three circuits of any length and kind at any transfer, or with stations in between.
-pub fn random_world(seed: u64, stations: usize) -> World {
-    let mut rng = ChaCha8Rng::seed_from_u64(seed);
+pub fn random_world(seed: usize, stations: usize) -> World {
+    let mut rng = ChaCha8Rng::seed_from_u64(seed as u64);
     let names: Vec<String> = (0..stations).map(|s| format!("Mid{s}")).collect();
     let chain: Vec<usize> = [FROM].into_iter().chain(2..2 + stations).chain([TO]).collect();
     let mut circuits = Vec::new();
@@ -241,9 +239,4 @@ pub fn config(corridor: &Corridor) -> Config {
     let mut config = Config::parse(include_str!("../cases/corridor-01/config.toml"), "config.toml").unwrap();
     config.grid.corridors = vec![corridor.clone()];
     config
-}
-
-/// A load as configured.
-pub fn configured(mw: f64, mvar: f64) -> Option<Load> {
-    Some(Load { mw, mvar })
 }

@@ -23,6 +23,11 @@ impl Shape {
         first.1 + (next.1 - first.1) * (time_s - first.0) / (next.0 - first.0)
     }
 
+    /// The same shape in another unit.
+    pub(super) fn map(self, unit: impl Fn(f64) -> f64) -> Self {
+        Self { points: self.points.into_iter().map(|(time_s, value)| (time_s, unit(value))).collect() }
+    }
+
     /// Its points.
     pub fn points(&self) -> &[(f64, f64)] {
         &self.points

@@ -1,10 +1,37 @@
 //! TOML to a [`Grid`] and settings; all errors at once, each with file, line and key.
+//!
+//! To add a key: one line where its table is read, with its limits and its default.
 
-use std::collections::BTreeMap;
+mod channels;
+mod check;
+mod corridor;
+mod document;
+mod error;
+mod file;
+mod findings;
+mod given;
+mod limits;
+mod names;
+mod section;
+mod wording;
 
-use chrono_tz::Tz;
+use std::{collections::BTreeMap, path::Path};
+
+use chrono_tz::{TZ_VARIANTS, Tz};
+
+pub use error::{ConfigError, ConfigErrors};
 
 use crate::grid::Grid;
+use check::GridNames;
+use findings::Findings;
+use limits::{NOT_NEGATIVE, POSITIVE};
+use section::Section;
+use wording::quoted;
+
+/// More would not be watched by one person.
+const MOST_CORRIDORS: usize = 1000;
+/// A day, the longest time any setting may reach back, s.
+const DAY_S: f64 = 86_400.0;
 
 /// Everything a configuration file says.
 #[derive(Debug, Clone, PartialEq)]
@@ -19,6 +46,8 @@ pub struct Config {
     pub feed: FeedSettings,
     /// Default channel name to the name it has in the feed.
     pub channel_names: BTreeMap<String, String>,
+    /// How the sources are learned.
+    pub learning: LearningSettings,
 }
 
 /// Measurement classes (`[measurement]`): common metering practice by default.
@@ -51,4 +80,121 @@ impl Default for FeedSettings {
     fn default() -> Self {
         Self { inputs: Vec::new(), max_age_s: 10.0 }
     }
+}
+
+/// How the sources are learned from steps (`[learning]`).
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct LearningSettings {
+    /// Whether they are learned at all (`enabled`).
+    pub enabled: bool,
+    /// Length of the means before and after a step, s (`window_s`).
+    pub window_s: f64,
+    /// Time between the two, in which swings settle, s (`gap_s`).
+    pub gap_s: f64,
+    /// A step is a change of more than this many times the background (`step_threshold`).
+    pub step_threshold: f64,
+    /// How far back the background is taken from, s (`background_s`).
+    pub background_s: f64,
+    /// How fast what was learned becomes doubtful, ohm per root of a day (`aging_ohm_per_sqrt_day`).
+    pub aging_ohm_per_sqrt_day: f64,
+}
+
+impl Default for LearningSettings {
+    fn default() -> Self {
+        Self {
+            enabled: true,
+            window_s: 10.0,
+            gap_s: 6.0,
+            step_threshold: 5.0,
+            background_s: 1800.0,
+            aging_ohm_per_sqrt_day: 1.0,
+        }
+    }
+}
+
+impl Config {
+    /// Reads a configuration file.
+    pub fn load(path: &Path) -> Result<Self, ConfigErrors> {
+        let name = path.display().to_string();
+        let text = file::read(path).map_err(|message| ConfigErrors::of_file(&name, message))?;
+        Self::parse(&text, &name)
+    }
+
+    /// Reads a configuration from its text; `file_name` is what the errors call it.
+    pub fn parse(text: &str, file_name: &str) -> Result<Self, ConfigErrors> {
+        let document = document::parse(text).map_err(|error| ConfigErrors::one(file_name, error))?;
+        let findings = Findings::new(document.raw());
+        let config = read(Section::root(&findings, document.as_table()));
+        findings.verdict(config, file_name)
+    }
+}
+
+fn read(mut root: Section<'_>) -> Config {
+    let mut general = root.required_section("grid", "give [grid] with frequency_hz");
+    let frequency_hz = general.required_number("frequency_hz", POSITIVE.up_to(1000.0));
+    let time_zone = time_zone(&mut general);
+
+    let mut names = GridNames::new(root.findings());
+    let corridors = root.sections("corridor", MOST_CORRIDORS);
+    let corridors: Vec<_> = corridors.into_iter().map(|section| corridor::read(section, &mut names)).collect();
+    if corridors.is_empty() {
+        root.wrong("corridor", "there is none; describe at least one under [[corridor]]");
+    }
+    let grid = Grid { frequency_hz, corridors };
+    Config {
+        time_zone,
+        measurement: measurement(root.section("measurement")),
+        feed: feed(root.section("feed")),
+        channel_names: channels::read(root.section("channels"), &grid, &names),
+        learning: learning(root.section("learning")),
+        grid,
+    }
+}
+
+fn time_zone(section: &mut Section<'_>) -> Tz {
+    let Some(name) = section.text("time_zone").filter(|name| !name.is_empty()) else { return Tz::UTC };
+    name.parse().unwrap_or_else(|_| {
+        let advice = section.findings().advice(&name, TZ_VARIANTS.iter().map(|zone| zone.name()));
+        section.wrong("time_zone", format!("no IANA time zone {}; {advice}", quoted(&name)));
+        Tz::UTC
+    })
+}
+
+fn measurement(mut section: Section<'_>) -> MeasurementSettings {
+    let default = MeasurementSettings::default();
+    let sigma = POSITIVE.up_to(100.0);
+    MeasurementSettings {
+        kv_sigma_pct: section.number("kv_sigma_pct", sigma).unwrap_or(default.kv_sigma_pct),
+        angle_sigma_deg: section.number("angle_sigma_deg", sigma).unwrap_or(default.angle_sigma_deg),
+        power_sigma_pct: section.number("power_sigma_pct", sigma).unwrap_or(default.power_sigma_pct),
+    }
+}
+
+fn feed(mut section: Section<'_>) -> FeedSettings {
+    let default = FeedSettings::default();
+    let inputs = section.texts("inputs");
+    FeedSettings {
+        inputs: inputs.map_or(default.inputs, |inputs| inputs.into_iter().map(|input| input.text).collect()),
+        max_age_s: section.number("max_age_s", POSITIVE.up_to(DAY_S)).unwrap_or(default.max_age_s),
+    }
+}
+
+fn learning(mut section: Section<'_>) -> LearningSettings {
+    let default = LearningSettings::default();
+    let time = POSITIVE.up_to(DAY_S);
+    let settings = LearningSettings {
+        enabled: section.flag("enabled").unwrap_or(default.enabled),
+        window_s: section.number("window_s", time).unwrap_or(default.window_s),
+        gap_s: section.number("gap_s", NOT_NEGATIVE.up_to(DAY_S)).unwrap_or(default.gap_s),
+        step_threshold: section.number("step_threshold", POSITIVE).unwrap_or(default.step_threshold),
+        background_s: section.number("background_s", time).unwrap_or(default.background_s),
+        aging_ohm_per_sqrt_day: section
+            .number("aging_ohm_per_sqrt_day", NOT_NEGATIVE)
+            .unwrap_or(default.aging_ohm_per_sqrt_day),
+    };
+    if settings.background_s < settings.window_s {
+        section
+            .wrong("background_s", format!("is below window_s ({}); the background takes longer", settings.window_s));
+    }
+    settings
 }

@@ -90,6 +90,17 @@ pub struct ConfiguredSource {
 }
 
 impl ConfiguredSource {
+    /// The source of a short-circuit power: X = U²/S_k (IEC 60909), pinned, nothing added for the swing.
+    pub fn from_short_circuit(nominal_kv: f64, short_circuit_mva: f64, x_over_r: f64) -> Self {
+        let x_ohm = nominal_kv * nominal_kv / short_circuit_mva;
+        Self { r_ohm: x_ohm / x_over_r, x_ohm, spread: 0.0, swing_x_ohm: 0.0 }
+    }
+
+    /// Short-circuit power, MVA: S_k = U²/X (IEC 60909); `None`: a stiff bus.
+    pub fn short_circuit_mva(&self, nominal_kv: f64) -> Option<f64> {
+        (self.x_ohm > 0.0).then(|| nominal_kv * nominal_kv / self.x_ohm)
+    }
+
     /// Standard deviation of the reactance, ohm.
     pub fn x_sd_ohm(&self) -> f64 {
         self.spread * self.x_ohm
@@ -142,6 +153,47 @@ pub enum Line {
         /// Shunt susceptance, µS.
         b_us: f64,
     },
+}
+
+/// Series and shunt parameters of a whole circuit.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct LineTotals {
+    /// Series resistance, ohm.
+    pub r_ohm: f64,
+    /// Series reactance, ohm, series capacitors not counted.
+    pub x_ohm: f64,
+    /// Shunt susceptance, µS.
+    pub b_us: f64,
+}
+
+impl Line {
+    /// The parameters times the length, without long-line correction.
+    pub fn totals(self) -> LineTotals {
+        match self {
+            Self::PerKm { length_km, r_ohm_per_km, x_ohm_per_km, b_us_per_km } => LineTotals {
+                r_ohm: r_ohm_per_km * length_km,
+                x_ohm: x_ohm_per_km * length_km,
+                b_us: b_us_per_km * length_km,
+            },
+            Self::Totals { r_ohm, x_ohm, b_us } => LineTotals { r_ohm, x_ohm, b_us },
+        }
+    }
+
+    /// Surge impedance of the line without losses, ohm: √(x/b) (Kundur 1994, section 6.1); `None` without susceptance.
+    pub fn surge_impedance_ohm(self) -> Option<f64> {
+        let LineTotals { x_ohm, b_us, .. } = self.totals();
+        (b_us > 0.0).then(|| (x_ohm / (b_us * 1e-6)).sqrt())
+    }
+
+    /// Surge impedance loading, MW: U²/√(x/b) (Kundur 1994, section 6.1); `None` without susceptance.
+    pub fn surge_impedance_loading_mw(self, nominal_kv: f64) -> Option<f64> {
+        self.surge_impedance_ohm().map(|ohm| nominal_kv * nominal_kv / ohm)
+    }
+}
+
+/// Apparent power of a current, MVA: √3·U·I.
+pub fn three_phase_mva(kv: f64, current_a: f64) -> f64 {
+    3.0_f64.sqrt() * kv * current_a * 1e-3
 }
 
 /// A series capacitor.
@@ -249,9 +301,14 @@ impl Default for SynchronismCheck {
 impl Corridor {
     /// The corridor's banks, circuit by circuit.
     pub fn banks(&self) -> impl Iterator<Item = (BankIndex, &Bank)> {
-        self.circuits
-            .iter()
-            .enumerate()
-            .flat_map(|(circuit, c)| c.banks.iter().enumerate().map(move |(bank, b)| (BankIndex { circuit, bank }, b)))
+        banks_of(&self.circuits)
     }
+}
+
+/// The banks of circuits, circuit by circuit.
+pub fn banks_of(circuits: &[Circuit]) -> impl Iterator<Item = (BankIndex, &Bank)> {
+    circuits
+        .iter()
+        .enumerate()
+        .flat_map(|(circuit, c)| c.banks.iter().enumerate().map(move |(bank, b)| (BankIndex { circuit, bank }, b)))
 }

@@ -1,0 +1,54 @@
+use toml_edit::{Document, Key, TomlError};
+
+use super::{
+    error::ConfigError,
+    wording::{printable, shown_key},
+};
+
+/// Follows the text of a duplicate key that was renamed so that the rest of the document can be read.
+const DUPLICATE_MARK: char = '\0';
+/// Duplicates looked at before giving up: each costs a parse.
+const MOST_DUPLICATES: usize = 20;
+
+/// Parses TOML into a document that has the lines of the text.
+///
+/// Duplicate keys do not stop it: they are renamed, and [`original_of_duplicate`] knows them.
+pub(super) fn parse(text: &str) -> Result<Document<String>, ConfigError> {
+    let mut text = text.to_owned();
+    let mut duplicates = 0;
+    loop {
+        let error = match Document::parse(text.clone()) {
+            Ok(document) => return Ok(document),
+            Err(error) => error,
+        };
+        let fresh = duplicate(&text, &error).filter(|key| original_of_duplicate(key.get()).is_none());
+        let (Some(key), Some(span), true) = (fresh, error.span(), duplicates < MOST_DUPLICATES) else {
+            return Err(syntax_error(&text, &error));
+        };
+        let unique = format!("{}{DUPLICATE_MARK}{duplicates}", key.get());
+        text.replace_range(span, &Key::new(unique).display_repr());
+        duplicates += 1;
+    }
+}
+
+/// The key a renamed duplicate had.
+pub(super) fn original_of_duplicate(key: &str) -> Option<&str> {
+    key.split_once(DUPLICATE_MARK).map(|(original, _)| original)
+}
+
+/// The duplicate key that an error is about.
+fn duplicate(text: &str, error: &TomlError) -> Option<Key> {
+    let span = error.span().filter(|_| error.message() == "duplicate key")?;
+    Key::parse(text.get(span)?).ok()?.pop()
+}
+
+fn syntax_error(text: &str, error: &TomlError) -> ConfigError {
+    let at = error.span().map_or(text.len(), |span| span.start);
+    let key = duplicate(text, error);
+    let key = key.as_ref().map(|key| original_of_duplicate(key.get()).unwrap_or(key.get()));
+    ConfigError {
+        line: Some(1 + text.bytes().take(at).filter(|byte| *byte == b'\n').count()),
+        key: key.map(shown_key).unwrap_or_default(),
+        message: format!("not valid TOML: {}", printable(error.message())),
+    }
+}

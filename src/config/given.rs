@@ -1,0 +1,90 @@
+use toml_edit::Value;
+
+use super::{
+    findings::{Findings, Place},
+    limits::Limits,
+    wording::{is_unprintable, quoted},
+};
+
+/// A text and where it stands.
+pub(super) struct Placed {
+    pub text: String,
+    pub place: Place,
+}
+
+/// Something that the file gives, and where.
+pub(super) struct Given<'a> {
+    pub findings: &'a Findings,
+    pub place: Place,
+    /// `None`: a table.
+    pub value: Option<&'a Value>,
+    /// Its type in the words of TOML.
+    pub kind: &'static str,
+}
+
+impl<'a> Given<'a> {
+    pub fn is_not(&self, wanted: &str) {
+        let article = if self.kind.starts_with(['a', 'i']) { "an" } else { "a" };
+        self.wrong(format!("must be {wanted}, not {article} {}", self.kind));
+    }
+
+    fn wrong(&self, message: String) {
+        self.findings.report(&self.place, message);
+    }
+
+    /// NaN where it is no number within the limits.
+    pub fn number(&self, limits: Limits) -> f64 {
+        let number = match self.value {
+            Some(Value::Float(float)) => *float.value(),
+            Some(Value::Integer(integer)) => *integer.value() as f64,
+            _ => {
+                self.is_not("a number");
+                return f64::NAN;
+            }
+        };
+        if limits.hold(number) {
+            return number;
+        }
+        self.wrong(format!("must be {limits}, not {number:?}"));
+        f64::NAN
+    }
+
+    pub fn flag(&self) -> Option<bool> {
+        let flag = self.value.and_then(Value::as_bool);
+        if flag.is_none() {
+            self.is_not("true or false");
+        }
+        flag
+    }
+
+    /// Empty where it is no text, or one that cannot be printed.
+    pub fn text(&self) -> String {
+        match self.value.and_then(Value::as_str) {
+            None => self.is_not("a string"),
+            Some(text) if text.trim().is_empty() => self.wrong("is empty; write something in it".to_owned()),
+            Some(text) if text.contains(is_unprintable) => {
+                self.wrong(format!("{} holds control or invisible characters; take them out", quoted(text)));
+            }
+            Some(text) => return text.to_owned(),
+        }
+        String::new()
+    }
+
+    pub fn placed(&self) -> Placed {
+        Placed { text: self.text(), place: self.place.clone() }
+    }
+
+    /// The values of an array, each with its place.
+    pub fn array(&self, wanted: &str) -> Option<Vec<Self>> {
+        let Some(array) = self.value.and_then(Value::as_array) else {
+            self.is_not(wanted);
+            return None;
+        };
+        let element = |(index, value): (usize, &'a Value)| {
+            let line = self.findings.line(value.span()).unwrap_or(self.place.line);
+            let place = Place { line, key: format!("{}[{index}]", self.place.key) };
+            Self { findings: self.findings, place, value: Some(value), kind: value.type_name() }
+        };
+        Some(array.iter().enumerate().map(element).collect())
+    }
+}

@@ -1,0 +1,204 @@
+use std::ops::Range;
+
+use toml_edit::{Item, TableLike, Value};
+
+use super::{
+    document::original_of_duplicate,
+    findings::{Findings, Place},
+    given::{Given, Placed},
+    limits::Limits,
+    wording::shown_key,
+};
+
+/// A table of the configuration, read key by key.
+///
+/// A value that is not what it must be is reported, and NaN or an empty text stands in for it, so that one pass finds
+/// everything. When the table is dropped, keys that were never asked for are reported as unknown.
+pub(super) struct Section<'a> {
+    findings: &'a Findings,
+    place: Place,
+    /// `None`: not in the file. Nothing in it is missed then.
+    items: Option<&'a dyn TableLike>,
+    asked: Vec<&'a str>,
+}
+
+impl<'a> Section<'a> {
+    pub fn root(findings: &'a Findings, items: &'a dyn TableLike) -> Self {
+        Self::new(findings, Place { line: 1, key: String::new() }, Some(items))
+    }
+
+    fn new(findings: &'a Findings, place: Place, items: Option<&'a dyn TableLike>) -> Self {
+        Self { findings, place, items, asked: Vec::new() }
+    }
+
+    pub fn findings(&self) -> &'a Findings {
+        self.findings
+    }
+
+    pub fn is_present(&self) -> bool {
+        self.items.is_some()
+    }
+
+    /// Where a key stands, or where it is missed.
+    pub fn place(&self, key: &str) -> Place {
+        let found = self.items.and_then(|items| items.get_key_value(key));
+        let line = found.and_then(|(key, item)| self.findings.line(key.span().or_else(|| item.span())));
+        let key = shown_key(original_of_duplicate(key).unwrap_or(key));
+        Place {
+            line: line.unwrap_or(self.place.line),
+            key: if self.place.key.is_empty() { key } else { format!("{}.{key}", self.place.key) },
+        }
+    }
+
+    /// Reports something wrong with a key.
+    pub fn wrong(&self, key: &str, message: impl Into<String>) {
+        self.findings.report(&self.place(key), message);
+    }
+
+    /// Reports that a key is missing.
+    pub fn missed(&self, key: &str, advice: &str) {
+        if self.is_present() {
+            self.wrong(key, format!("is missing; {advice}"));
+        }
+    }
+
+    fn take(&mut self, key: &'a str) -> Option<Given<'a>> {
+        self.asked.push(key);
+        let item = self.items?.get(key)?;
+        Some(Given { findings: self.findings, place: self.place(key), value: item.as_value(), kind: item.type_name() })
+    }
+
+    /// A number; NaN where something else stands there.
+    pub fn number(&mut self, key: &'a str, limits: Limits) -> Option<f64> {
+        Some(self.take(key)?.number(limits))
+    }
+
+    /// A number that must be there.
+    pub fn required_number(&mut self, key: &'a str, limits: Limits) -> f64 {
+        let number = self.number(key, limits);
+        self.needed(key, number, &format!("give a number that is {limits}"))
+    }
+
+    /// A number that was asked for and must be there.
+    pub fn needed(&self, key: &str, number: Option<f64>, advice: &str) -> f64 {
+        number.unwrap_or_else(|| {
+            self.missed(key, advice);
+            f64::NAN
+        })
+    }
+
+    /// As many numbers as there are limits, in an array.
+    pub fn numbers<const N: usize>(&mut self, key: &'a str, limits: [Limits; N]) -> Option<[f64; N]> {
+        let given = self.take(key)?;
+        let values = given.array("an array of numbers");
+        if values.as_ref().is_some_and(|values| values.len() != N) {
+            self.wrong(key, format!("must be an array of {N} numbers"));
+        }
+        let values = values.filter(|values| values.len() == N);
+        Some(values.map_or([f64::NAN; N], |values| std::array::from_fn(|n| values[n].number(limits[n]))))
+    }
+
+    /// True or false.
+    pub fn flag(&mut self, key: &'a str) -> Option<bool> {
+        self.take(key)?.flag()
+    }
+
+    /// A text; empty where something else stands there.
+    pub fn text(&mut self, key: &'a str) -> Option<String> {
+        Some(self.take(key)?.text())
+    }
+
+    /// A text that must be there.
+    pub fn required_text(&mut self, key: &'a str, advice: &str) -> String {
+        self.text(key).unwrap_or_else(|| {
+            self.missed(key, advice);
+            String::new()
+        })
+    }
+
+    /// An array of texts; empty ones where something else stands there.
+    pub fn texts(&mut self, key: &'a str) -> Option<Vec<Placed>> {
+        let given = self.take(key)?;
+        let values = given.array("an array of strings").unwrap_or_else(|| vec![given]);
+        Some(values.iter().map(Given::placed).collect())
+    }
+
+    /// Every text in this table and in the tables within it, by dotted path from here; no key is unknown.
+    pub fn texts_by_path(&mut self) -> Vec<(String, Placed)> {
+        let mut found = Vec::new();
+        let items = self.items.into_iter().flat_map(TableLike::iter);
+        for (key, item) in items.filter(|(key, _)| original_of_duplicate(key).is_none()) {
+            if item.is_table_like() {
+                let within = self.section(key).texts_by_path().into_iter();
+                found.extend(within.map(|(path, placed)| (format!("{key}.{path}"), placed)));
+            } else if let Some(given) = self.take(key) {
+                found.push((key.to_owned(), given.placed()));
+            }
+        }
+        found
+    }
+
+    /// A table within this one; an absent one has nothing in it.
+    pub fn section(&mut self, key: &'a str) -> Self {
+        let Some(given) = self.take(key) else { return Self::new(self.findings, self.place(key), None) };
+        let item = self.items.and_then(|items| items.get(key));
+        let items = item.and_then(Item::as_table_like);
+        if items.is_none() {
+            given.is_not("a table");
+        }
+        let line = self.findings.line(item.and_then(Item::span)).unwrap_or(given.place.line);
+        Self::new(self.findings, Place { line, ..given.place }, items)
+    }
+
+    /// A table that must be there.
+    pub fn required_section(&mut self, key: &'a str, advice: &str) -> Self {
+        if self.items.is_some_and(|items| !items.contains_key(key)) {
+            self.missed(key, advice);
+        }
+        self.section(key)
+    }
+
+    /// An array of tables, of which at most so many are read.
+    pub fn sections(&mut self, key: &'a str, most: usize) -> Vec<Self> {
+        let Some(given) = self.take(key) else { return Vec::new() };
+        let mut tables: Vec<(Option<Range<usize>>, Option<&'a dyn TableLike>)> = match self
+            .items
+            .and_then(|items| items.get(key))
+        {
+            Some(Item::ArrayOfTables(tables)) => tables.iter().map(|table| (table.span(), Some(table as _))).collect(),
+            Some(Item::Value(Value::Array(array))) => {
+                let table = |value: &'a Value| value.as_inline_table().map(|table| table as _);
+                array.iter().map(|value| (value.span(), table(value))).collect()
+            }
+            _ => {
+                given.is_not("an array of tables, with double brackets");
+                return Vec::new();
+            }
+        };
+        if tables.len() > most {
+            self.wrong(key, format!("has {} entries; at most {most} are possible", tables.len()));
+            tables.truncate(most);
+        }
+        let section = |(index, (span, items)): (usize, (_, Option<&'a dyn TableLike>))| {
+            let line = self.findings.line(span).unwrap_or(given.place.line);
+            let place = Place { line, key: format!("{}[{index}]", given.place.key) };
+            if items.is_none() {
+                self.findings.report(&place, "must be a table");
+            }
+            Self::new(self.findings, place, items)
+        };
+        tables.into_iter().enumerate().map(section).collect()
+    }
+}
+
+impl Drop for Section<'_> {
+    fn drop(&mut self) {
+        for (key, _) in self.items.into_iter().flat_map(TableLike::iter) {
+            if original_of_duplicate(key).is_some() {
+                self.wrong(key, "is given twice; keep one");
+            } else if !self.asked.contains(&key) {
+                self.wrong(key, format!("unknown key; {}", self.findings.advice(key, self.asked.iter().copied())));
+            }
+        }
+    }
+}

@@ -13,7 +13,7 @@ const MOST_DUPLICATES: usize = 20;
 /// Parses TOML into a document that has the lines of the text.
 ///
 /// Duplicate keys do not stop it: they are renamed, and [`original_of_duplicate`] knows them.
-pub(super) fn parse(text: &str) -> Result<Document<String>, ConfigError> {
+pub(crate) fn parse(text: &str) -> Result<Document<String>, ConfigError> {
     let mut text = text.to_owned();
     let mut duplicates = 0;
     loop {
@@ -32,7 +32,7 @@ pub(super) fn parse(text: &str) -> Result<Document<String>, ConfigError> {
 }
 
 /// The key a renamed duplicate had.
-pub(super) fn original_of_duplicate(key: &str) -> Option<&str> {
+pub(crate) fn original_of_duplicate(key: &str) -> Option<&str> {
     key.split_once(DUPLICATE_MARK).map(|(original, _)| original)
 }
 

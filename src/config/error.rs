@@ -27,11 +27,11 @@ pub struct ConfigErrors {
 }
 
 impl ConfigErrors {
-    pub(super) fn one(file: &str, error: ConfigError) -> Self {
+    pub(crate) fn one(file: &str, error: ConfigError) -> Self {
         Self { file: printable(file), errors: vec![error], unlisted: 0 }
     }
 
-    pub(super) fn of_file(file: &str, message: String) -> Self {
+    pub(crate) fn of_file(file: &str, message: String) -> Self {
         Self::one(file, ConfigError { line: None, key: String::new(), message })
     }
 }

@@ -4,7 +4,7 @@ use std::{fs::File, io::Read, path::Path};
 const LARGEST_FILE: u64 = 4 << 20;
 
 /// The text of a file, or what is wrong with it.
-pub(super) fn read(path: &Path) -> Result<String, String> {
+pub(crate) fn read(path: &Path) -> Result<String, String> {
     if path.is_dir() {
         return Err("is a directory; name the configuration file in it".to_owned());
     }

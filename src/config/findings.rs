@@ -13,13 +13,13 @@ const MOST_ERRORS: usize = 200;
 
 /// Where something stands in the file.
 #[derive(Debug, Clone, PartialEq, Eq)]
-pub(super) struct Place {
+pub(crate) struct Place {
     pub line: usize,
     pub key: String,
 }
 
 /// What is wrong with a file so far.
-pub(super) struct Findings {
+pub(crate) struct Findings {
     line_starts: Vec<usize>,
     errors: RefCell<Vec<ConfigError>>,
     unlisted: Cell<usize>,

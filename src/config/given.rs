@@ -7,13 +7,13 @@ use super::{
 };
 
 /// A text and where it stands.
-pub(super) struct Placed {
+pub(crate) struct Placed {
     pub text: String,
     pub place: Place,
 }
 
 /// Something that the file gives, and where.
-pub(super) struct Given<'a> {
+pub(crate) struct Given<'a> {
     pub findings: &'a Findings,
     pub place: Place,
     /// `None`: a table.
@@ -28,7 +28,7 @@ impl<'a> Given<'a> {
         self.wrong(format!("must be {wanted}, not {article} {}", self.kind));
     }
 
-    fn wrong(&self, message: String) {
+    pub fn wrong(&self, message: impl Into<String>) {
         self.findings.report(&self.place, message);
     }
 

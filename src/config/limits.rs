@@ -5,7 +5,7 @@ const LARGEST: f64 = 1e12;
 
 /// What a number may be.
 #[derive(Debug, Clone, Copy)]
-pub(super) struct Limits {
+pub(crate) struct Limits {
     low: f64,
     high: f64,
     with_low: bool,
@@ -13,13 +13,13 @@ pub(super) struct Limits {
 }
 
 /// Any ordinary number.
-pub(super) const ANY: Limits = Limits::at_least(-LARGEST);
+pub(crate) const ANY: Limits = Limits::at_least(-LARGEST);
 /// More than nothing.
-pub(super) const POSITIVE: Limits = Limits::above(0.0);
+pub(crate) const POSITIVE: Limits = Limits::above(0.0);
 /// Nothing or more.
-pub(super) const NOT_NEGATIVE: Limits = Limits::at_least(0.0);
+pub(crate) const NOT_NEGATIVE: Limits = Limits::at_least(0.0);
 /// A place along a circuit.
-pub(super) const FRACTION: Limits = Limits::at_least(0.0).up_to(1.0);
+pub(crate) const FRACTION: Limits = Limits::at_least(0.0).up_to(1.0);
 
 impl Limits {
     pub const fn above(low: f64) -> Self {

@@ -5,15 +5,15 @@
 mod channels;
 mod check;
 mod corridor;
-mod document;
+pub(crate) mod document;
 mod error;
-mod file;
-mod findings;
-mod given;
-mod limits;
+pub(crate) mod file;
+pub(crate) mod findings;
+pub(crate) mod given;
+pub(crate) mod limits;
 mod names;
-mod section;
-mod wording;
+pub(crate) mod section;
+pub(crate) mod wording;
 
 use std::{collections::BTreeMap, path::Path};
 

@@ -14,7 +14,7 @@ use super::{
 ///
 /// A value that is not what it must be is reported, and NaN or an empty text stands in for it, so that one pass finds
 /// everything. When the table is dropped, keys that were never asked for are reported as unknown.
-pub(super) struct Section<'a> {
+pub(crate) struct Section<'a> {
     findings: &'a Findings,
     place: Place,
     /// `None`: not in the file. Nothing in it is missed then.
@@ -62,10 +62,16 @@ impl<'a> Section<'a> {
         }
     }
 
-    fn take(&mut self, key: &'a str) -> Option<Given<'a>> {
+    /// Whatever a key gives.
+    pub fn take(&mut self, key: &'a str) -> Option<Given<'a>> {
         self.asked.push(key);
         let item = self.items?.get(key)?;
         Some(Given { findings: self.findings, place: self.place(key), value: item.as_value(), kind: item.type_name() })
+    }
+
+    /// Lets the keys not asked for pass: the section cannot be read any further.
+    pub fn abandon(&mut self) {
+        self.items = None;
     }
 
     /// A number; NaN where something else stands there.

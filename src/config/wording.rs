@@ -8,18 +8,18 @@ const LONGEST_LIST: usize = 12;
 const NEAR: f64 = 0.8;
 
 /// Control characters, and those that are invisible or turn the direction of writing.
-pub(super) fn is_unprintable(c: char) -> bool {
+pub(crate) fn is_unprintable(c: char) -> bool {
     c.is_control()
         || matches!(c, '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}' | '\u{2060}'..='\u{206f}' | '\u{feff}')
 }
 
 /// The text without what cannot be printed.
-pub(super) fn printable(text: &str) -> String {
+pub(crate) fn printable(text: &str) -> String {
     text.chars().filter(|c| !is_unprintable(*c)).collect()
 }
 
 /// In quotation marks, what cannot be printed as escapes, and cut where it is long.
-pub(super) fn quoted(text: &str) -> String {
+pub(crate) fn quoted(text: &str) -> String {
     match text.char_indices().nth(LONGEST_QUOTE) {
         Some((end, _)) => format!("{:?}...", &text[..end]),
         None => format!("{text:?}"),
@@ -27,13 +27,13 @@ pub(super) fn quoted(text: &str) -> String {
 }
 
 /// A key as it would be written in TOML.
-pub(super) fn shown_key(key: &str) -> String {
+pub(crate) fn shown_key(key: &str) -> String {
     let is_bare = !key.is_empty() && key.bytes().all(|b| b.is_ascii_alphanumeric() || b"_-".contains(&b));
     if is_bare && key.len() <= LONGEST_QUOTE { key.to_owned() } else { quoted(key) }
 }
 
 /// What could have been meant instead: the nearest candidate, or all of them where they are few.
-pub(super) fn advice<'a>(given: &str, candidates: impl IntoIterator<Item = &'a str>) -> String {
+pub(crate) fn advice<'a>(given: &str, candidates: impl IntoIterator<Item = &'a str>) -> String {
     let given = &given[..given.char_indices().nth(LONGEST_QUOTE).map_or(given.len(), |(end, _)| end)];
     let candidates: Vec<_> = candidates.into_iter().collect();
     let similarity = |candidate: &&str| strsim::jaro_winkler(&given.to_lowercase(), &candidate.to_lowercase());

@@ -14,6 +14,7 @@ mod output;
 mod plan;
 mod plant;
 mod play;
+mod reader;
 mod scenario;
 mod shape;
 mod swing;

@@ -23,7 +23,6 @@ pub struct Drill {
 
 impl Drill {
     /// From the start, with the channels of the configuration that the scenario was read for.
-    #[must_use]
     pub fn new(config: &Config, channels: &Channels, scenario: &Scenario) -> Self {
         let feed = |truth: &CorridorTruth| {
             let name = Arc::clone(&config.grid.corridors[truth.corridor].name);
@@ -86,7 +85,6 @@ pub struct FrameText {
 
 impl FrameText {
     /// With the names that the channels have in the feed.
-    #[must_use]
     pub fn new(config: &Config, channels: &Channels) -> Self {
         let key = |slot| {
             let name = &**channels.name(slot);

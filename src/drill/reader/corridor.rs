@@ -2,10 +2,7 @@
 
 use std::collections::HashMap;
 
-use super::{
-    Config, Findings, Limits, POSITIVE, Section,
-    time::shape,
-};
+use super::{Config, Findings, Limits, POSITIVE, Section, time::shape};
 use crate::{
     config::{
         limits::{ANY, NOT_NEGATIVE},
@@ -107,7 +104,7 @@ impl<'a> Cast<'a> {
                 let advice = self.findings.advice(&name, corridors.iter().map(|corridor| &*corridor.name));
                 section.wrong("name", format!("{} is no corridor of the configuration; {advice}", quoted(&name)));
             }
-            section.ignore();
+            section.abandon();
             return;
         };
         let truth = read(&mut section, index, &corridors[index], self.duration_s);
@@ -144,7 +141,7 @@ impl<'a> Cast<'a> {
     }
 }
 
-fn read<'a>(section: &mut Section<'a>, index: usize, corridor: &Corridor, duration_s: f64) -> CorridorTruth {
+fn read(section: &mut Section<'_>, index: usize, corridor: &Corridor, duration_s: f64) -> CorridorTruth {
     let mut loads: Vec<Option<LoadTruth>> = corridor.buses.iter().map(|bus| bus.load.map(level)).collect();
     let sides = [("from", 0), ("to", 1)].map(|(key, side)| {
         let mut section = section.section(key);
@@ -156,11 +153,11 @@ fn read<'a>(section: &mut Section<'a>, index: usize, corridor: &Corridor, durati
         let stations = || corridor.buses.iter().skip(2);
         match stations().position(|bus| *bus.name == *name) {
             Some(place) => read_load(&mut station, &mut loads[place + 2], duration_s),
-            None if name.is_empty() => station.ignore(),
+            None if name.is_empty() => station.abandon(),
             None => {
                 let advice = station.findings().advice(&name, stations().map(|bus| &*bus.name));
                 station.wrong("bus", format!("{} is no station of the corridor; {advice}", quoted(&name)));
-                station.ignore();
+                station.abandon();
             }
         }
     }
@@ -180,7 +177,7 @@ fn read<'a>(section: &mut Section<'a>, index: usize, corridor: &Corridor, durati
     }
 }
 
-fn dispatch<'a>(section: &mut Section<'a>, duration_s: f64) -> Dispatch {
+fn dispatch(section: &mut Section<'_>, duration_s: f64) -> Dispatch {
     let transfer = shape(section, "transfer_mw", ANY, duration_s);
     let angle = shape(section, "angle_deg", Limits::at_least(-90.0).up_to(90.0), duration_s);
     match (transfer, angle) {
@@ -214,7 +211,7 @@ fn level(nominal: Load) -> LoadTruth {
     LoadTruth { nominal, shape: Shape::level(1.0) }
 }
 
-fn read_load<'a>(section: &mut Section<'a>, load: &mut Option<LoadTruth>, duration_s: f64) {
+fn read_load(section: &mut Section<'_>, load: &mut Option<LoadTruth>, duration_s: f64) {
     let mut section = section.section("load");
     if section.is_present() {
         let mut truth = load.take().unwrap_or_else(|| level(Load { mw: 0.0, mvar: 0.0 }));
@@ -225,7 +222,7 @@ fn read_load<'a>(section: &mut Section<'a>, load: &mut Option<LoadTruth>, durati
     }
 }
 
-fn read_side<'a>(section: &mut Section<'a>, corridor: &Corridor, side: usize, duration_s: f64) -> SideTruth {
+fn read_side(section: &mut Section<'_>, corridor: &Corridor, side: usize, duration_s: f64) -> SideTruth {
     let configured = corridor.sides[side];
     let nominal_kv = corridor.buses[side].nominal_kv;
     let around_nominal = Limits::at_least(0.5 * nominal_kv).up_to(2.0 * nominal_kv);

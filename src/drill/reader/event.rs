@@ -8,7 +8,6 @@ use super::{
 use crate::{
     config::limits::{ANY, FRACTION, NOT_NEGATIVE},
     drill::{Action, Change, Event, FalseMeter, Gap},
-    feed::Point,
     grid::{Fault, FaultKind},
 };
 
@@ -23,13 +22,13 @@ pub(super) fn event<'a>(mut section: Section<'a>, cast: &mut Cast<'a>) {
     let mut given: Vec<_> = ACTIONS.into_iter().filter_map(|key| Some((key, section.text(key)?))).collect();
     let (Some((key, name)), true) = (given.pop(), given.is_empty()) else {
         section.wrong("at", format!("needs exactly one of {}", ACTIONS.join(", ")));
-        section.ignore();
+        section.abandon();
         return;
     };
     if let Some((place, action)) = action(&mut section, cast, key, &name) {
         cast.truth(place).events.push(Event { at_s, action });
     } else {
-        section.ignore();
+        section.abandon();
     }
 }
 

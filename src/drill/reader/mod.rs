@@ -5,7 +5,7 @@ mod event;
 mod metering;
 mod time;
 
-use std::{fs, path::Path};
+use std::path::Path;
 
 use chrono::{DateTime, Utc};
 use toml_edit::Value;
@@ -13,8 +13,7 @@ use toml_edit::Value;
 use self::corridor::Cast;
 use super::{Metering, Scenario};
 use crate::config::{
-    Config, ConfigError, ConfigErrors,
-    document,
+    Config, ConfigErrors, document, file,
     findings::Findings,
     limits::{Limits, POSITIVE},
     section::Section,
@@ -31,16 +30,14 @@ impl Scenario {
     /// Reads a scenario from a file.
     pub fn load(path: &Path, config: &Config) -> Result<Self, ConfigErrors> {
         let name = path.display().to_string();
-        match fs::read_to_string(path) {
-            Ok(text) => Self::parse(&text, &name, config),
-            Err(error) => Err(ConfigErrors::of_file(&name, format!("cannot be read: {error}"))),
-        }
+        let text = file::read(path).map_err(|message| ConfigErrors::of_file(&name, message))?;
+        Self::parse(&text, &name, config)
     }
 
     /// Reads a scenario from a text; `name` is the file's in messages.
     pub fn parse(text: &str, name: &str, config: &Config) -> Result<Self, ConfigErrors> {
-        let document = document::parse(text).map_err(|error| ConfigErrors::of(name, error))?;
-        let findings = Findings::new(text);
+        let document = document::parse(text).map_err(|error| ConfigErrors::one(name, error))?;
+        let findings = Findings::new(document.raw());
         let scenario = read(Section::root(&findings, document.as_table()), config);
         findings.verdict(scenario, name)
     }

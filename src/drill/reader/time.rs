@@ -17,7 +17,8 @@ fn seconds(given: &Given<'_>, duration_s: f64) -> f64 {
         Some(Value::Float(seconds)) => *seconds.value(),
         Some(Value::Datetime(time)) => match (time.value().date, time.value().time) {
             (None, Some(time)) => {
-                let whole = u32::from(time.hour) * 3600 + u32::from(time.minute) * 60
+                let whole = u32::from(time.hour) * 3600
+                    + u32::from(time.minute) * 60
                     + u32::from(time.second.unwrap_or_default());
                 f64::from(whole) + f64::from(time.nanosecond.unwrap_or_default()) / 1e9
             }

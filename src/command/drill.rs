@@ -1,8 +1,9 @@
 //! `tautline drill`.
 
 use std::{
+    fs,
     io::{self, ErrorKind},
-    path::PathBuf,
+    path::{Path, PathBuf},
     thread,
     time::{Duration, Instant},
 };
@@ -13,7 +14,7 @@ use clap::Args;
 use super::Failure;
 use crate::{
     config::Config,
-    drill::{Drill, FrameText, Output, Scenario},
+    drill::{Drill, FrameText, Invented, Invention, Output, Scenario},
     feed::Channels,
 };
 
@@ -21,11 +22,11 @@ use crate::{
 #[derive(Debug, Args)]
 pub struct Options {
     /// The corridors (TOML).
-    #[arg(long, value_name = "FILE")]
-    pub config: PathBuf,
+    #[arg(long, value_name = "FILE", required_unless_present = "invent")]
+    pub config: Option<PathBuf>,
     /// What is true of them, and what happens (TOML).
-    #[arg(long, value_name = "FILE")]
-    pub scenario: PathBuf,
+    #[arg(long, value_name = "FILE", required_unless_present = "invent")]
+    pub scenario: Option<PathBuf>,
     /// Where the frames go: a file (compressed where it ends in .gz or .zst), `tcp://host:port`,
     /// `tcp-listen://host:port` (starts with its first reader; loopback without a host), or - for standard output.
     #[arg(long, value_name = "TO", default_value = "-")]
@@ -39,12 +40,25 @@ pub struct Options {
     /// At the pace of the frames' own times, which start now.
     #[arg(long)]
     pub real_time: bool,
+    /// Instead of playing: makes up a configuration and a scenario, a frame a second for a day, and writes both
+    /// into this folder, as config.toml and scenario.toml.
+    #[arg(long, value_name = "FOLDER", conflicts_with_all = ["config", "scenario", "truth", "real_time"])]
+    pub invent: Option<PathBuf>,
+    /// How many corridors to make up.
+    #[arg(long, value_name = "NUMBER", default_value_t = 1, requires = "invent", value_parser = clap::value_parser!(u16).range(1..=1000))]
+    pub corridors: u16,
 }
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
-    let config = Config::load(&options.config)?;
-    let mut scenario = Scenario::load(&options.scenario, &config)?;
+    if let Some(folder) = &options.invent {
+        return invent(options, folder);
+    }
+    let (Some(config), Some(scenario)) = (&options.config, &options.scenario) else {
+        return Err("give --config and --scenario".into());
+    };
+    let config = Config::load(config)?;
+    let mut scenario = Scenario::load(scenario, &config)?;
     scenario.seed = options.seed.unwrap_or(scenario.seed);
     let mut truth = options.truth.as_deref().map(Output::open).transpose()?;
     let mut output = Output::open(&options.output)?;
@@ -58,6 +72,21 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     }
     output.finish()?;
     truth.map_or(Ok(()), Output::finish)?;
+    Ok(())
+}
+
+fn invent(options: &Options, folder: &Path) -> Result<(), Failure> {
+    let invention = Invention {
+        seed: options.seed.unwrap_or(1),
+        corridors: options.corridors.into(),
+        interval_s: 1.0,
+        ..Invention::default()
+    };
+    let Invented { config, scenario } = invention.invent();
+    for (name, text) in [("config.toml", config), ("scenario.toml", scenario)] {
+        let path = folder.join(name);
+        fs::write(&path, text).map_err(|error| format!("cannot write {}: {error}", path.display()))?;
+    }
     Ok(())
 }
 

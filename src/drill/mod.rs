@@ -9,6 +9,7 @@ mod agenda;
 mod chance;
 mod corridor_feed;
 mod happen;
+mod invent;
 mod meter;
 mod output;
 mod plan;
@@ -21,6 +22,7 @@ mod swing;
 mod truth;
 mod world;
 
+pub use invent::{Invented, Invention};
 pub use output::{Output, OutputError};
 pub use play::{Drill, FrameText};
 pub use scenario::{

@@ -28,7 +28,7 @@ fn seconds(given: &Given<'_>, duration_s: f64) -> f64 {
     };
     if seconds.is_nan() {
         given.is_not(A_TIME);
-    } else if !(0.0..=duration_s).contains(&seconds) {
+    } else if seconds < 0.0 || seconds > duration_s {
         given.wrong("is outside of the scenario; give a time between its start and its end");
     }
     seconds

@@ -15,7 +15,8 @@ pub(super) fn read(mut section: Section<'_>, grid: &Grid, names: &GridNames<'_>)
     let mut mapped = BTreeMap::new();
     for (channel, in_feed) in section.texts_by_path() {
         if !known.contains_key(&channel) {
-            let advice = findings.advice(&channel, known.keys().map(|name| &**name));
+            let names = known.keys().map(|name| &**name).filter(|name| !name.starts_with('.'));
+            let advice = findings.advice(&channel, names);
             findings.report(&in_feed.place, format!("no channel {}; {advice}", quoted(&channel)));
         } else if mapped.contains_key(&channel) {
             findings.report(&in_feed.place, "is given twice; keep one");

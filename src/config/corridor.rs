@@ -54,11 +54,8 @@ pub(super) fn read<'a>(mut section: Section<'a>, names: &mut GridNames<'a>) -> C
         buses.read(&mut station, names);
     }
 
-    let circuits = section.sections("circuit", MOST_CIRCUITS);
+    let circuits = section.required_sections("circuit", MOST_CIRCUITS);
     let placed: Vec<_> = circuits.into_iter().map(|section| circuit(section, &buses, names)).collect();
-    if placed.is_empty() && section.is_present() {
-        section.wrong("circuit", "there is none; describe at least one under [[corridor.circuit]]");
-    }
     let joined = placed.iter().all(|(_, joined)| *joined);
     let circuits: Vec<Circuit> = placed.into_iter().map(|(circuit, _)| circuit).collect();
     if buses.distinct && joined && !circuits.is_empty() {

@@ -44,11 +44,15 @@ fn duplicate(text: &str, error: &TomlError) -> Option<Key> {
 
 fn syntax_error(text: &str, error: &TomlError) -> ConfigError {
     let at = error.span().map_or(text.len(), |span| span.start);
-    let key = duplicate(text, error);
-    let key = key.as_ref().map(|key| original_of_duplicate(key.get()).unwrap_or(key.get()));
+    let before = text.get(..at).unwrap_or(text);
+    let line = before.matches('\n').count();
+    // The key that the line gives, as far as one can be made out.
+    let key = text.lines().nth(line).and_then(|line| Key::parse(line.split_once('=')?.0).ok());
+    let key = duplicate(text, error).map_or(key, |key| Some(vec![key]));
+    let shown = |key: &Key| shown_key(original_of_duplicate(key.get()).unwrap_or(key.get()));
     ConfigError {
-        line: Some(1 + text.bytes().take(at).filter(|byte| *byte == b'\n').count()),
-        key: key.map(shown_key).unwrap_or_default(),
+        line: Some(line + 1),
+        key: key.unwrap_or_default().iter().map(shown).collect::<Vec<_>>().join("."),
         message: format!("not valid TOML: {}", printable(error.message())),
     }
 }

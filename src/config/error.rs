@@ -30,10 +30,6 @@ impl ConfigErrors {
     pub(crate) fn one(file: &str, error: ConfigError) -> Self {
         Self { file: printable(file), errors: vec![error], unlisted: 0 }
     }
-
-    pub(crate) fn of_file(file: &str, message: String) -> Self {
-        Self::one(file, ConfigError { line: None, key: String::new(), message })
-    }
 }
 
 impl fmt::Display for ConfigErrors {

@@ -3,7 +3,7 @@ use toml_edit::Value;
 use super::{
     findings::{Findings, Place},
     limits::Limits,
-    wording::{is_unprintable, quoted},
+    wording::{is_unprintable, quoted, shown_number},
 };
 
 /// A text and where it stands.
@@ -23,11 +23,13 @@ pub(crate) struct Given<'a> {
 }
 
 impl<'a> Given<'a> {
+    /// Reports that it is of another type.
     pub fn is_not(&self, wanted: &str) {
         let article = if self.kind.starts_with(['a', 'i']) { "an" } else { "a" };
         self.wrong(format!("must be {wanted}, not {article} {}", self.kind));
     }
 
+    /// Reports something wrong with it.
     pub fn wrong(&self, message: impl Into<String>) {
         self.findings.report(&self.place, message);
     }
@@ -45,7 +47,7 @@ impl<'a> Given<'a> {
         if limits.hold(number) {
             return number;
         }
-        self.wrong(format!("must be {limits}, not {number:?}"));
+        self.wrong(format!("must be {limits}, not {}", shown_number(number)));
         f64::NAN
     }
 
@@ -61,7 +63,7 @@ impl<'a> Given<'a> {
     pub fn text(&self) -> String {
         match self.value.and_then(Value::as_str) {
             None => self.is_not("a string"),
-            Some(text) if text.trim().is_empty() => self.wrong("is empty; write something in it".to_owned()),
+            Some(text) if text.trim().is_empty() => self.wrong("is empty; write something in it"),
             Some(text) if text.contains(is_unprintable) => {
                 self.wrong(format!("{} holds control or invisible characters; take them out", quoted(text)));
             }

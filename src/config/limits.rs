@@ -1,5 +1,7 @@
 use std::fmt;
 
+use super::wording::shown_number;
+
 /// Beyond any quantity of a grid in the units of the configuration; further out, products would overflow.
 const LARGEST: f64 = 1e12;
 
@@ -48,7 +50,6 @@ impl fmt::Display for Limits {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let low = if self.with_low { "at least" } else { "more than" };
         let high = if self.with_high { "at most" } else { "less than" };
-        write!(f, "{low} {} and {high} ", self.low)?;
-        if self.high < LARGEST { write!(f, "{}", self.high) } else { write!(f, "{:e}", self.high) }
+        write!(f, "{low} {} and {high} {}", shown_number(self.low), shown_number(self.high))
     }
 }

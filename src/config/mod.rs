@@ -116,7 +116,7 @@ impl Config {
     /// Reads a configuration file.
     pub fn load(path: &Path) -> Result<Self, ConfigErrors> {
         let name = path.display().to_string();
-        let text = file::read(path).map_err(|message| ConfigErrors::of_file(&name, message))?;
+        let text = file::read(path).map_err(|error| ConfigErrors::one(&name, error))?;
         Self::parse(&text, &name)
     }
 
@@ -135,11 +135,8 @@ fn read(mut root: Section<'_>) -> Config {
     let time_zone = time_zone(&mut general);
 
     let mut names = GridNames::new(root.findings());
-    let corridors = root.sections("corridor", MOST_CORRIDORS);
-    let corridors: Vec<_> = corridors.into_iter().map(|section| corridor::read(section, &mut names)).collect();
-    if corridors.is_empty() {
-        root.wrong("corridor", "there is none; describe at least one under [[corridor]]");
-    }
+    let corridors = root.required_sections("corridor", MOST_CORRIDORS);
+    let corridors = corridors.into_iter().map(|section| corridor::read(section, &mut names)).collect();
     let grid = Grid { frequency_hz, corridors };
     Config {
         time_zone,

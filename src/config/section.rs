@@ -1,6 +1,6 @@
 use std::ops::Range;
 
-use toml_edit::{Item, TableLike, Value};
+use toml_edit::{Array, Item, TableLike, Value};
 
 use super::{
     document::original_of_duplicate,
@@ -62,14 +62,14 @@ impl<'a> Section<'a> {
         }
     }
 
-    /// Whatever a key gives.
+    /// What the file gives under a key; the key counts as known from then on.
     pub fn take(&mut self, key: &'a str) -> Option<Given<'a>> {
         self.asked.push(key);
         let item = self.items?.get(key)?;
         Some(Given { findings: self.findings, place: self.place(key), value: item.as_value(), kind: item.type_name() })
     }
 
-    /// Lets the keys not asked for pass: the section cannot be read any further.
+    /// Lets the keys not asked for pass: without its name, nobody can tell what belongs into it.
     pub fn abandon(&mut self) {
         self.items = None;
     }
@@ -125,8 +125,8 @@ impl<'a> Section<'a> {
     /// An array of texts; empty ones where something else stands there.
     pub fn texts(&mut self, key: &'a str) -> Option<Vec<Placed>> {
         let given = self.take(key)?;
-        let values = given.array("an array of strings").unwrap_or_else(|| vec![given]);
-        Some(values.iter().map(Given::placed).collect())
+        let texts = given.array("an array of strings").map(|values| values.iter().map(Given::placed).collect());
+        Some(texts.unwrap_or_else(|| vec![Placed { text: String::new(), place: given.place }]))
     }
 
     /// Every text in this table and in the tables within it, by dotted path from here; no key is unknown.
@@ -162,6 +162,15 @@ impl<'a> Section<'a> {
             self.missed(key, advice);
         }
         self.section(key)
+    }
+
+    /// An array of tables, of which at least one must be there.
+    pub fn required_sections(&mut self, key: &'a str, most: usize) -> Vec<Self> {
+        let item = self.items.and_then(|items| items.get(key));
+        if item.is_none_or(|item| item.as_array().is_some_and(Array::is_empty)) {
+            self.missed(key, "describe at least one, under its name in double brackets");
+        }
+        self.sections(key, most)
     }
 
     /// An array of tables, of which at most so many are read.

@@ -32,6 +32,12 @@ pub(crate) fn shown_key(key: &str) -> String {
     if is_bare && key.len() <= LONGEST_QUOTE { key.to_owned() } else { quoted(key) }
 }
 
+/// A number as one would write it, with an exponent where it is far from one.
+pub(crate) fn shown_number(number: f64) -> String {
+    let is_plain = number == 0.0 || (1e-4..1e9).contains(&number.abs());
+    if is_plain { format!("{number}") } else { format!("{number:e}") }
+}
+
 /// What could have been meant instead: the nearest candidate, or all of them where they are few.
 pub(crate) fn advice<'a>(given: &str, candidates: impl IntoIterator<Item = &'a str>) -> String {
     let given = &given[..given.char_indices().nth(LONGEST_QUOTE).map_or(given.len(), |(end, _)| end)];

@@ -1,13 +1,18 @@
-//! Takes each corridor of a snapshot from measurements to an assessment, a pure function of configuration and frames.
+//! Takes each corridor of a snapshot from measurements to an assessment: a pure function of configuration and frames.
 
 mod assessment;
+mod corridor;
 
-pub use assessment::{
-    Action, Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Intact, IntactLimits,
-    OutageLimits, OutageRecord, Reclose, SourceRecord, State,
+use std::sync::Arc;
+
+pub use crate::margin::{Action, Binding, Criterion, Intact, IntactLimits, OutageLimits, OutageRecord, Reclose};
+pub use assessment::{Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, SourceRecord, State};
+pub use corridor::CorridorDesk;
+
+use crate::{
+    config::Config,
+    feed::{Channels, Snapshot},
 };
-
-use crate::{config::Config, feed::Channels, feed::Snapshot};
 
 /// All corridors of a configuration.
 #[derive(Debug)]
@@ -16,25 +21,15 @@ pub struct Desk {
     pub corridors: Vec<CorridorDesk>,
 }
 
-/// One corridor with what is remembered of it.
-#[derive(Debug)]
-pub struct CorridorDesk {}
-
 impl Desk {
     /// A desk with nothing remembered.
-    pub fn new(_config: &Config, _channels: &Channels) -> Self {
-        Self { corridors: Vec::new() }
+    pub fn new(config: &Config, channels: &Arc<Channels>) -> Self {
+        let corridors = config.grid.corridors.iter();
+        Self { corridors: corridors.map(|corridor| CorridorDesk::new(corridor, config, channels)).collect() }
     }
 
     /// Every corridor at a snapshot, in order.
     pub fn assess(&mut self, snapshot: &Snapshot) -> Vec<Assessment> {
         self.corridors.iter_mut().map(|corridor| corridor.assess(snapshot)).collect()
-    }
-}
-
-impl CorridorDesk {
-    /// This corridor at a snapshot.
-    pub fn assess(&mut self, _snapshot: &Snapshot) -> Assessment {
-        unreachable!("replaced before anything runs")
     }
 }

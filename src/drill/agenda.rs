@@ -1,7 +1,5 @@
 //! What will happen in a corridor, in order of time.
 
-use std::collections::VecDeque;
-
 use super::{
     Action, CorridorTruth,
     chance::{Draw, Purpose, draw_steps, stream},
@@ -20,8 +18,8 @@ pub(super) enum Due {
     RandomBoth([Draw; 2]),
 }
 
-/// Everything due, soonest first; of one instant, in the order of the scenario.
-pub(super) fn agenda(truth: &CorridorTruth, duration_s: f64, seed: u64) -> VecDeque<(f64, Due)> {
+/// Everything due, soonest last; of one instant, in the order of the scenario.
+pub(super) fn agenda(truth: &CorridorTruth, duration_s: f64, seed: u64) -> Vec<(f64, Due)> {
     let mut due = Vec::new();
     for event in &truth.events {
         due.push((event.at_s, Due::Action(event.action)));
@@ -40,5 +38,6 @@ pub(super) fn agenda(truth: &CorridorTruth, duration_s: f64, seed: u64) -> VecDe
         due.extend(drawn.into_iter().map(|(at_s, draws)| (at_s, Due::RandomBoth(draws))));
     }
     due.sort_by(|a, b| a.0.total_cmp(&b.0));
-    due.into()
+    due.reverse();
+    due
 }

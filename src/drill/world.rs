@@ -1,6 +1,6 @@
 //! One corridor as it really is, moving through time.
 
-use std::{collections::VecDeque, sync::Arc};
+use std::sync::Arc;
 
 use rand_chacha::ChaCha8Rng;
 
@@ -31,7 +31,7 @@ pub(super) struct World {
     plan: Plan,
     inertia: Option<Inertia>,
     share_from: f64,
-    due: VecDeque<(f64, Due)>,
+    due: Vec<(f64, Due)>,
     random: ChaCha8Rng,
 
     pub(super) now_s: f64,
@@ -88,7 +88,7 @@ impl World {
     /// Goes on to a time. What happens on the way happens at its own time; what drifts is brought up to date at the end.
     pub fn advance(&mut self, to_s: f64) {
         let began_s = self.now_s;
-        while let Some((at_s, due)) = self.due.pop_front_if(|(at_s, _)| *at_s <= to_s) {
+        while let Some((at_s, due)) = self.due.pop_if(|(at_s, _)| *at_s <= to_s) {
             self.swing_to(at_s);
             self.happen(due);
         }

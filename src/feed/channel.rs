@@ -1,4 +1,4 @@
-use std::{collections::HashMap, sync::Arc};
+use std::{collections::HashMap, ops::RangeInclusive, sync::Arc};
 
 use crate::{
     config::Config,
@@ -90,11 +90,46 @@ impl Point {
     }
 }
 
+/// Power beyond this many times what could ever flow is no measurement.
+const ABSURD_POWER: f64 = 10.0;
+
+impl Point {
+    /// The values that a point can have; what lies outside is a broken measurement.
+    ///
+    /// - kV: above 5 % of nominal and below three times nominal;
+    /// - degrees: ten turns either way;
+    /// - MW and Mvar of a circuit: ten times U²/X, the peak of its own power-angle curve at nominal voltage;
+    /// - a load: ten times the sum of U²/X over all that meets at its bus, the source of a side included;
+    /// - stored energy: above 0.
+    pub fn plausible(self, corridor: &Corridor) -> RangeInclusive<f64> {
+        let nominal_kv = |bus: BusIndex| corridor.buses[bus].nominal_kv;
+        let up_to = |limit: f64| -limit.min(f64::MAX)..=limit.min(f64::MAX);
+        let peak_mw = |bus, x_ohm: f64| nominal_kv(bus).powi(2) / x_ohm;
+        match self {
+            Self::Kv(bus) => (0.05 * nominal_kv(bus)).next_up()..=(3.0 * nominal_kv(bus)).next_down(),
+            Self::Deg(_) => up_to(3600.0),
+            Self::Flow(circuit, end, _) => {
+                let circuit = &corridor.circuits[circuit];
+                up_to(ABSURD_POWER * peak_mw(circuit.between[end as usize], circuit.line.totals().x_ohm))
+            }
+            Self::Load(bus, _) => {
+                let circuits = corridor.circuits.iter().filter(|circuit| circuit.between.contains(&bus));
+                let source_x_ohm = corridor.sides.get(bus).map_or(f64::INFINITY, |side| side.source.x_ohm);
+                let sum: f64 = circuits.map(|circuit| peak_mw(bus, circuit.line.totals().x_ohm)).sum();
+                up_to(ABSURD_POWER * (sum + peak_mw(bus, source_x_ohm)))
+            }
+            Self::StoredEnergy(_) => f64::MIN_POSITIVE..=f64::MAX,
+            Self::Closed(_) | Self::Inserted(_) => 0.0..=1.0,
+        }
+    }
+}
+
 /// The channels that a configuration knows, by slot.
 #[derive(Debug, Clone)]
 pub struct Channels {
     names: Vec<Arc<str>>,
     is_status: Vec<bool>,
+    plausible: Vec<RangeInclusive<f64>>,
     by_feed_name: HashMap<Arc<str>, Slot>,
     by_name: HashMap<Arc<str>, Slot>,
 }
@@ -102,12 +137,20 @@ pub struct Channels {
 impl Channels {
     /// All channels of all corridors; a bus that two corridors share has one set.
     pub fn new(config: &Config) -> Self {
-        let mut channels =
-            Self { names: Vec::new(), is_status: Vec::new(), by_feed_name: HashMap::new(), by_name: HashMap::new() };
+        let mut channels = Self {
+            names: Vec::new(),
+            is_status: Vec::new(),
+            plausible: Vec::new(),
+            by_feed_name: HashMap::new(),
+            by_name: HashMap::new(),
+        };
         for corridor in &config.grid.corridors {
             for point in Point::of(corridor) {
                 let name: Arc<str> = point.name(corridor).into();
-                if channels.by_name.contains_key(&name) {
+                let plausible = point.plausible(corridor);
+                if let Some(&slot) = channels.by_name.get(&name) {
+                    let known = &mut channels.plausible[slot];
+                    *known = known.start().min(*plausible.start())..=known.end().max(*plausible.end());
                     continue;
                 }
                 let slot = channels.names.len();
@@ -115,6 +158,7 @@ impl Channels {
                 channels.by_feed_name.insert(feed_name, slot);
                 channels.by_name.insert(name.clone(), slot);
                 channels.is_status.push(matches!(point, Point::Closed(_) | Point::Inserted(_)));
+                channels.plausible.push(plausible);
                 channels.names.push(name);
             }
         }
@@ -147,6 +191,11 @@ impl Channels {
     /// The default name of a channel.
     pub fn name(&self, slot: Slot) -> &Arc<str> {
         &self.names[slot]
+    }
+
+    /// Whether a channel can have this value: finite, and not absurd by [`Point::plausible`].
+    pub fn is_plausible(&self, slot: Slot, value: f64) -> bool {
+        self.plausible[slot].contains(&value) && (!self.is_status[slot] || value == 0.0 || value == 1.0)
     }
 
     /// Whether the channel is a status, which has no age.

@@ -30,3 +30,14 @@ pub enum Quality {
     /// Not used.
     Invalid,
 }
+
+impl Quality {
+    /// From the word a feed uses; any other word is invalid, since its source had something to object.
+    pub fn from_word(word: &str) -> Self {
+        match word {
+            "good" => Self::Good,
+            "questionable" => Self::Questionable,
+            _ => Self::Invalid,
+        }
+    }
+}

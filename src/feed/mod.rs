@@ -1,9 +1,40 @@
 //! Frames: what they are, where they come from, and what of them still stands.
 
 mod channel;
+mod connect;
+mod csv;
+mod decoder;
+mod draft;
+mod follow;
 mod frame;
+mod input;
+mod jsonl;
+mod line_error;
+mod lines;
+mod listen;
+mod live;
+mod merge;
+mod monitor;
+mod opening;
+mod places;
+mod recorded;
 mod snapshot;
+mod stream;
+mod tally;
 
 pub use channel::{Channels, End, Point, Quantity, Slot};
+pub use decoder::{Decoder, Format};
 pub use frame::{Frame, Quality, Reading};
+pub use input::{Address, Input, InputError};
+pub use live::{Feed, OpenError, Patience};
+pub use monitor::{InputState, InputStatus, Monitor};
+pub use recorded::{Reader, Recorded};
 pub use snapshot::{Holder, Snapshot};
+pub use tally::{Named, Tally};
+
+use chrono::{DateTime, Utc};
+use line_error::LineError;
+
+fn rfc3339(text: &str) -> Result<DateTime<Utc>, LineError> {
+    DateTime::parse_from_rfc3339(text).map(|time| time.to_utc()).map_err(|_| LineError::Time)
+}

@@ -1,3 +1,9 @@
+//! Powers, squared voltages and squared currents of a network between two sources, as functions of their angle.
+
+use std::f64::consts::TAU;
+
+use crate::network::C64;
+
 /// P(δ) = C + D sin(δ − γ): any power of a network between two sources (Kimbark 1948, vol. 1, ch. 4).
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct PowerAngle {
@@ -13,5 +19,89 @@ impl PowerAngle {
     /// Power at an angle, MW.
     pub fn at(&self, angle_rad: f64) -> f64 {
         self.mean_mw + self.amplitude_mw * (angle_rad - self.shift_rad).sin()
+    }
+
+    /// Where the curve peaks, rad.
+    pub fn peak_rad(&self) -> f64 {
+        self.shift_rad + std::f64::consts::FRAC_PI_2
+    }
+
+    /// The curve at its peak, MW.
+    pub fn peak_mw(&self) -> f64 {
+        self.mean_mw + self.amplitude_mw
+    }
+
+    /// The angle on the rising side that carries this power, rad; `None` beyond the curve.
+    pub fn rising_rad(&self, power_mw: f64) -> Option<f64> {
+        let sine = (power_mw - self.mean_mw) / self.amplitude_mw;
+        (sine.abs() <= 1.0).then(|| self.shift_rad + sine.asin())
+    }
+}
+
+/// m + c cos δ + s sin δ.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Wave {
+    pub mean: f64,
+    pub cos: f64,
+    pub sin: f64,
+}
+
+impl Wave {
+    pub fn at(&self, angle_rad: f64) -> f64 {
+        let (sin, cos) = angle_rad.sin_cos();
+        self.mean + self.cos * cos + self.sin * sin
+    }
+
+    /// The first angle from `start_rad` on at which the wave is above a level.
+    pub fn first_above(&self, level: f64, start_rad: f64) -> Option<f64> {
+        let amplitude = self.cos.hypot(self.sin);
+        if self.mean + amplitude <= level {
+            return None;
+        }
+        if self.at(start_rad) > level {
+            return Some(start_rad);
+        }
+        let rising = self.sin.atan2(self.cos) - ((level - self.mean) / amplitude).clamp(-1.0, 1.0).acos();
+        Some(start_rad + (rising - start_rad).rem_euclid(TAU))
+    }
+
+    /// The first angle from `start_rad` on at which the wave is below a level.
+    pub fn first_below(&self, level: f64, start_rad: f64) -> Option<f64> {
+        Self { mean: -self.mean, cos: -self.cos, sin: -self.sin }.first_above(-level, start_rad)
+    }
+}
+
+impl From<Wave> for PowerAngle {
+    fn from(wave: Wave) -> Self {
+        Self { mean_mw: wave.mean, amplitude_mw: wave.cos.hypot(wave.sin), shift_rad: (-wave.cos).atan2(wave.sin) }
+    }
+}
+
+/// x·e^{jδ} + i: a voltage or current driven by the exporter's source at angle δ and the importer's at angle 0.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Phasor {
+    pub x: C64,
+    pub i: C64,
+}
+
+impl Phasor {
+    pub fn at(&self, angle_rad: f64) -> C64 {
+        self.x * C64::cis(angle_rad) + self.i
+    }
+
+    /// Re(self · conj(other)): the active power of a voltage and a current.
+    pub fn power(&self, other: &Self) -> Wave {
+        let from_x = self.x * other.i.conj();
+        let from_i = self.i * other.x.conj();
+        Wave {
+            mean: (self.x * other.x.conj() + self.i * other.i.conj()).re,
+            cos: from_x.re + from_i.re,
+            sin: from_i.im - from_x.im,
+        }
+    }
+
+    /// |self|².
+    pub fn square(&self) -> Wave {
+        self.power(self)
     }
 }

@@ -1,1 +1,3 @@
-//! Report.
+//! Assessments for other programs and other people: one file a format.
+
+pub mod jsonl;

@@ -166,7 +166,7 @@ fn a_circuit_returns_only_where_the_angle_fits() {
     let (frames, truth) = play(&day);
     let standing = |frame: &Played| frame.get("Hask.deg") - frame.get("Prell.deg");
     assert!(standing(&frames[99]) > 30.0 && standing(&frames[299]) < 30.0);
-    assert!(frames[150].get("HP2.closed") == 0.0 && frames[301].get("HP2.closed") == 1.0);
+    assert!(frames[150].get("HP2.closed") == 0.0 && frames[301].get("HP2.closed") > 0.5);
     assert!(truth.iter().any(|fact| matches!(fact.what, What::CloseRefused { angle_deg, .. } if angle_deg > 30.0)));
 }
 

@@ -30,7 +30,7 @@ impl Scenario {
     /// Reads a scenario from a file.
     pub fn load(path: &Path, config: &Config) -> Result<Self, ConfigErrors> {
         let name = path.display().to_string();
-        let text = file::read(path).map_err(|message| ConfigErrors::of_file(&name, message))?;
+        let text = file::read(path).map_err(|error| ConfigErrors::one(&name, error))?;
         Self::parse(&text, &name, config)
     }
 
@@ -52,11 +52,7 @@ fn read<'a>(mut root: Section<'a>, config: &'a Config) -> Scenario {
     let metering = metering::read(root.section("metering"));
 
     let mut cast = Cast::new(config, root.findings(), duration_s);
-    let corridors = root.sections("corridor", MOST_CORRIDORS);
-    if corridors.is_empty() {
-        root.wrong("corridor", "there is none; name at least one corridor of the configuration under [[corridor]]");
-    }
-    for section in corridors {
+    for section in root.required_sections("corridor", MOST_CORRIDORS) {
         cast.read(section);
     }
     for section in root.sections("event", MOST_EVENTS) {

@@ -1,0 +1,207 @@
+use std::sync::Arc;
+
+use super::{
+    Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Reclose, SourceRecord, State,
+};
+use crate::{
+    config::Config,
+    feed::{Channels, Slot, Snapshot},
+    fit::{Fit, FittedState, Fitter, Standing},
+    grid::{Circuit, Corridor, FROM, TO},
+    margin::{Engine, Judgement, Operating, Trend},
+    network::Topology,
+    source::Estimate,
+};
+
+/// One corridor with what is remembered of it.
+#[derive(Debug)]
+pub struct CorridorDesk {
+    corridor: Arc<Corridor>,
+    channels: Arc<Channels>,
+    fitter: Fitter,
+    sources: Estimate,
+    engine: Engine,
+    trend: Trend,
+    /// Statuses of the frame before: a trend does not reach across a change.
+    topology: Option<Topology>,
+}
+
+impl CorridorDesk {
+    pub(super) fn new(corridor: &Corridor, config: &Config, channels: &Arc<Channels>) -> Self {
+        let corridor = Arc::new(corridor.clone());
+        Self {
+            fitter: Fitter::new(corridor.clone(), channels, &config.measurement),
+            sources: Estimate::configured(&corridor.sides.map(|side| side.source)),
+            engine: Engine::new(config.grid.frequency_hz),
+            trend: Trend::default(),
+            topology: None,
+            channels: channels.clone(),
+            corridor,
+        }
+    }
+
+    /// The corridor.
+    pub fn corridor(&self) -> &Arc<Corridor> {
+        &self.corridor
+    }
+
+    /// This corridor at a snapshot.
+    pub fn assess(&mut self, snapshot: &Snapshot) -> Assessment {
+        let fit = self.fitter.fit(snapshot);
+        if self.topology.as_ref() != Some(&fit.topology) {
+            self.trend.clear();
+            self.topology = Some(fit.topology.clone());
+        }
+        match &fit.standing {
+            Standing::Joined(state) => self.joined(snapshot, &fit, state),
+            Standing::Parted { state, angle_known } => self.parted(snapshot, &fit, state, *angle_known),
+            Standing::Blind => self.blank(snapshot, &fit),
+        }
+    }
+
+    fn joined(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState) -> Assessment {
+        let judgement = self.engine.judge(
+            &self.corridor,
+            &Operating {
+                topology: &fit.topology,
+                voltage: &state.voltage,
+                load: &state.load,
+                z_ohm: self.sources.z_ohm(),
+                covariance: &self.sources.covariance,
+                stored_energy_mws: fit.stored_energy_mws,
+            },
+        );
+        if !judgement.headroom_mw.is_finite() {
+            return self.blank(snapshot, fit);
+        }
+        let headroom = judgement.headroom_mw;
+        self.trend.push(snapshot.time, headroom);
+        let thin_mw = self.corridor.thin_mw;
+        let [from, to] = judgement.e_kv;
+        let [source_from, source_to] = self.sources();
+        Assessment {
+            state: match headroom {
+                _ if headroom <= 0.0 => State::Spent,
+                _ if headroom < thin_mw => State::Thin,
+                _ => State::Ample,
+            },
+            exporter: Some(self.corridor.buses[judgement.exporter].name.clone()),
+            transfer_mw: Some(judgement.transfer_mw),
+            bus_angle_deg: Some(judgement.bus_angle_rad.to_degrees()),
+            internal_angle_deg: Some(judgement.internal_angle_rad.to_degrees()),
+            swing_angle_deg: Some(judgement.picture.angle_rad.to_degrees()),
+            sources: [
+                SourceRecord { e_kv: Some(from.norm()), angle_deg: Some(from.arg().to_degrees()), ..source_from },
+                SourceRecord { e_kv: Some(to.norm()), angle_deg: Some(to.arg().to_degrees()), ..source_to },
+            ],
+            headroom_mw: Some(headroom),
+            headroom_sd_mw: Some(judgement.headroom_sd_mw),
+            minutes_to_thin: self.trend.minutes_to(thin_mw, headroom),
+            minutes_to_spent: self.trend.minutes_to(0.0, headroom),
+            detail: Some(Arc::new(self.detail(fit, state, &judgement))),
+            intact: Some(judgement.intact),
+            outages: judgement.outages,
+            binding: Some(judgement.binding),
+            actions: judgement.actions,
+            reclose: judgement.reclose,
+            ..self.blank(snapshot, fit)
+        }
+    }
+
+    /// Nothing joins the terminals: not a megawatt more, until a circuit is closed.
+    fn parted(&self, snapshot: &Snapshot, fit: &Fit, state: &FittedState, angle_known: bool) -> Assessment {
+        let open = (0..self.corridor.circuits.len()).filter(|circuit| !fit.topology.closed[*circuit]);
+        let reclose = open.map(|circuit| {
+            let voltage = self.corridor.circuits[circuit].between.map(|bus| state.voltage[bus]);
+            let reclose = Reclose::of(&self.corridor, circuit, voltage);
+            if angle_known { reclose } else { Reclose { angle_deg: None, allowed: None, ..reclose } }
+        });
+        Assessment {
+            state: State::Spent,
+            transfer_mw: Some(0.0),
+            bus_angle_deg: angle_known.then(|| (state.voltage[FROM] * state.voltage[TO].conj()).arg().to_degrees()),
+            headroom_mw: Some(0.0),
+            binding: Some(Binding { outage: None, criterion: Criterion::Separation }),
+            reclose: reclose.collect(),
+            ..self.blank(snapshot, fit)
+        }
+    }
+
+    /// What can be said without a state.
+    fn blank(&self, snapshot: &Snapshot, fit: &Fit) -> Assessment {
+        let named = |slots: &[Slot]| slots.iter().map(|slot| self.channels.name(*slot).clone()).collect();
+        Assessment {
+            time: snapshot.time,
+            corridor: self.corridor.name.clone(),
+            state: State::Blind,
+            exporter: None,
+            transfer_mw: None,
+            bus_angle_deg: None,
+            internal_angle_deg: None,
+            swing_angle_deg: None,
+            sources: self.sources(),
+            fit: FitRecord {
+                chi2: fit.chi2,
+                dof: fit.dof,
+                limit: fit.limit,
+                suspects: named(&fit.suspects),
+                missing: named(&fit.missing),
+                assumed: fit.assumed.clone(),
+            },
+            intact: None,
+            outages: Vec::new(),
+            headroom_mw: None,
+            headroom_sd_mw: None,
+            binding: None,
+            actions: Vec::new(),
+            reclose: Vec::new(),
+            minutes_to_thin: None,
+            minutes_to_spent: None,
+            thin_mw: self.corridor.thin_mw,
+            detail: None,
+        }
+    }
+
+    fn sources(&self) -> [SourceRecord; 2] {
+        let sd = self.sources.sd();
+        [FROM, TO].map(|side| SourceRecord {
+            bus: self.corridor.buses[side].name.clone(),
+            e_kv: None,
+            angle_deg: None,
+            r_ohm: self.sources.mean[2 * side],
+            x_ohm: self.sources.mean[2 * side + 1],
+            r_sd: sd[2 * side],
+            x_sd: sd[2 * side + 1],
+            basis: if self.sources.steps[side] > 0 { Basis::Learned } else { Basis::Configured },
+            steps: self.sources.steps[side],
+        })
+    }
+
+    fn detail(&self, fit: &Fit, state: &FittedState, judgement: &Judgement) -> Detail {
+        let live = (0..self.corridor.buses.len()).filter(|bus| state.live[*bus]);
+        let buses = live.map(|bus| {
+            let voltage = state.voltage[bus];
+            let load = state.load[bus].conj() * voltage.norm_sqr();
+            BusDetail {
+                name: self.corridor.buses[bus].name.clone(),
+                kv: voltage.norm(),
+                deg: voltage.arg().to_degrees(),
+                load_mw: load.re,
+                load_mvar: load.im,
+            }
+        });
+        let circuits = self.corridor.circuits.iter().zip(&judgement.circuits).enumerate();
+        let circuits = circuits.map(|(index, (circuit, present))| CircuitDetail {
+            name: circuit.name.clone(),
+            closed: fit.topology.closed[index],
+            from_mw: present.from_mw,
+            loading_pct: circuit.rating_a.map(|rating_a| 100.0 * present.amperes / rating_a),
+            banks: banks(circuit, &fit.topology.inserted[index]),
+        });
+        Detail { buses: buses.collect(), circuits: circuits.collect(), picture: judgement.picture }
+    }
+}
+
+fn banks(circuit: &Circuit, inserted: &[bool]) -> Vec<(Arc<str>, bool)> {
+    circuit.banks.iter().zip(inserted).map(|(bank, inserted)| (bank.name.clone(), *inserted)).collect()
+}

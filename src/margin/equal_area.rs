@@ -1,6 +1,6 @@
 //! The equal-area criterion in terms of energy (Kimbark 1948, vol. 1, ch. 4; Athay, Podmore and Virmani 1979).
 
-use std::f64::consts::PI;
+use std::f64::consts::{PI, TAU};
 
 use super::PowerAngle;
 
@@ -46,6 +46,19 @@ impl Well {
         }
         let largest = self.critical.max(energy);
         if largest > 0.0 { (self.critical - energy) / largest } else { 0.0 }
+    }
+
+    /// Along the swing from rest at `start_rad` with `fault` on, the first angle at which ½ M ω² + V(δ) reaches
+    /// V_crit. That energy is V(start) + ∫ (P − P_fault), whatever the inertia; whether the swing gets there is not
+    /// looked at.
+    pub fn spent_rad(&self, fault: &PowerAngle, start_rad: f64) -> Option<f64> {
+        let needed = self.critical - self.potential(start_rad);
+        let gain = self.curve.less(fault);
+        if self.p_m_mw >= fault.at(start_rad) {
+            gain.first_climb(start_rad, needed, self.tipping_rad)
+        } else {
+            gain.mirrored().first_climb(-start_rad, needed, -start_rad + TAU).map(|angle| -angle)
+        }
     }
 
     /// The angle past the equilibrium at which the potential has taken up `energy`; `None` when it never does.

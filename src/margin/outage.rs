@@ -197,9 +197,8 @@ impl FirstSwing {
         if self.start_rad > well.tipping_rad || well.potential(self.start_rad) >= well.critical {
             return Some(0.0);
         }
-        fault.first_reach(self.start_rad, well.critical, LONGEST_FAULT_S, |moment| {
-            fault.kinetic(moment) + well.potential(moment.angle_rad)
-        })
+        let spent = well.spent_rad(&fault.curve, self.start_rad)?;
+        fault.time_between(self.start_rad, spent, LONGEST_FAULT_S)
     }
 }
 

@@ -1,7 +1,8 @@
 //! Powers, squared voltages and squared currents of a network between two sources, as functions of their angle.
 
-use std::f64::consts::TAU;
+use std::f64::consts::{PI, TAU};
 
+use super::root;
 use crate::network::C64;
 
 /// P(δ) = C + D sin(δ − γ): any power of a network between two sources (Kimbark 1948, vol. 1, ch. 4).
@@ -35,6 +36,46 @@ impl PowerAngle {
     pub fn rising_rad(&self, power_mw: f64) -> Option<f64> {
         let sine = (power_mw - self.mean_mw) / self.amplitude_mw;
         (sine.abs() <= 1.0).then(|| self.shift_rad + sine.asin())
+    }
+
+    /// This curve less another one.
+    pub(super) fn less(&self, other: &Self) -> Self {
+        let [(sin, cos), (other_sin, other_cos)] = [self, other].map(|curve| curve.shift_rad.sin_cos());
+        Wave {
+            mean: self.mean_mw - other.mean_mw,
+            cos: other.amplitude_mw * other_sin - self.amplitude_mw * sin,
+            sin: self.amplitude_mw * cos - other.amplitude_mw * other_cos,
+        }
+        .into()
+    }
+
+    /// −P(−δ): what an integral from δ downwards adds up.
+    pub(super) fn mirrored(&self) -> Self {
+        Self { mean_mw: -self.mean_mw, amplitude_mw: self.amplitude_mw, shift_rad: -self.shift_rad }
+    }
+
+    /// The first angle up to `end_rad` at which the integral from `start_rad` reaches `needed`, which is positive.
+    pub(super) fn first_climb(&self, start_rad: f64, needed: f64, end_rad: f64) -> Option<f64> {
+        let from = (start_rad - self.shift_rad).cos();
+        let missing = |angle: f64| {
+            let swept =
+                self.mean_mw * (angle - start_rad) - self.amplitude_mw * ((angle - self.shift_rad).cos() - from);
+            needed - swept
+        };
+        // The integral has a maximum where the curve falls through zero.
+        let top = self.rising_rad(0.0).map(|zero| {
+            let falling = PI + 2.0 * self.shift_rad - zero;
+            start_rad + (falling - start_rad).rem_euclid(TAU)
+        });
+        let mut below = start_rad;
+        for angle in top.into_iter().filter(|top| *top < end_rad).chain([end_rad]) {
+            if missing(angle) <= 0.0 {
+                let bracket = ((below, missing(below)), (angle, missing(angle)));
+                return Some(root::bracketed(bracket.0, bracket.1, 1e-12, missing));
+            }
+            below = angle;
+        }
+        None
     }
 }
 

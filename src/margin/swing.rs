@@ -61,40 +61,31 @@ impl Swing {
         }
     }
 
-    /// The first time at which `energy(moment)` reaches `level`, from rest at an angle; `None` if not within `limit_s`.
-    pub(super) fn first_reach(
-        &self,
-        angle_rad: f64,
-        level: f64,
-        limit_s: f64,
-        energy: impl Fn(&Moment) -> f64,
-    ) -> Option<f64> {
-        let mut moment = Moment::at_rest(angle_rad);
-        let mut below = energy(&moment) - level;
-        let forward = self.p_m_mw >= self.curve.at(angle_rad);
+    /// The time at which it gets from rest at one angle to another; `None` where it turns before, or within `limit_s`.
+    pub(super) fn time_between(&self, start_rad: f64, target_rad: f64, limit_s: f64) -> Option<f64> {
+        let ahead = (target_rad - start_rad).signum();
+        let mut moment = Moment::at_rest(start_rad);
         while moment.time_s < limit_s {
             let jet = self.jet(moment);
-            let mut length = jet.reach_s().min(limit_s - moment.time_s);
-            let mut next = jet.at(length);
-            let turned = next.speed_rad_s != 0.0 && (next.speed_rad_s > 0.0) != forward;
-            if turned {
-                // From here on it swings back over angles it has been at, with the energies it had there.
-                let sign = if forward { 1.0 } else { -1.0 };
-                let speed = |time_s: f64| sign * jet.at(time_s).speed_rad_s;
+            let length = jet.reach_s().min(limit_s - moment.time_s);
+            let short = |time_s: f64| ahead * (target_rad - jet.at(time_s).angle_rad);
+            let speed = |time_s: f64| ahead * jet.at(time_s).speed_rad_s;
+            let turned = speed(length) <= 0.0;
+            let end = if turned {
                 let start = 1e-6 * length;
-                length = super::root::bracketed((start, speed(start)), (length, speed(length)), 1e-12, speed);
-                next = jet.at(length);
-            }
-            let reached = energy(&next) - level;
-            if reached >= 0.0 {
-                let time = |time_s: f64| energy(&jet.at(time_s)) - level;
-                let within = super::root::bracketed((0.0, below), (length, reached), 1e-10, time);
-                return Some(moment.time_s + within);
+                super::root::bracketed((start, speed(start)), (length, speed(length)), 1e-12, speed)
+            } else {
+                length
+            };
+            if short(end) <= 0.0 {
+                return Some(
+                    moment.time_s + super::root::bracketed((0.0, short(0.0)), (end, short(end)), 1e-10, short),
+                );
             }
             if turned {
                 return None;
             }
-            (moment, below) = (next, reached);
+            moment = jet.at(length);
         }
         None
     }
@@ -185,13 +176,17 @@ mod tests {
     }
 
     #[test]
-    fn reaching_a_level_is_found_on_the_way_and_never_after_turning() {
+    fn an_angle_is_reached_on_the_way_and_never_past_the_turn() {
         let swing = swing();
         let at = swing.after(Moment::at_rest(0.5), 0.37);
-        let time = swing.first_reach(0.5, at.angle_rad, 2.0, |moment| moment.angle_rad);
-        assert!((time.expect("it passes there") - 0.37).abs() < 1e-9);
+        let time = swing.time_between(0.5, at.angle_rad, 2.0).expect("it passes there");
+        assert!((time - 0.37).abs() < 1e-9);
         let stable = Swing { p_m_mw: 200.0, ..swing };
-        assert_eq!(stable.first_reach(0.3, 2.0, 60.0, |moment| moment.angle_rad), None);
+        assert_eq!(stable.time_between(0.3, 2.0, 60.0), None);
+        assert_eq!(swing.time_between(0.5, 0.4, 2.0), None, "it goes the other way");
+        let even = Swing { curve: PowerAngle::default(), p_m_mw: 500.0, inertia: 80.0 };
+        let time = even.time_between(0.0, 1.0, 2.0).expect("a constant push gets everywhere");
+        assert!((time - (160.0_f64 / 500.0).sqrt()).abs() < 1e-9);
     }
 
     proptest! {

@@ -4,12 +4,14 @@ use std::{
     fs,
     io::{self, ErrorKind},
     path::{Path, PathBuf},
+    sync::mpsc::{self, Sender},
     thread,
     time::{Duration, Instant},
 };
 
 use chrono::{SubsecRound, Utc};
 use clap::Args;
+use tokio::{runtime, signal::ctrl_c};
 
 use super::Failure;
 use crate::{
@@ -75,6 +77,17 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     Ok(())
 }
 
+/// Sends a message when the user has had enough, so that what is written so far can be ended well.
+fn tell_of_interrupt(listener: Sender<()>) {
+    thread::spawn(move || {
+        let runtime = runtime::Builder::new_current_thread().enable_all().build();
+        if runtime.is_ok_and(|runtime| runtime.block_on(ctrl_c()).is_ok()) {
+            // Whoever listened may be done already.
+            let _ = listener.send(());
+        }
+    });
+}
+
 fn invent(options: &Options, folder: &Path) -> Result<(), Failure> {
     let invention = Invention {
         seed: options.seed.unwrap_or(1),
@@ -100,12 +113,14 @@ fn play(
     let channels = Channels::new(config);
     let text = FrameText::new(config, &channels);
     let mut drill = Drill::new(config, &channels, scenario);
+    let (listener, interrupt) = mpsc::channel();
+    tell_of_interrupt(listener.clone());
     let began = Instant::now();
     let mut line = Vec::new();
     while let Some(frame) = drill.next() {
-        if real_time {
-            let due = (frame.time - scenario.start).to_std().unwrap_or(Duration::ZERO);
-            thread::sleep(due.saturating_sub(began.elapsed()));
+        let due = if real_time { (frame.time - scenario.start).to_std().unwrap_or_default() } else { Duration::ZERO };
+        if interrupt.recv_timeout(due.saturating_sub(began.elapsed())).is_ok() {
+            break;
         }
         line.clear();
         text.write(&frame, &mut line)?;

@@ -64,7 +64,7 @@ impl Output {
         if let Some(address) = target.strip_prefix("tcp://") {
             let failed = |source| OutputError::Connect { address: address.to_owned(), source };
             let stream = TcpStream::connect(address).map_err(failed)?;
-            stream.set_nodelay(true).map_err(failed)?;
+            stream.set_nodelay(true).and_then(|()| stream.set_write_timeout(Some(PATIENCE))).map_err(failed)?;
             return Ok(Self { sink: Box::new(stream) });
         }
         if let Some(address) = target.strip_prefix("tcp-listen://") {

@@ -147,6 +147,18 @@ fn real_time_keeps_the_pace_and_says_what_time_it_is() {
     assert!((chrono::Utc::now() - first).num_seconds() < 60);
 }
 
+#[cfg(unix)]
+#[test]
+fn an_interrupt_ends_the_file_well() {
+    let folder = Folder::with(&SCENARIO.replace("interval_s = 1", "interval_s = 0.05"));
+    let path = folder.path("live.jsonl.zst");
+    let mut drill = folder.drill(&["--real-time", "--output", &path]).spawn().unwrap();
+    thread::sleep(Duration::from_millis(1500));
+    assert!(Command::new("kill").args(["-INT", &drill.id().to_string()]).status().unwrap().success());
+    assert!(drill.wait().unwrap().success());
+    assert!(unzstd(Path::new(&path)).ends_with(b"}}\n"));
+}
+
 #[test]
 fn mistakes_end_with_status_two_and_their_place() {
     let fails = |scenario: &str, arguments: &[&str], message: &str| {

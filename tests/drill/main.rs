@@ -1,6 +1,7 @@
 //! The drill: its physics, its meters, its scenario files, and the command as a user runs it.
 
 mod command;
+mod demo;
 mod metering;
 mod physics;
 mod scenario;

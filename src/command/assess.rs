@@ -6,6 +6,7 @@ use std::{
     path::PathBuf,
     pin::pin,
     sync::Arc,
+    time::Duration,
 };
 
 use chrono::TimeDelta;
@@ -131,18 +132,14 @@ async fn next_batch(feed: &mut Feed, out: &mut impl Write) -> io::Result<Option<
 
 /// Says on standard error what could not be used; fails when nothing could.
 fn report(inputs: &[InputStatus], interrupted: bool) -> Result<(), Failure> {
-    let findings: Vec<String> = inputs
-        .iter()
-        .filter(|input| !input.tally.is_clean())
-        .map(|input| format!("{}: {}", input.name, input.tally.to_string().replace('\n', "\n  ")))
-        .collect();
-    let findings = findings.join("\n");
+    for input in inputs {
+        for finding in input.tally.findings() {
+            eprintln!("tautline: {}: {finding}", input.name);
+        }
+    }
     if !interrupted && inputs.iter().all(|input| input.tally.frames == 0) {
         let names: Vec<&str> = inputs.iter().map(|input| &*input.name).collect();
-        return Err(format!("not a single frame was read from {}\n{findings}", names.join(", ")).trim_end().into());
-    }
-    if !findings.is_empty() {
-        eprintln!("tautline: {findings}");
+        return Err(format!("not a single frame was read from {}", names.join(", ")).into());
     }
     Ok(())
 }
@@ -166,7 +163,7 @@ struct Seat {
 
 impl Bench {
     fn new(options: &Options, config: &Config, channels: &Arc<Channels>) -> Result<Self, Failure> {
-        let max_age = TimeDelta::milliseconds((config.feed.max_age_s * 1000.0) as i64);
+        let max_age = TimeDelta::from_std(Duration::try_from_secs_f64(config.feed.max_age_s)?)?;
         let seat = |desk| Seat { desk, last_only: options.last, last: None, records: Vec::new(), ends: Vec::new() };
         Ok(Self {
             pool: ThreadPoolBuilder::new().num_threads(options.threads.map_or(0, NonZeroUsize::get)).build()?,

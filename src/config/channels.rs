@@ -1,7 +1,7 @@
 //! `[channels]`, and channel names that would mean two things.
 
 use std::{
-    collections::{BTreeMap, HashMap},
+    collections::{BTreeMap, HashMap, btree_map::Entry},
     mem,
 };
 
@@ -14,14 +14,15 @@ pub(super) fn read(mut section: Section<'_>, grid: &Grid, names: &GridNames<'_>)
     let known = known(grid, names, findings);
     let mut mapped = BTreeMap::new();
     for (channel, in_feed) in section.texts_by_path() {
-        if !known.contains_key(&channel) {
+        if known.contains_key(&channel) {
+            match mapped.entry(channel) {
+                Entry::Occupied(_) => findings.report(&in_feed.place, "is given twice; keep one"),
+                Entry::Vacant(free) => _ = free.insert(in_feed),
+            }
+        } else {
             let names = known.keys().map(|name| &**name).filter(|name| !name.starts_with('.'));
             let advice = findings.advice(&channel, names);
             findings.report(&in_feed.place, format!("no channel {}; {advice}", quoted(&channel)));
-        } else if mapped.contains_key(&channel) {
-            findings.report(&in_feed.place, "is given twice; keep one");
-        } else if !in_feed.text.is_empty() {
-            mapped.insert(channel, in_feed);
         }
     }
     // A channel that is not mapped keeps its own name in the feed.

@@ -30,8 +30,7 @@ impl<'a> GridNames<'a> {
     /// Notes a bus, which corridors may share where they agree on its voltage.
     pub fn bus(&mut self, name: &str, nominal_kv: f64, section: &Section<'_>) {
         let (first_kv, first) = self.buses.entry(name.to_owned()).or_insert((nominal_kv, section.place("bus")));
-        let differs = *first_kv < nominal_kv || *first_kv > nominal_kv;
-        if differs && !name.is_empty() {
+        if (*first_kv - nominal_kv).abs() > 0.0 && !name.is_empty() {
             let what = format!("bus {} is at {first_kv} kV in line {}", quoted(name), first.line);
             section.wrong("nominal_kv", format!("{what}; a bus that two corridors share has one voltage"));
         }

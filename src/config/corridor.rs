@@ -183,7 +183,9 @@ fn circuit<'a>(mut section: Section<'a>, buses: &Buses<'a>, names: &mut GridName
 fn between(section: &mut Section<'_>, buses: &Buses<'_>) -> Option<[usize; 2]> {
     let Some(named) = section.texts("between") else { return Some([FROM, TO]) };
     let [first, second] = &named[..] else {
-        section.wrong("between", "must name two buses of the corridor");
+        if named.iter().all(|placed| !placed.text.is_empty()) {
+            section.wrong("between", "must name two buses of the corridor");
+        }
         return None;
     };
     let (first, second) = (buses.find(first, section), buses.find(second, section));

@@ -20,7 +20,7 @@ pub(crate) fn read(path: &Path) -> Result<String, ConfigError> {
     }
     String::from_utf8(bytes).map_err(|error| {
         let good = &error.as_bytes()[..error.utf8_error().valid_up_to()];
-        let line = Some(1 + good.iter().filter(|byte| **byte == b'\n').count());
+        let line = Some(good.split(|byte| *byte == b'\n').count());
         ConfigError { line, ..failure("is not UTF-8 from here on; save it as UTF-8".to_owned()) }
     })
 }

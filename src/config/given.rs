@@ -1,8 +1,10 @@
+use std::ops::Range;
+
 use toml_edit::Value;
 
 use super::{
     findings::{Findings, Place},
-    limits::Limits,
+    limits::{ANY, Limits},
     wording::{is_unprintable, quoted, shown_number},
 };
 
@@ -47,7 +49,8 @@ impl<'a> Given<'a> {
         if limits.hold(number) {
             return number;
         }
-        self.wrong(format!("must be {limits}, not {}", shown_number(number)));
+        let wanted = if ANY.hold(number) { limits.to_string() } else { "a finite number of ordinary size".to_owned() };
+        self.wrong(format!("must be {wanted}, not {}", shown_number(number)));
         f64::NAN
     }
 
@@ -76,16 +79,23 @@ impl<'a> Given<'a> {
         Placed { text: self.text(), place: self.place.clone() }
     }
 
+    /// The place of one of several things in it.
+    pub fn element(&self, index: usize, span: Option<Range<usize>>) -> Place {
+        let line = self.findings.line(span).unwrap_or(self.place.line);
+        Place { line, key: format!("{}[{index}]", self.place.key) }
+    }
+
     /// The values of an array, each with its place.
     pub fn array(&self, wanted: &str) -> Option<Vec<Self>> {
         let Some(array) = self.value.and_then(Value::as_array) else {
             self.is_not(wanted);
             return None;
         };
-        let element = |(index, value): (usize, &'a Value)| {
-            let line = self.findings.line(value.span()).unwrap_or(self.place.line);
-            let place = Place { line, key: format!("{}[{index}]", self.place.key) };
-            Self { findings: self.findings, place, value: Some(value), kind: value.type_name() }
+        let element = |(index, value): (usize, &'a Value)| Self {
+            place: self.element(index, value.span()),
+            value: Some(value),
+            kind: value.type_name(),
+            ..*self
         };
         Some(array.iter().enumerate().map(element).collect())
     }

@@ -41,15 +41,18 @@ impl Limits {
     }
 
     pub fn hold(self, number: f64) -> bool {
-        (number > self.low || self.with_low && number == self.low)
-            && (number < self.high || self.with_high && number == self.high)
+        let Self { low, high, with_low, with_high } = self;
+        let is_low_enough = if with_high { number <= high } else { number < high };
+        is_low_enough && if with_low { number >= low } else { number > low }
     }
 }
 
 impl fmt::Display for Limits {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let low = if self.with_low { "at least" } else { "more than" };
-        let high = if self.with_high { "at most" } else { "less than" };
-        write!(f, "{low} {} and {high} {}", shown_number(self.low), shown_number(self.high))
+        let Self { low, high, with_low, with_high } = *self;
+        let low = (low > -LARGEST).then_some((if with_low { "at least" } else { "more than" }, low));
+        let high = (high < LARGEST).then_some((if with_high { "at most" } else { "less than" }, high));
+        let bounds = low.into_iter().chain(high).map(|(words, bound)| format!(" {words} {}", shown_number(bound)));
+        write!(f, "a number{}", bounds.collect::<Vec<_>>().join(" and"))
     }
 }

@@ -21,8 +21,10 @@ impl<'a> Names<'a> {
         // An empty name is reported already.
         let earlier = if name.is_empty() { None } else { self.taken.insert(name.to_owned(), (what, place.line)) };
         if let Some((what, line)) = earlier {
-            self.findings
-                .report(place, format!("{} names a {what} already (line {line}); choose another name", quoted(name)));
+            self.findings.report(
+                place,
+                format!("{} is taken by another {what} (line {line}); choose another name", quoted(name)),
+            );
         }
         earlier.is_none()
     }

@@ -1,4 +1,4 @@
-use std::ops::Range;
+use std::collections::HashSet;
 
 use toml_edit::{Array, Item, TableLike, Value};
 
@@ -82,7 +82,7 @@ impl<'a> Section<'a> {
     /// A number that must be there.
     pub fn required_number(&mut self, key: &'a str, limits: Limits) -> f64 {
         let number = self.number(key, limits);
-        self.needed(key, number, &format!("give a number that is {limits}"))
+        self.needed(key, number, &format!("give {limits}"))
     }
 
     /// A number that was asked for and must be there.
@@ -176,42 +176,41 @@ impl<'a> Section<'a> {
     /// An array of tables, of which at most so many are read.
     pub fn sections(&mut self, key: &'a str, most: usize) -> Vec<Self> {
         let Some(given) = self.take(key) else { return Vec::new() };
-        let mut tables: Vec<(Option<Range<usize>>, Option<&'a dyn TableLike>)> = match self
-            .items
-            .and_then(|items| items.get(key))
-        {
-            Some(Item::ArrayOfTables(tables)) => tables.iter().map(|table| (table.span(), Some(table as _))).collect(),
-            Some(Item::Value(Value::Array(array))) => {
-                let table = |value: &'a Value| value.as_inline_table().map(|table| table as _);
-                array.iter().map(|value| (value.span(), table(value))).collect()
-            }
-            _ => {
-                given.is_not("an array of tables, with double brackets");
-                return Vec::new();
-            }
+        let findings = self.findings;
+        let mut sections: Vec<Self> = if let Some(Item::ArrayOfTables(tables)) = self.items.and_then(|i| i.get(key)) {
+            let places = tables.iter().enumerate().map(|(index, table)| given.element(index, table.span()));
+            places.zip(tables).map(|(place, table)| Self::new(findings, place, Some(table))).collect()
+        } else {
+            let section = |element: Given<'a>| {
+                let table = element.value.and_then(Value::as_inline_table);
+                if table.is_none() {
+                    element.is_not("a table");
+                }
+                Self::new(findings, element.place, table.map(|table| table as _))
+            };
+            let elements = given.array("an array of tables, with double brackets").unwrap_or_default();
+            elements.into_iter().map(section).collect()
         };
-        if tables.len() > most {
-            self.wrong(key, format!("has {} entries; at most {most} are possible", tables.len()));
-            tables.truncate(most);
+        if sections.len() > most {
+            self.wrong(key, format!("has {} entries; at most {most} are possible", sections.len()));
+            sections.drain(most..).for_each(Self::abandon);
         }
-        let section = |(index, (span, items)): (usize, (_, Option<&'a dyn TableLike>))| {
-            let line = self.findings.line(span).unwrap_or(given.place.line);
-            let place = Place { line, key: format!("{}[{index}]", given.place.key) };
-            if items.is_none() {
-                self.findings.report(&place, "must be a table");
-            }
-            Self::new(self.findings, place, items)
-        };
-        tables.into_iter().enumerate().map(section).collect()
+        sections
+    }
+
+    /// Leaves it without a look at the rest of its keys.
+    pub fn abandon(mut self) {
+        self.items = None;
     }
 }
 
 impl Drop for Section<'_> {
     fn drop(&mut self) {
+        let asked: HashSet<_> = self.asked.iter().copied().collect();
         for (key, _) in self.items.into_iter().flat_map(TableLike::iter) {
             if original_of_duplicate(key).is_some() {
                 self.wrong(key, "is given twice; keep one");
-            } else if !self.asked.contains(&key) {
+            } else if !asked.contains(key) {
                 self.wrong(key, format!("unknown key; {}", self.findings.advice(key, self.asked.iter().copied())));
             }
         }

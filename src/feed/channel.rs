@@ -195,7 +195,7 @@ impl Channels {
 
     /// Whether a channel can have this value: finite, and not absurd by [`Point::plausible`].
     pub fn is_plausible(&self, slot: Slot, value: f64) -> bool {
-        self.plausible[slot].contains(&value) && (!self.is_status[slot] || value == 0.0 || value == 1.0)
+        self.plausible[slot].contains(&value) && (!self.is_status[slot] || [0.0, 1.0].contains(&value))
     }
 
     /// Whether the channel is a status, which has no age.

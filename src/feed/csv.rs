@@ -36,15 +36,13 @@ impl Rows {
     ) -> Result<Option<Frame>, LineError> {
         str::from_utf8(line).map_err(|_| LineError::NotUtf8)?;
         self.cells.split(line);
-        match &self.columns {
-            Some(columns) => row(columns, &self.cells, channels, draft, tally).map(Some),
-            None => {
-                let columns = header(&self.cells, channels);
-                let times = columns.iter().filter(|column| matches!(column, Column::Time)).count();
-                self.columns = Some(if times == 1 { columns } else { Vec::new() });
-                if times == 1 { Ok(None) } else { Err(LineError::Header) }
-            }
+        if let Some(columns) = &self.columns {
+            return row(columns, &self.cells, channels, draft, tally).map(Some);
         }
+        let columns = header(&self.cells, channels);
+        let times = columns.iter().filter(|column| matches!(column, Column::Time)).count();
+        self.columns = Some(if times == 1 { columns } else { Vec::new() });
+        if times == 1 { Ok(None) } else { Err(LineError::Header) }
     }
 }
 

@@ -14,9 +14,11 @@ pub enum Format {
 impl Format {
     /// By the file's ending, a compression's put aside.
     pub fn of(path: &Path) -> Self {
-        let name = path.to_string_lossy().to_ascii_lowercase();
-        let name = name.strip_suffix(".gz").or_else(|| name.strip_suffix(".zst")).unwrap_or(&name);
-        if name.ends_with(".csv") { Self::Csv } else { Self::JsonLines }
+        let ends_in =
+            |path: &Path, ending: &str| path.extension().is_some_and(|found| found.eq_ignore_ascii_case(ending));
+        let is_packed = ends_in(path, "gz") || ends_in(path, "zst");
+        let unpacked = if is_packed { &path.with_extension("") } else { path };
+        if ends_in(unpacked, "csv") { Self::Csv } else { Self::JsonLines }
     }
 }
 

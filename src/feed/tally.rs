@@ -62,44 +62,25 @@ impl Tally {
         self.trouble = Some(printable(&error.to_string()));
     }
 
-    /// Whether everything that came could be used.
-    pub fn is_clean(&self) -> bool {
-        *self == Self { frames: self.frames, ..Self::default() }
+    /// What could not be used, in one line each; nothing when all could.
+    pub fn findings(&self) -> Vec<String> {
+        let reasons = self.reasons.iter().map(|(line, reason)| format!("line {line}: {reason}"));
+        let counts = [
+            (self.malformed, "malformed lines skipped", such_as(reasons)),
+            (self.unknown.count, "values of unknown channels ignored", such_as(self.unknown.names.iter())),
+            (self.invalid.count, "values invalid", such_as(self.invalid.names.iter())),
+            (self.old, "frames dropped, older than one before them", String::new()),
+            (self.overrun, "frames dropped, more than could be used in time", String::new()),
+            (self.reconnects, "connections opened again", String::new()),
+        ];
+        let counted = counts.into_iter().filter(|(count, ..)| *count > 0);
+        counted.map(|(count, what, which)| format!("{count} {what}{which}")).chain(self.trouble.clone()).collect()
     }
 }
 
-/// One finding a line; nothing when clean.
-impl fmt::Display for Tally {
-    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let mut findings = Vec::new();
-        let mut count = |n: u64, what: &str| {
-            if n > 0 {
-                findings.push(format!("{n} {what}"));
-            }
-        };
-        count(self.malformed, &format!("malformed lines skipped{}", self.listed_reasons()));
-        count(self.unknown.count, &format!("values of unknown channels ignored ({})", self.unknown));
-        count(self.invalid.count, &format!("values invalid ({})", self.invalid));
-        count(self.old, "frames dropped: older than one before them");
-        count(self.overrun, "frames dropped: they came faster than they could be used");
-        count(self.reconnects, "reconnections");
-        findings.extend(self.trouble.clone());
-        f.write_str(&findings.join("\n"))
-    }
-}
-
-impl Tally {
-    fn listed_reasons(&self) -> String {
-        self.reasons.iter().map(|(line, reason)| format!("\n  line {line}: {reason}")).collect()
-    }
-}
-
-impl fmt::Display for Named {
-    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let names: Vec<&str> = self.names.iter().map(|name| &**name).collect();
-        f.write_str(&names.join(", "))?;
-        f.write_str(if names.len() == KEPT { ", …" } else { "" })
-    }
+fn such_as(some: impl Iterator<Item = impl ToString>) -> String {
+    let some: Vec<String> = some.map(|one| one.to_string()).collect();
+    if some.is_empty() { String::new() } else { format!(", such as {}", some.join("; ")) }
 }
 
 /// Text from outside, fit for a terminal: no control characters, bounded.

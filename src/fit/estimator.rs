@@ -20,6 +20,8 @@ const HALVINGS: usize = 8;
 const SETTLED: f64 = 1e-12;
 /// The same for a robust estimate, from which one more step follows.
 const SETTLED_ROBUST: f64 = 1e-5;
+/// Voltages a corridor may stand at, per unit.
+const POSSIBLE: std::ops::Range<f64> = 0.1..3.0;
 /// No step is longer, per unit and radians.
 const LONGEST_STEP: f64 = 0.5;
 
@@ -52,7 +54,7 @@ pub(super) struct Estimator {
 pub(super) enum Failure {
     /// The measurements do not fix the state.
     Open,
-    /// The iteration does not settle.
+    /// The iteration does not settle, or not on possible voltages.
     Restless,
 }
 
@@ -209,7 +211,7 @@ impl Estimator {
         let (mut before, mut previous, mut halvings) = (f64::INFINITY, 0.0, 0);
         for _ in 0..ITERATIONS {
             let sum = self.assemble(wiring, bend);
-            if sum.is_nan() || sum > before * (1.0 + 1e-9) + 1e-9 {
+            if !sum.is_finite() || sum > before * (1.0 + 1e-9) + 1e-9 {
                 halvings += 1;
                 if halvings > HALVINGS || before.is_infinite() {
                     return Err(Failure::Restless);
@@ -221,7 +223,7 @@ impl Estimator {
             before = sum;
             self.gain.factor()?;
             self.gain.solve(&mut self.step);
-            let mut size = self.step.iter().fold(0.0, |size: f64, s| size.max(s.abs()));
+            let mut size: f64 = self.step.iter().map(|s| s.abs()).sum();
             if size > LONGEST_STEP {
                 self.step.iter_mut().for_each(|s| *s *= LONGEST_STEP / size);
                 size = LONGEST_STEP;
@@ -229,7 +231,8 @@ impl Estimator {
             self.walk(1.0);
             if size * (size / previous).min(1.0) < settled {
                 let gained: f64 = self.step.iter().zip(&self.gain.b).map(|(s, b)| s * b).sum();
-                return Ok((sum - gained).max(0.0));
+                let possible = self.v.iter().all(|v| POSSIBLE.contains(v));
+                return if possible { Ok((sum - gained).max(0.0)) } else { Err(Failure::Restless) };
             }
             previous = size;
         }

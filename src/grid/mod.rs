@@ -312,3 +312,39 @@ pub fn banks_of(circuits: &[Circuit]) -> impl Iterator<Item = (BankIndex, &Bank)
         .enumerate()
         .flat_map(|(circuit, c)| c.banks.iter().enumerate().map(move |(bank, b)| (BankIndex { circuit, bank }, b)))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Kundur 1994, table 6.1, typical overhead lines: values from memory of the book, recomputed.
+    #[test]
+    fn surge_impedance_loading_of_typical_lines() {
+        for (kv, r_ohm_per_km, x_ohm_per_km, b_us_per_km, sil_mw) in [
+            (345.0, 0.037, 0.367, 4.518, 420.0),
+            (500.0, 0.028, 0.325, 5.200, 1000.0),
+            (765.0, 0.012, 0.329, 4.978, 2280.0),
+        ] {
+            let line = Line::PerKm { length_km: 100.0, r_ohm_per_km, x_ohm_per_km, b_us_per_km };
+            let computed_mw = line.surge_impedance_loading_mw(kv).expect("it has susceptance");
+            assert!((computed_mw / sil_mw - 1.0).abs() < 0.01, "{kv} kV: {computed_mw} MW");
+        }
+    }
+
+    #[test]
+    fn a_line_without_susceptance_has_no_surge_impedance() {
+        assert_eq!(Line::Totals { r_ohm: 0.0, x_ohm: 0.4, b_us: 0.0 }.surge_impedance_ohm(), None);
+    }
+
+    #[test]
+    fn short_circuit_power_and_reactance_are_each_other() {
+        let source = ConfiguredSource::from_short_circuit(400.0, 8000.0, 20.0);
+        assert_eq!((source.r_ohm, source.x_ohm), (1.0, 20.0));
+        assert_eq!(source.short_circuit_mva(400.0), Some(8000.0));
+    }
+
+    #[test]
+    fn thermal_power() {
+        assert!((three_phase_mva(400.0, 1000.0) - 692.82).abs() < 0.01);
+    }
+}

@@ -1,3 +1,5 @@
-//! Assessments for other programs and other people: one file a format.
+//! Assessments and configurations for other programs and other people: one file a format.
 
+pub mod check;
 pub mod jsonl;
+mod table;

@@ -2,6 +2,9 @@
 
 use tautline::feed::{Point, Snapshot};
 
+use rand::SeedableRng;
+use rand_chacha::ChaCha8Rng;
+
 use crate::world::{World, loaded_world, random_world};
 
 /// The measurement that a wrong reading must be traced to, or a state as good as without it.
@@ -73,4 +76,61 @@ fn without_angles_too() {
 fn nothing_is_named_in_a_good_frame() {
     let world = loaded_world();
     assert!(world.fit(&world.exact()).suspects.is_empty());
+}
+
+#[test]
+fn one_wrong_meter_in_noise_is_named_first_and_mostly_alone() {
+    let world = loaded_world();
+    let mut rng = ChaCha8Rng::seed_from_u64(11);
+    let (mut first, mut alone, mut all) = (0, 0, 0);
+    for _ in 0..40 {
+        let noisy = world.noisy(&mut rng);
+        for point in meters(&world).filter(|point| (0.1 * world.value(*point)).abs() > 12.0 * world.sigma(*point)) {
+            for factor in [0.9, 1.1, -1.0] {
+                if matches!(point, Point::Kv(_)) && factor < 0.0 {
+                    continue;
+                }
+                let mut snapshot = noisy.clone();
+                world.set(&mut snapshot, point, factor * world.value(point));
+                let fit = world.fit(&snapshot);
+                let suspects = world.names(&fit.suspects);
+                first += usize::from(suspects.first() == Some(&&*point.name(&world.corridor)));
+                alone += usize::from(suspects == [point.name(&world.corridor)]);
+                all += 1;
+            }
+        }
+    }
+    println!("{first} {alone} {all}");
+    assert_eq!(first, all);
+    assert!(alone as f64 > 0.97 * all as f64, "{alone} of {all}");
+}
+
+#[test]
+fn one_wrong_meter_beside_stations_is_named_first() {
+    let (mut first, mut alone, mut all) = (0, 0, 0);
+    for seed in 0..60 {
+        let world = random_world(seed, 1 + seed as usize % 3);
+        for point in meters(&world) {
+            for factor in [0.9, -1.0, 1000.0] {
+                if matches!(point, Point::Kv(_)) && !(0.5..1.5).contains(&factor) {
+                    continue;
+                }
+                let mut snapshot = world.exact();
+                world.set(&mut snapshot, point, factor * world.value(point));
+                let fit = world.fit(&snapshot);
+                if fit.suspects.is_empty() {
+                    continue;
+                }
+                let suspects = world.names(&fit.suspects);
+                first += usize::from(suspects.first() == Some(&&*point.name(&world.corridor)));
+                alone += usize::from(suspects == [point.name(&world.corridor)]);
+                all += 1;
+                if suspects != [point.name(&world.corridor)] {
+                    println!("seed {seed} {point:?} {factor} {suspects:?}");
+                }
+            }
+        }
+    }
+    println!("{first} {alone} {all}");
+    assert_eq!(alone, all);
 }

@@ -1,18 +1,17 @@
 //! Corridors whose true state is known, and what their meters would show.
 
-use std::{collections::BTreeMap, sync::Arc};
+use std::sync::Arc;
 
 use chrono::DateTime;
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, StandardNormal};
 use tautline::{
-    config::{Config, FeedSettings, MeasurementSettings},
+    config::{Config, MeasurementSettings},
     feed::{Channels, End, Point, Quality, Quantity, Reading, Snapshot},
     fit::{Fit, Fitter},
     grid::{
-        Bank, Bus, Circuit, ConfiguredSource, Corridor, FROM, Grid, Line, Load, Requirements, Side, SynchronismCheck,
-        TO,
+        Bank, Bus, Circuit, ConfiguredSource, Corridor, FROM, Line, Load, Requirements, Side, SynchronismCheck, TO,
     },
     network::{Admittance, Branch, C64, Reduced, Topology},
 };
@@ -156,8 +155,7 @@ impl World {
                 if !self.topology.closed[circuit] {
                     return 0.0;
                 }
-                let branch = Branch::of(&self.corridor.circuits[circuit], &self.topology.inserted[circuit]);
-                let current = branch.current(end, self.voltage[first], self.voltage[second]);
+                let current = self.branch(circuit).current(end, self.voltage[first], self.voltage[second]);
                 let at = if end == End::From { first } else { second };
                 part(self.voltage[at] * current.conj(), quantity)
             }
@@ -208,13 +206,21 @@ impl World {
 
     pub fn set(&self, snapshot: &mut Snapshot, point: Point, value: f64) {
         let reading = Reading { value, quality: Quality::Good };
-        snapshot.readings[self.channels.slot(&self.corridor, point)] = Some(reading);
+        snapshot.readings[self.slot(point)] = Some(reading);
     }
 
-    pub fn drop(&self, snapshot: &mut Snapshot, gone: impl Fn(Point) -> bool) {
+    pub fn drop(&self, snapshot: &mut Snapshot, mut gone: impl FnMut(Point) -> bool) {
         for point in self.points().into_iter().filter(|point| gone(*point)) {
-            snapshot.readings[self.channels.slot(&self.corridor, point)] = None;
+            snapshot.readings[self.slot(point)] = None;
         }
+    }
+
+    pub fn slot(&self, point: Point) -> usize {
+        self.channels.slot(&self.corridor, point)
+    }
+
+    pub fn branch(&self, circuit: usize) -> Branch {
+        Branch::of(&self.corridor.circuits[circuit], &self.topology.inserted[circuit])
     }
 
     pub fn names(&self, slots: &[usize]) -> Vec<&str> {
@@ -230,14 +236,11 @@ pub fn loaded_world() -> World {
     World::new(corridor, topology, terminals, vec![C64::new(0.005, -0.0007), C64::new(0.003, 0.0)])
 }
 
+/// A configuration of nothing but this corridor.
 pub fn config(corridor: &Corridor) -> Config {
-    Config {
-        grid: Grid { frequency_hz: 50.0, corridors: vec![corridor.clone()] },
-        time_zone: chrono_tz::UTC,
-        measurement: MeasurementSettings::default(),
-        feed: FeedSettings::default(),
-        channel_names: BTreeMap::new(),
-    }
+    let mut config = Config::parse(include_str!("../cases/corridor-01/config.toml"), "config.toml").unwrap();
+    config.grid.corridors = vec![corridor.clone()];
+    config
 }
 
 /// A load as configured.

@@ -1,0 +1,6 @@
+//! The margins against values from outside this project, and what must hold for any corridor.
+
+mod bench;
+mod cases;
+mod properties;
+mod published;

@@ -16,8 +16,8 @@ use tokio::{runtime, signal::ctrl_c};
 use super::Failure;
 use crate::{
     config::Config,
-    drill::{Drill, FrameText, Invented, Invention, Output, Scenario},
-    feed::Channels,
+    drill::{Drill, FrameText, Invented, Invention, Output, Scenario, Truth},
+    feed::{Channels, Frame},
 };
 
 /// Options of `drill`.
@@ -26,7 +26,7 @@ pub struct Options {
     /// The corridors (TOML).
     #[arg(long, value_name = "FILE", required_unless_present = "invent")]
     pub config: Option<PathBuf>,
-    /// What is true of them, and what happens (TOML).
+    /// What is true of them, and what happens (TOML; config/demo-day.toml is one).
     #[arg(long, value_name = "FILE", required_unless_present = "invent")]
     pub scenario: Option<PathBuf>,
     /// Where the frames go: a file (compressed where it ends in .gz or .zst), `tcp://host:port`,
@@ -62,19 +62,17 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let config = Config::load(config)?;
     let mut scenario = Scenario::load(scenario, &config)?;
     scenario.seed = options.seed.unwrap_or(scenario.seed);
-    let mut truth = options.truth.as_deref().map(Output::open).transpose()?;
-    let mut output = Output::open(&options.output)?;
+    let truth = options.truth.as_deref().map(Output::open).transpose()?;
+    let output = Output::open(&options.output)?;
     if options.real_time {
         scenario.start = Utc::now().trunc_subsecs(0);
     }
-    match play(&config, &scenario, options.real_time, &mut output, truth.as_mut()) {
+    let mut record = Record { output, truth, line: Vec::new() };
+    match play(&config, &scenario, options.real_time, &mut record).and_then(|()| record.finish()) {
         // Whoever reads has had enough.
-        Err(error) if error.kind() == ErrorKind::BrokenPipe => return Ok(()),
-        played => played?,
+        Err(error) if error.kind() == ErrorKind::BrokenPipe => Ok(()),
+        played => Ok(played?),
     }
-    output.finish()?;
-    truth.map_or(Ok(()), Output::finish)?;
-    Ok(())
 }
 
 /// Sends a message when the user has had enough, so that what is written so far can be ended well.
@@ -103,40 +101,60 @@ fn invent(options: &Options, folder: &Path) -> Result<(), Failure> {
     Ok(())
 }
 
-fn play(
-    config: &Config,
-    scenario: &Scenario,
-    real_time: bool,
-    output: &mut Output,
-    mut truth: Option<&mut Output>,
-) -> io::Result<()> {
+fn play(config: &Config, scenario: &Scenario, real_time: bool, record: &mut Record) -> io::Result<()> {
     let channels = Channels::new(config);
     let text = FrameText::new(config, &channels);
     let mut drill = Drill::new(config, &channels, scenario);
     let (listener, interrupt) = mpsc::channel();
     tell_of_interrupt(listener.clone());
     let began = Instant::now();
-    let mut line = Vec::new();
     while let Some(frame) = drill.next() {
         let due = if real_time { (frame.time - scenario.start).to_std().unwrap_or_default() } else { Duration::ZERO };
         if interrupt.recv_timeout(due.saturating_sub(began.elapsed())).is_ok() {
             break;
         }
-        line.clear();
-        text.write(&frame, &mut line)?;
-        output.line(&line)?;
-        for fact in drill.take_truth() {
-            if let Some(truth) = &mut truth {
-                line.clear();
-                serde_json::to_writer(&mut line, &fact)?;
-                line.push(b'\n');
-                truth.line(&line)?;
-            }
-        }
+        record.frame(&frame, &text)?;
+        record.truth(drill.take_truth())?;
         if real_time {
-            output.flush()?;
-            truth.as_mut().map_or(Ok(()), |truth| truth.flush())?;
+            record.flush()?;
         }
     }
-    Ok(())
+    // What became true after the last frame.
+    record.truth(drill.take_truth())
+}
+
+/// Where a drill is written down.
+struct Record {
+    output: Output,
+    truth: Option<Output>,
+    line: Vec<u8>,
+}
+
+impl Record {
+    fn frame(&mut self, frame: &Frame, text: &FrameText) -> io::Result<()> {
+        self.line.clear();
+        text.write(frame, &mut self.line)?;
+        self.output.line(&self.line)
+    }
+
+    fn truth(&mut self, facts: Vec<Truth>) -> io::Result<()> {
+        let Some(output) = &mut self.truth else { return Ok(()) };
+        for fact in facts {
+            self.line.clear();
+            serde_json::to_writer(&mut self.line, &fact)?;
+            self.line.push(b'\n');
+            output.line(&self.line)?;
+        }
+        Ok(())
+    }
+
+    fn flush(&mut self) -> io::Result<()> {
+        self.output.flush()?;
+        self.truth.as_mut().map_or(Ok(()), Output::flush)
+    }
+
+    fn finish(self) -> io::Result<()> {
+        self.output.finish()?;
+        self.truth.map_or(Ok(()), Output::finish)
+    }
 }

@@ -69,11 +69,6 @@ impl<'a> Section<'a> {
         Some(Given { findings: self.findings, place: self.place(key), value: item.as_value(), kind: item.type_name() })
     }
 
-    /// Lets the keys not asked for pass: without its name, nobody can tell what belongs into it.
-    pub fn abandon(&mut self) {
-        self.items = None;
-    }
-
     /// A number; NaN where something else stands there.
     pub fn number(&mut self, key: &'a str, limits: Limits) -> Option<f64> {
         Some(self.take(key)?.number(limits))

@@ -75,6 +75,10 @@ impl CorridorFeed {
         }
         let values = self.waiting.pop_front().unwrap_or_default();
         for (meter, value) in self.meters.iter_mut().zip(values) {
+            if let Some(says) = meter.turn(time_s) {
+                let channel = meter.point.name(&self.world.corridor).into();
+                truth.push((time_s, What::Meter { channel, says }));
+            }
             if let Some(value) = meter.read(value, time_s, &mut self.noise) {
                 readings.push((meter.slot, Reading { value, quality: Quality::Good }));
             }

@@ -4,7 +4,7 @@ use rand::RngExt;
 use rand_chacha::ChaCha8Rng;
 use rand_distr::StandardNormal;
 
-use super::{CorridorTruth, Metering, PerKind, Span};
+use super::{CorridorTruth, Metering, PerKind, Says, Span};
 use crate::feed::{Point, Quantity, Slot};
 
 /// How many different ages the values of a frame have where there is skew.
@@ -21,6 +21,7 @@ pub(super) struct Meter {
     falsehoods: Vec<(Span, f64, f64)>,
     gaps: Vec<Span>,
     reported: Option<f64>,
+    said: Says,
 }
 
 /// What a measurement (not a status) is subject to.
@@ -55,7 +56,20 @@ impl Meter {
                 .collect(),
             gaps: truth.gaps.iter().filter(|gap| hides(&gap.points)).map(|gap| gap.span).collect(),
             reported: None,
+            said: Says::Truth,
         }
+    }
+
+    /// What it says from now on, when that is not what it said before.
+    pub fn turn(&mut self, time_s: f64) -> Option<Says> {
+        let says = if self.gaps.iter().any(|gap| gap.holds(time_s)) {
+            Says::Nothing
+        } else if self.falsehoods.iter().any(|(span, ..)| span.holds(time_s)) {
+            Says::Falsehood
+        } else {
+            Says::Truth
+        };
+        (std::mem::replace(&mut self.said, says) != says).then_some(says)
     }
 
     /// What a frame says of a true value; `None` in a gap.
@@ -74,7 +88,7 @@ impl Meter {
             value = quantised(value, resolution);
         }
         self.reported = Some(value);
-        (!self.gaps.iter().any(|gap| gap.holds(time_s))).then_some(value)
+        (self.said != Says::Nothing).then_some(value)
     }
 }
 

@@ -4,6 +4,11 @@
 //! for the same seed. Each corridor is a network between two sources E∠δ behind Z; its machines are the classical
 //! two-machine equivalent, damped. A source has one face here: a drill knows no difference between the settled
 //! impedance and that of the first swing.
+//!
+//! A scenario file says everything that can be said like this:
+//! ```toml
+#![doc = include_str!("keys.toml")]
+//! ```
 
 mod agenda;
 mod chance;
@@ -31,4 +36,4 @@ pub use scenario::{
 };
 pub use shape::Shape;
 pub use swing::{Inertia, Swing};
-pub use truth::{Source, Truth, What};
+pub use truth::{Says, Source, Truth, What};

@@ -2,7 +2,7 @@
 
 use crate::margin::PowerAngle;
 
-/// Longest step of the integration, s: about a two-hundredth of the fastest swing of long corridors.
+/// Longest step of the integration, s: about a two-hundredth of the period of common swings.
 const LONGEST_STEP_S: f64 = 0.004;
 
 /// The angle between the sides and how fast it opens.
@@ -33,6 +33,11 @@ impl Inertia {
             [one, other] => one.or(other)?,
         };
         Some(Self { m: joint_mws / (std::f64::consts::PI * frequency_hz), decay_s })
+    }
+
+    /// Angular frequency of small swings about a curve's zero, rad/s: √(D/M) (Kundur 1994, §12.3).
+    pub fn pace(self, curve: &PowerAngle) -> f64 {
+        (curve.amplitude_mw / self.m).sqrt()
     }
 }
 

@@ -66,8 +66,28 @@ pub enum What {
         /// Its name.
         name: Arc<str>,
     },
+    /// A channel's meter began to say something else than before.
+    Meter {
+        /// The channel's default name.
+        channel: Arc<str>,
+        /// What it says.
+        says: Says,
+    },
     /// The two sides fell out of step, and every circuit opened.
     OutOfStep,
+}
+
+/// What a meter says.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Says {
+    /// The truth, but for noise and the like.
+    #[default]
+    Truth,
+    /// Something else.
+    Falsehood,
+    /// Nothing: its channel is missing.
+    Nothing,
 }
 
 /// A source as it really is.

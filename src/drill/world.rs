@@ -23,6 +23,9 @@ use crate::{
 /// A disturbance is swung out after so many times the decay: less than a thousandth of it is left.
 const DECAYS_TO_REST: f64 = 7.0;
 
+/// Swings between grids are ten times slower; machines so light are taken to follow at once.
+const FASTEST_RAD_PER_S: f64 = 100.0;
+
 /// A corridor with everything that moves in it.
 #[derive(Debug, Clone)]
 pub(super) struct World {
@@ -47,6 +50,7 @@ pub(super) struct World {
     swinging_until_s: f64,
 
     plant: Plant,
+    joined: bool,
     curve: PowerAngle,
     pub(super) voltages_kv: Vec<C64>,
     log: Vec<(f64, What)>,
@@ -65,6 +69,7 @@ impl World {
             random: stream(seed, truth.corridor, Purpose::Wander),
             now_s: 0.0,
             plant: Plant::new(corridor, &topology, None),
+            joined: true,
             topology,
             fault: None,
             z_ohm: impedances(truth),
@@ -81,6 +86,8 @@ impl World {
             truth: truth.clone(),
         };
         world.plan_ahead();
+        world.solve();
+        world.inertia = world.inertia.filter(|inertia| inertia.pace(&world.curve) < FASTEST_RAD_PER_S);
         world.solve();
         world
     }
@@ -135,6 +142,7 @@ impl World {
     /// Another topology or fault.
     pub(super) fn switch(&mut self) {
         self.plant = Plant::new(&self.corridor, &self.topology, self.fault);
+        self.joined = self.topology.joins_terminals(&self.corridor);
     }
 
     /// Lets the machines swing from here.
@@ -146,7 +154,7 @@ impl World {
     /// Where nothing swings, the angle stands where the machines' power goes through.
     fn rest(&mut self) {
         let swings = self.inertia.is_some() && self.now_s < self.swinging_until_s;
-        if swings || !self.topology.joins_terminals(&self.corridor) {
+        if swings || !self.joined || self.fault.is_some() {
             return;
         }
         let sine = (self.p_m_mw - self.curve.mean_mw) / self.curve.amplitude_mw;
@@ -160,10 +168,9 @@ impl World {
     }
 
     fn swing_to(&mut self, to_s: f64) {
-        let time_s = to_s - self.now_s;
-        let swings = self.now_s < self.swinging_until_s && self.topology.joins_terminals(&self.corridor);
+        let time_s = to_s.min(self.swinging_until_s) - self.now_s;
         self.now_s = to_s;
-        let Some(inertia) = self.inertia.filter(|_| swings && time_s > 0.0) else { return };
+        let Some(inertia) = self.inertia.filter(|_| self.joined && time_s > 0.0) else { return };
         self.swing.advance(&self.curve, self.p_m_mw, inertia, time_s);
         // Half a turn past the curve's zero is past every tipping point.
         if (self.swing.angle_rad - self.curve.shift_rad).abs() > std::f64::consts::PI {

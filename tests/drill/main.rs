@@ -31,7 +31,11 @@ impl Played {
 
 /// Plays a scenario that begins at midnight.
 fn play(scenario: &str) -> (Vec<Played>, Vec<Truth>) {
-    let config = Config::parse(CONFIG, "config.toml").unwrap();
+    play_with(CONFIG, scenario)
+}
+
+fn play_with(config: &str, scenario: &str) -> (Vec<Played>, Vec<Truth>) {
+    let config = Config::parse(config, "config.toml").unwrap();
     let head = "start = 2031-03-14T00:00:00Z\n";
     let scenario = Scenario::parse(&format!("{head}{scenario}"), "scenario.toml", &config).unwrap();
     let channels = Channels::new(&config);

@@ -1,5 +1,7 @@
 //! What meters make of the truth.
 
+use tautline::drill::{Says, What};
+
 use super::{Played, play};
 
 fn series(frames: &[Played], name: &str) -> Vec<f64> {
@@ -91,7 +93,11 @@ fn false_meters_lie_for_their_time() {
     let lies = "[[false_meter]]\nchannel = \"HP1.from.mw\"\nfrom = 100\nuntil = 200\nscale = -1\n\
                 [[false_meter]]\nchannel = \"Hask.kv\"\nfrom = 100\nuntil = 200\nscale = 1.1\noffset = 2\n\
                 [[false_meter]]\nchannel = \"HP2.closed\"\nfrom = 100\nuntil = 200\nvalue = 0\n";
-    let (frames, _) = play(&scenario("", lies));
+    let (frames, truth) = play(&scenario("", lies));
+    let turns = truth.iter().filter(|fact| matches!(fact.what, What::Meter { .. })).collect::<Vec<_>>();
+    assert_eq!(turns.len(), 6);
+    assert!(turns[..3].iter().all(|fact| matches!(fact.what, What::Meter { says: Says::Falsehood, .. })));
+    assert!(turns[3..].iter().all(|fact| matches!(fact.what, What::Meter { says: Says::Truth, .. })));
     let (honest, lying) = (&frames[99], &frames[150]);
     assert!((lying.get("HP1.from.mw") + honest.get("HP1.from.mw")).abs() < 0.01);
     assert!((lying.get("Hask.kv") - 1.1 * honest.get("Hask.kv") - 2.0).abs() < 0.01);
@@ -106,7 +112,7 @@ fn random_steps_come_at_their_rate_and_stay_near_the_plan() {
     let (_, truth) = play(&scenario("", sides).replace("hours = 1\ninterval_s = 1", "hours = 24\ninterval_s = 60"));
     let (mut alone, mut both, mut offset) = (0, 0, 0.0_f64);
     for fact in &truth {
-        if let tautline::drill::What::Step { kv: [from, to] } = fact.what {
+        if let What::Step { kv: [from, to] } = fact.what {
             if to == 0.0 {
                 alone += 1;
                 assert!((1.5..=5.0).contains(&from.abs()));

@@ -3,7 +3,7 @@
 use nalgebra::Complex;
 use tautline::drill::{Source, Truth, What};
 
-use super::{Played, play};
+use super::{CONFIG, Played, play, play_with};
 
 type C64 = Complex<f64>;
 
@@ -155,6 +155,21 @@ fn a_fault_that_lasts_too_long_ends_out_of_step() {
     assert!(truth.iter().any(|fact| fact.what == What::OutOfStep));
     let last = frames.last().unwrap();
     assert!(last.get("HP1.closed") == 0.0 && last.get("HP1.from.mw") == 0.0 && last.get("Hask.kv") > 300.0);
+}
+
+#[test]
+fn between_infinite_buses_the_angle_only_follows() {
+    let config = CONFIG.replace("stored_energy_mws = 20000\n", "");
+    let day = format!(
+        "hours = 0.02\ninterval_s = 1\n{EXACT}[[corridor]]\nname = \"Olt-Ume\"\nreports_angles = true\ntransfer_mw = 200\n\
+         [[event]]\nat = 10\nfault = \"OM1\"\nplace = 0.5\n"
+    );
+    let (frames, truth) = play_with(&config, &day);
+    assert!(truth.iter().all(|fact| fact.what != What::OutOfStep));
+    let sent = |frame: &Played| frame.get("OM1.from.mw") + frame.get("OM2.from.mw");
+    assert!((sent(&frames[9]) - 200.0).abs() < 1e-6);
+    assert!((sent(&frames[11]) - sent(&frames[60])).abs() < 1e-9);
+    assert!((sent(&frames[60]) - 200.0).abs() < 10.0);
 }
 
 #[test]

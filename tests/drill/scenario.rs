@@ -119,6 +119,15 @@ fn corridors_with_a_common_bus_are_not_played_together() {
 }
 
 #[test]
+fn the_documented_keys_are_the_keys() {
+    let config = Config::parse(CONFIG, "config.toml").unwrap();
+    let scenario = Scenario::parse(include_str!("../../src/drill/keys.toml"), "keys.toml", &config).unwrap();
+    assert_eq!(scenario.corridors.len(), 2);
+    assert_eq!(scenario.corridors[0].events.len(), 6);
+    assert_eq!(scenario.corridors[1].gaps.len(), 2);
+}
+
+#[test]
 fn whatever_is_made_up_can_be_played() {
     for seed in 0..200 {
         let invention = Invention {

@@ -10,7 +10,7 @@ use crate::{
     },
     drill::{CorridorTruth, Dispatch, LoadTruth, RandomSteps, Shape, SideTruth, Wander, plan::Plan},
     feed::Point,
-    grid::{BankIndex, Corridor, Load},
+    grid::{BankIndex, Corridor, FROM, Load, TO},
 };
 
 /// Voltage behind an impedance that the scenario does not give, of nominal.
@@ -34,14 +34,14 @@ pub(super) struct Cast<'a> {
     pub findings: &'a Findings,
     pub duration_s: f64,
     truths: Vec<CorridorTruth>,
-    /// Place in `truths` and what it is, by name.
-    targets: HashMap<&'a str, (usize, Target)>,
+    /// Name, place in `truths`, and what it is; a bus and a circuit may have the same name.
+    targets: Vec<(&'a str, usize, Target)>,
     channels: HashMap<String, (usize, Point)>,
 }
 
 impl<'a> Cast<'a> {
     pub fn new(config: &'a Config, findings: &'a Findings, duration_s: f64) -> Self {
-        Self { config, findings, duration_s, truths: Vec::new(), targets: HashMap::new(), channels: HashMap::new() }
+        Self { config, findings, duration_s, truths: Vec::new(), targets: Vec::new(), channels: HashMap::new() }
     }
 
     /// The corridors with their events in order.
@@ -73,12 +73,10 @@ impl<'a> Cast<'a> {
         what: &str,
         pick: impl Fn(Target) -> Option<T>,
     ) -> Option<(usize, T)> {
-        let found = self.targets.get(name).and_then(|(place, target)| Some((*place, pick(*target)?)));
+        let possible = || self.targets.iter().filter_map(|(name, place, target)| Some((*name, *place, pick(*target)?)));
+        let found = possible().find(|(possible, ..)| *possible == name).map(|(_, place, picked)| (place, picked));
         if found.is_none() && !name.is_empty() {
-            let mut candidates: Vec<_> =
-                self.targets.iter().filter(|(_, (_, target))| pick(*target).is_some()).map(|(name, _)| *name).collect();
-            candidates.sort_unstable();
-            let advice = self.findings.advice(name, candidates);
+            let advice = self.findings.advice(name, possible().map(|(name, ..)| name));
             section.wrong(key, format!("{} is no {what} of the scenario's corridors; {advice}", quoted(name)));
         }
         found
@@ -119,16 +117,14 @@ impl<'a> Cast<'a> {
 
     fn enlist(&mut self, section: &Section<'a>, corridor: &'a Corridor) {
         let place = self.truths.len();
-        for (side, bus) in corridor.buses.iter().enumerate() {
-            if side < corridor.sides.len() {
-                self.targets.insert(&bus.name, (place, Target::Side(side)));
-            }
+        for side in [FROM, TO] {
+            self.targets.push((&corridor.buses[side].name, place, Target::Side(side)));
         }
         for (index, circuit) in corridor.circuits.iter().enumerate() {
-            self.targets.insert(&circuit.name, (place, Target::Circuit(index)));
+            self.targets.push((&circuit.name, place, Target::Circuit(index)));
         }
         for (index, bank) in corridor.banks() {
-            self.targets.insert(&bank.name, (place, Target::Bank(index)));
+            self.targets.push((&bank.name, place, Target::Bank(index)));
         }
         for point in Point::of(corridor) {
             if let Some((other, _)) = self.channels.insert(point.name(corridor), (place, point)) {

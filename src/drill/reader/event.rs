@@ -64,7 +64,7 @@ fn action<'a>(section: &mut Section<'a>, cast: &Cast<'a>, key: &str, name: &str)
 }
 
 fn change(section: &mut Section<'_>) -> Change {
-    let kv = section.number("kv", ANY);
+    let kv = section.number("kv", Limits::at_least(-1000.0).up_to(1000.0));
     let percent = section.number("pct", Limits::above(-100.0).up_to(100.0));
     match (kv, percent) {
         (Some(kv), None) => Change::Kv(kv),

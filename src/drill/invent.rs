@@ -135,7 +135,7 @@ impl InventedCorridor {
                 r_ohm: x_ohm * uniform(random, 0.05, 0.1),
                 x_ohm,
                 configured_x_ohm: x_ohm * uniform(random, 1.0 - prior_error, 1.0 + prior_error),
-                e_kv: uniform(random, 425.0, 440.0),
+                e_kv: uniform(random, 406.0, 420.0),
                 stored_energy_mws: uniform(random, 30_000.0, 150_000.0),
                 load_mw: uniform(random, 200.0, 1200.0),
             }
@@ -157,7 +157,7 @@ impl InventedCorridor {
         let _ = write!(config, "\n[[corridor]]\nname = \"{number}\"\nthin_mw = 150\n");
         for ((key, bus), side) in ["from", "to"].into_iter().zip(self.buses()).zip(&self.sides) {
             let InventedSide { configured_x_ohm: x, stored_energy_mws, load_mw, .. } = side;
-            let (r, mvar) = (0.07 * x, 0.2 * load_mw);
+            let (r, mvar) = (0.07 * x, 0.25 * load_mw);
             let _ = write!(
                 config,
                 "[corridor.{key}]\nbus = \"{bus}\"\nnominal_kv = {NOMINAL_KV}\nmin_kv = 360\n\

@@ -1,8 +1,8 @@
 //! What a corridor was planned to be at a time: complete, undisturbed, delivering what it is told to.
 
-use super::{CorridorTruth, Dispatch, plant::Plant};
+use super::{CorridorTruth, Dispatch, LoadTruth, plant::Plant};
 use crate::{
-    grid::{Bus, Corridor},
+    grid::Corridor,
     margin::PowerAngle,
     network::{C64, Topology},
 };
@@ -24,7 +24,7 @@ impl Plan {
     pub fn new(corridor: &Corridor, truth: &CorridorTruth) -> Self {
         Self {
             plant: Plant::new(corridor, &Topology::complete(corridor), None),
-            nominal_kv: corridor.buses.iter().map(|bus: &Bus| bus.nominal_kv).collect(),
+            nominal_kv: corridor.buses.iter().map(|bus| bus.nominal_kv).collect(),
             share_from: share_from(truth),
             load_s: Vec::new(),
             e_kv: [0.0; 2],
@@ -36,9 +36,8 @@ impl Plan {
         self.e_kv = [0, 1].map(|side| truth.sides[side].e_kv.at(time_s));
         self.load_s.clear();
         self.load_s.extend(truth.loads.iter().zip(&self.nominal_kv).map(|(load, kv)| {
-            let drawn = |load: &super::LoadTruth| {
-                C64::new(load.nominal.mw, -load.nominal.mvar) * load.shape.at(time_s) / (kv * kv)
-            };
+            let drawn =
+                |load: &LoadTruth| C64::new(load.nominal.mw, -load.nominal.mvar) * load.shape.at(time_s) / (kv * kv);
             load.as_ref().map_or(C64::new(0.0, 0.0), drawn)
         }));
         self.plant.attach(&self.load_s, impedances(truth));

@@ -121,13 +121,13 @@ impl Engine {
         let mut outages = Vec::with_capacity(set.outages.len());
         for case in &set.outages {
             outages.push(match Outage::new(corridor, exporter, case, &stress) {
-                Some(outage) => outage.record(angle, &point, outage.limits()),
+                Some(outage) => outage.record(angle, &point, outage.limits(angle)),
                 None => separated(case.name.clone(), corridor),
             });
         }
         let intact = scene.intact(&stress, angle);
         let tightest = tightest(outages.iter().map(|outage| outage.limit_mw), &intact.limit_mw, &stress);
-        let variance = scene.variance(z, &tightest, now.covariance);
+        let variance = scene.variance(&stress, angle, &tightest, now.covariance);
         let reclose = reclose::judge(corridor, now.topology, &scene.view(&stress), &stress, angle, now.voltage);
         let judgement = Judgement {
             exporter,
@@ -228,7 +228,7 @@ impl Engine {
             let stress = Stress::new(&set.present, stress.sources, stress.machine, loads[0]);
             let headroom_mw = stress.settled.curve.rising_rad(p_m_mw).map(|angle| {
                 let scene = Scene { corridor, set, machine: stress.machine, loads, terminals: [C64::default(); 2] };
-                scene.tightest(&stress).limit_mw - stress.transfer_at(angle)
+                scene.tightest(&stress, angle).limit_mw - stress.transfer_at(angle)
             });
             actions.push(Action { action, headroom_mw });
         }
@@ -294,35 +294,49 @@ impl Scene<'_> {
         }
     }
 
-    fn tightest(&self, stress: &Stress) -> Tightest {
+    fn tightest(&self, stress: &Stress, now_rad: f64) -> Tightest {
         let limits = self.set.outages.iter().map(|case| {
             Outage::new(self.corridor, self.set.exporter, case, stress)
-                .map_or_else(|| separation(self.corridor), |outage| outage.limits())
+                .map_or_else(|| separation(self.corridor), |outage| outage.limits(now_rad))
         });
         tightest(limits, &self.intact_limits(stress), stress)
     }
 
     /// gᵀ C g with g the gradient of the tightest limit by R and X of both sides; the transfer is measured.
-    fn variance(&self, z: [C64; 2], tightest: &Tightest, covariance: &Matrix4<f64>) -> f64 {
+    fn variance(&self, base: &Stress, now_rad: f64, tightest: &Tightest, covariance: &Matrix4<f64>) -> f64 {
         const STEP: f64 = 1e-3;
+        let crossing = match (tightest.outage, tightest.criterion) {
+            (Some(index), Criterion::Area) => self.crossing(base, index, now_rad),
+            _ => None,
+        };
         let mut gradient = nalgebra::Vector4::zeros();
         for (parameter, slope) in gradient.iter_mut().enumerate() {
-            let side = parameter / 2;
             if covariance[(parameter, parameter)] <= 0.0 {
                 continue;
             }
-            let place = usize::from(side != self.set.exporter);
-            let step = STEP * z[place].norm();
-            let mut moved = z;
-            moved[place] += if parameter % 2 == 0 { C64::new(step, 0.0) } else { C64::new(0.0, step) };
-            let (stress, _) = self.stress(moved);
-            *slope = self.limit(&stress, tightest).map_or(0.0, |limit_mw| (limit_mw - tightest.limit_mw) / step);
+            let side = usize::from(parameter / 2 != self.set.exporter);
+            let mut z = base.sources.z;
+            let step = STEP * z[side].norm();
+            z[side] += if parameter % 2 == 0 { C64::new(step, 0.0) } else { C64::new(0.0, step) };
+            let (stress, _) = self.stress(z);
+            let limit_mw = self.limit(&stress, tightest, crossing.as_ref());
+            *slope = limit_mw.map_or(0.0, |limit_mw| (limit_mw - tightest.limit_mw) / step);
         }
         (gradient.transpose() * covariance * gradient)[0]
     }
 
-    /// The limit that was the tightest one, with other sources.
-    fn limit(&self, stress: &Stress, tightest: &Tightest) -> Option<f64> {
+    /// Where an outage's area margin crosses the required one, and how steeply.
+    fn crossing(&self, stress: &Stress, outage: usize, now_rad: f64) -> Option<Crossing> {
+        const STEP_RAD: f64 = 1e-4;
+        let outage = Outage::new(self.corridor, self.set.exporter, &self.set.outages[outage], stress)?;
+        let angle_rad = outage.area_limit_rad(now_rad)?;
+        let excess = outage.area_excess(angle_rad);
+        let slope = (excess - outage.area_excess(angle_rad - STEP_RAD)) / STEP_RAD;
+        (slope < 0.0).then_some(Crossing { angle_rad, excess, slope })
+    }
+
+    /// The limit that was the tightest one, with slightly other sources.
+    fn limit(&self, stress: &Stress, tightest: &Tightest, crossing: Option<&Crossing>) -> Option<f64> {
         let Some(index) = tightest.outage else {
             let limits = self.intact_limits(stress);
             return match tightest.criterion {
@@ -334,12 +348,24 @@ impl Scene<'_> {
         let outage = Outage::new(self.corridor, self.set.exporter, &self.set.outages[index], stress)?;
         match tightest.criterion {
             Criterion::Angle => outage.angle_limit(),
-            Criterion::Area => outage.area_limit(),
+            Criterion::Area => crossing.map(|crossing| {
+                // The implicit function theorem: the crossing moves by the change of the excess over its slope.
+                let moved = (outage.area_excess(crossing.angle_rad) - crossing.excess) / crossing.slope;
+                stress.transfer_at(crossing.angle_rad - moved)
+            }),
             Criterion::Loading => outage.loading_limit(),
             Criterion::Voltage => outage.voltage_limit(),
             Criterion::Separation => None,
         }
     }
+}
+
+/// A point where an excess falls through zero.
+#[derive(Debug, Clone, Copy)]
+struct Crossing {
+    angle_rad: f64,
+    excess: f64,
+    slope: f64,
 }
 
 fn tightest(outages: impl Iterator<Item = OutageLimits>, intact: &IntactLimits, stress: &Stress) -> Tightest {

@@ -53,7 +53,7 @@ impl Face {
         Kernel {
             exporter: machine.exporter_share * self.y.m11.re,
             importer: machine.importer_share * self.y.m22.re,
-            mutual: cos.hypot(b12),
+            mutual: (cos * cos + b12 * b12).sqrt(),
             shift_rad: (-cos).atan2(b12),
         }
     }

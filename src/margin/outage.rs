@@ -17,7 +17,7 @@ use crate::{
 
 /// Beyond this a critical clearing time is not looked for, s.
 const LONGEST_FAULT_S: f64 = 2.0;
-const ANGLE_TOLERANCE_RAD: f64 = 1e-9;
+const ANGLE_TOLERANCE_RAD: f64 = 1e-8;
 
 /// The network after an outage, with the settled sources and those of the swing.
 pub(super) struct Outage<'a> {
@@ -114,11 +114,11 @@ impl<'a> Outage<'a> {
         }
     }
 
-    /// The transfers at which each criterion first stops holding.
-    pub fn limits(&self) -> OutageLimits {
+    /// The transfers at which each criterion first stops holding; `now_rad` is the present internal angle.
+    pub fn limits(&self, now_rad: f64) -> OutageLimits {
         OutageLimits {
             angle: self.angle_limit(),
-            area: self.area_limit(),
+            area: self.area_limit_rad(now_rad).map(|angle| self.stress.transfer_at(angle)),
             loading: self.loading_limit(),
             voltage: self.voltage_limit(),
             separation: None,
@@ -150,26 +150,23 @@ impl<'a> Outage<'a> {
         self.stress.transfer_for(curve.at(crossing.min(curve.peak_rad())))
     }
 
-    /// The transfer at which the area margin falls below the required one. On the way up the margin rises to 1, where
-    /// the fault neither speeds up nor brakes, and falls from there: where it holds at the start it fails only once.
-    pub fn area_limit(&self) -> Option<f64> {
+    /// The internal angle at which the area margin falls below the required one. On the way up the margin rises to 1,
+    /// where the fault neither speeds up nor brakes, and falls from there: where it holds at the start it fails once.
+    /// `known_rad` is any angle on the way that halves the work.
+    pub fn area_limit_rad(&self, known_rad: f64) -> Option<f64> {
         let &Stress { start_rad, end_rad, .. } = self.stress;
-        let at_start = self.area_excess(start_rad);
-        if at_start < 0.0 {
-            return Some(self.stress.transfer_at(start_rad));
+        let known_rad = known_rad.clamp(start_rad, end_rad);
+        let [start, known] = [start_rad, known_rad].map(|angle| (angle, self.area_excess(angle)));
+        if start.1 < 0.0 {
+            return Some(start_rad);
         }
-        let at_end = self.area_excess(end_rad);
-        if at_end >= 0.0 {
-            return None;
-        }
-        let angle = root::bracketed((start_rad, at_start), (end_rad, at_end), ANGLE_TOLERANCE_RAD, |angle| {
-            self.area_excess(angle)
-        });
-        Some(self.stress.transfer_at(angle))
+        let bracket = if known.1 < 0.0 { (start, known) } else { (known, (end_rad, self.area_excess(end_rad))) };
+        (bracket.1.1 < 0.0)
+            .then(|| root::bracketed(bracket.0, bracket.1, ANGLE_TOLERANCE_RAD, |angle| self.area_excess(angle)))
     }
 
     /// Positive while the area margin is above the required one: of smooth, almost straight course.
-    fn area_excess(&self, angle_rad: f64) -> f64 {
+    pub fn area_excess(&self, angle_rad: f64) -> f64 {
         let swing = self.first_swing(&self.stress.swing_at(angle_rad));
         let required = self.corridor.require.area_margin;
         match &swing.well {

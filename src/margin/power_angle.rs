@@ -93,9 +93,13 @@ impl Wave {
         self.mean + self.cos * cos + self.sin * sin
     }
 
+    fn amplitude(&self) -> f64 {
+        (self.cos * self.cos + self.sin * self.sin).sqrt()
+    }
+
     /// The first angle from `start_rad` on at which the wave is above a level.
     pub fn first_above(&self, level: f64, start_rad: f64) -> Option<f64> {
-        let amplitude = self.cos.hypot(self.sin);
+        let amplitude = self.amplitude();
         if self.mean + amplitude <= level {
             return None;
         }
@@ -114,7 +118,7 @@ impl Wave {
 
 impl From<Wave> for PowerAngle {
     fn from(wave: Wave) -> Self {
-        Self { mean_mw: wave.mean, amplitude_mw: wave.cos.hypot(wave.sin), shift_rad: (-wave.cos).atan2(wave.sin) }
+        Self { mean_mw: wave.mean, amplitude_mw: wave.amplitude(), shift_rad: (-wave.cos).atan2(wave.sin) }
     }
 }
 
@@ -143,6 +147,12 @@ impl Phasor {
 
     /// |self|².
     pub fn square(&self) -> Wave {
-        self.power(self)
+        let cross = self.x * self.i.conj();
+        Wave { mean: self.x.norm_sqr() + self.i.norm_sqr(), cos: 2.0 * cross.re, sin: -2.0 * cross.im }
+    }
+
+    /// |self| at an angle given as e^{jδ}.
+    pub fn magnitude(&self, rotation: C64) -> f64 {
+        (self.x * rotation + self.i).norm_sqr().sqrt()
     }
 }

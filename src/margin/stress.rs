@@ -121,7 +121,7 @@ impl Stress {
             // Each turned so that its own settled source is real.
             let swing_x = (y.m11 * ex + y.m12 * ei * rotation.conj()) * C64::new(0.0, xx) + ex;
             let swing_i = (y.m21 * ex * rotation + y.m22 * ei) * C64::new(0.0, xi) + ei;
-            ([swing_x.norm(), swing_i.norm()], (swing_x * swing_i.conj()).arg())
+            ([swing_x.norm_sqr().sqrt(), swing_i.norm_sqr().sqrt()], (swing_x * swing_i.conj()).arg())
         };
         let angle_rad = angle_rad + turned;
         SwingPoint { e_kv, angle_rad, p_m_mw: self.swing.curve(e_kv).at(angle_rad) }

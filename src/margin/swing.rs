@@ -90,7 +90,10 @@ impl Swing {
         None
     }
 
+    /// The recursion of sin and cos of a series: (sin)' = cos·δ', (cos)' = −sin·δ'. Only every `stride`-th term of the
+    /// angle is there: all of them, or from rest, where time runs alike both ways, the even ones.
     fn jet(&self, start: Moment) -> Jet {
+        let stride = if start.speed_rad_s == 0.0 { 2 } else { 1 };
         let mut angle = [0.0; ORDER + 1];
         // slope[i] = i · angle[i], the coefficients of t·δ'.
         let mut slope = [0.0; ORDER + 1];
@@ -101,21 +104,25 @@ impl Swing {
         angle[1] = start.speed_rad_s;
         slope[1] = start.speed_rad_s;
         let restoring = self.curve.amplitude_mw / self.inertia;
-        let mut acceleration = (self.p_m_mw - self.curve.mean_mw) / self.inertia - restoring * sin[0];
-        for k in 0..ORDER - 1 {
-            let order = (k + 1) as f64;
-            angle[k + 2] = acceleration / (order * (order + 1.0));
-            slope[k + 2] = acceleration / order;
-            let (mut up, mut down) = (0.0, 0.0);
-            for j in 0..=k {
-                up += slope[k + 1 - j] * cos[j];
-                down += slope[k + 1 - j] * sin[j];
+        let push = (self.p_m_mw - self.curve.mean_mw) / self.inertia;
+        let mut k = 0;
+        loop {
+            let acceleration = if k == 0 { push - restoring * sin[0] } else { -restoring * sin[k] };
+            let order = (k + 2) as f64;
+            slope[k + 2] = acceleration / (order - 1.0);
+            angle[k + 2] = slope[k + 2] / order;
+            k += stride;
+            if k > ORDER - 2 {
+                return Jet { start, angle };
             }
-            sin[k + 1] = up / order;
-            cos[k + 1] = -down / order;
-            acceleration = -restoring * sin[k + 1];
+            let (mut up, mut down) = (0.0, 0.0);
+            for j in (0..k).step_by(stride) {
+                up += slope[k - j] * cos[j];
+                down += slope[k - j] * sin[j];
+            }
+            sin[k] = up / k as f64;
+            cos[k] = -down / k as f64;
         }
-        Jet { start, angle }
     }
 }
 

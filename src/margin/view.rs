@@ -10,7 +10,7 @@ use super::{
 use crate::{
     feed::End,
     grid::{BusIndex, Circuit, Corridor},
-    network::AMPERES,
+    network::{AMPERES, C64},
 };
 
 /// Which of a circuit's ratings counts, A.
@@ -57,7 +57,8 @@ impl View<'_> {
 
     /// The largest end current against its rating at an angle; `None` where nothing is rated.
     pub fn loading(&self, angle_rad: f64, rating: Rating) -> Option<Loaded> {
-        let ratio = |(circuit, rating, current): (usize, f64, Phasor)| (circuit, current.at(angle_rad).norm() / rating);
+        let rotation = C64::cis(angle_rad);
+        let ratio = |(circuit, rating, current): (usize, f64, Phasor)| (circuit, current.magnitude(rotation) / rating);
         let (circuit, ratio) = self.rated(rating).map(ratio).max_by(|a, b| a.1.total_cmp(&b.1))?;
         Some(Loaded { pct: 100.0 * ratio, circuit: self.corridor.circuits[circuit].name.clone() })
     }
@@ -82,9 +83,10 @@ impl View<'_> {
 
     /// kV of every live bus at an angle.
     pub fn kv(&self, angle_rad: f64) -> Vec<(Arc<str>, f64)> {
+        let rotation = C64::cis(angle_rad);
         self.buses()
             .map(|bus| {
-                let kv = self.voltage(seat(self.exporter, bus)).at(angle_rad).norm();
+                let kv = self.voltage(seat(self.exporter, bus)).magnitude(rotation);
                 (self.corridor.buses[bus].name.clone(), kv)
             })
             .collect()

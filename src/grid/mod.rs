@@ -130,6 +130,15 @@ pub struct Circuit {
     pub banks: Vec<Bank>,
 }
 
+/// An end of a circuit.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum End {
+    /// At the circuit's first bus.
+    From,
+    /// At its second.
+    To,
+}
+
 /// How a circuit's parameters are given.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Line {

@@ -89,6 +89,7 @@ fn every_key_is_read() {
 
     let corridor = &config.grid.corridors[0];
     assert_eq!((&*corridor.name, corridor.thin_mw), ("Skarn-Velm", 150.0));
+    assert_eq!([0, 1].map(|index| config.grid.corridors[index].state_spreads.to_string()), ["0", "2"]);
     let buses: Vec<_> = corridor.buses.iter().map(|bus| (&*bus.name, bus.nominal_kv, bus.min_kv, bus.load)).collect();
     let load = Load { mw: 800.0, mvar: 120.0 };
     let expected = [("Skarn", 400.0, Some(370.0), Some(load)), ("Velm", 400.0, None, None), ("Mid", 400.0, None, None)];

@@ -43,6 +43,8 @@ pub struct Corridor {
     pub reclose: SynchronismCheck,
     /// Headroom below which the corridor is thin, MW.
     pub thin_mw: f64,
+    /// How many of its spreads are taken off the headroom before the corridor's state is judged by it.
+    pub state_spreads: f64,
 }
 
 /// A terminal bus or a station.

@@ -319,3 +319,31 @@ fn two_equal_circuits_are_one_of_half_the_impedance() {
     // The loss of one halves the admittance between the terminals: never more than what both carry.
     assert!(two.outages[0].peak_mw.unwrap() < peak(&two));
 }
+
+/// A corridor judged some spreads below its headroom is thin before it is so by the headroom itself.
+#[test]
+fn the_state_may_be_judged_below_the_headroom() {
+    let invented = Invented {
+        circuits: vec![(200.0, None), (220.0, None), (240.0, None)],
+        sources: [[1.0, 20.0, 0.0], [1.0, 15.0, 0.0]],
+        stored_energy: [60_000.0, 90_000.0],
+        fault: ("three-phase", 0.0, 100.0),
+        require: (20.0, 0.1),
+        rating_a: 3000.0,
+        kv: [405.0, 400.0],
+        angle_deg: 8.0,
+        loads: [[0.0; 2]; 2],
+    };
+    let judged = |spreads: f64, thin_mw: f64| {
+        let keys = format!("name = \"Skarn-Velm\"\nthin_mw = {thin_mw}\nstate_spreads = {spreads}\n");
+        let config = invented.config(false).replace("name = \"Skarn-Velm\"\n", &keys);
+        assess(&config, &invented.values(false))
+    };
+    let plain = judged(0.0, 1.0);
+    let (headroom, spread) = (plain.headroom_mw.unwrap(), plain.headroom_sd_mw.unwrap());
+    assert!(headroom > 0.0 && spread > 1.0, "{headroom} {spread}");
+    let thin_mw = headroom - spread;
+    assert_eq!(judged(0.5, thin_mw).state, tautline::desk::State::Ample);
+    assert_eq!(judged(1.5, thin_mw).state, tautline::desk::State::Thin);
+    assert_eq!(judged(0.0, thin_mw).headroom_mw, plain.headroom_mw, "the headroom stays what it is");
+}

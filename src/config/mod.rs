@@ -48,6 +48,8 @@ pub struct Config {
     pub channel_names: BTreeMap<String, String>,
     /// How the sources are learned.
     pub learning: LearningSettings,
+    /// Where `watch` keeps what it learned, from this file's folder (`[learning] state_file`).
+    pub state_file: Option<String>,
 }
 
 /// Measurement classes (`[measurement]`): common metering practice by default.
@@ -140,12 +142,15 @@ fn read(mut root: Section<'_>) -> Config {
     let corridors = root.required_sections("corridor", MOST_CORRIDORS);
     let corridors = corridors.into_iter().map(|section| corridor::read(section, &mut names)).collect();
     let grid = Grid { frequency_hz, corridors };
+    let mut learned = root.section("learning");
+    let state_file = learned.text("state_file").filter(|name| !name.is_empty());
     Config {
         time_zone,
         measurement: measurement(root.section("measurement")),
         feed: feed(root.section("feed")),
         channel_names: channels::read(root.section("channels"), &grid, &names),
-        learning: learning(root.section("learning")),
+        learning: learning(learned),
+        state_file,
         grid,
     }
 }

@@ -11,6 +11,7 @@
 //! [`grid`] says what a corridor is, [`config`] reads one from a file, and [`drill`] makes feeds with known truth.
 #![forbid(unsafe_code)]
 
+pub mod alarm;
 pub mod command;
 pub mod config;
 pub mod desk;

@@ -71,7 +71,10 @@ fn every_key_is_read() {
         config.measurement,
         MeasurementSettings { kv_sigma_pct: 0.2, angle_sigma_deg: 0.2, power_sigma_pct: 0.5 }
     );
-    assert_eq!(config.feed, FeedSettings { inputs: vec!["tcp://127.0.0.1:7001".to_owned()], max_age_s: 4.0 });
+    assert_eq!(
+        config.feed,
+        FeedSettings { inputs: vec!["tcp://127.0.0.1:7001".to_owned()], max_age_s: 4.0, hold_s: 0.2 }
+    );
     let names = [("SV1.from.mw", "RTU7/P"), ("Skarn.kv", "RTU7/U")].map(|(a, b)| (a.to_owned(), b.to_owned()));
     assert_eq!(config.channel_names, names.into());
     let learning = LearningSettings {

@@ -3,18 +3,13 @@
 use super::{Failure, replay};
 use crate::{config::Config, screen::connection::Recording};
 
-/// `config/demo.toml`.
-const CONFIG: &str = "";
-/// `replay-data/demo-day.jsonl.zst`.
-const DAY: &[u8] = &[];
+const CONFIG: &str = include_str!("../../config/demo.toml");
+const DAY: &[u8] = include_bytes!("../../replay-data/demo-day.jsonl.zst");
 /// Recorded seconds in a second: the day in a quarter of an hour, say.
 const SPEED: u32 = 120;
 
 /// Replays the demo day, or prints its summary when standard output is not a terminal.
 pub fn run() -> Result<(), Failure> {
-    if DAY.is_empty() {
-        return Err("this build has no demo day in it; `tautline replay` plays recorded files".into());
-    }
     let config = Config::parse(CONFIG, "config/demo.toml")?;
     let start = replay::Start { speed: SPEED, at: None, paused: false };
     replay::play(&config, Recording::Within { name: "the demo day", bytes: DAY }, &start)

@@ -61,7 +61,7 @@ pub fn run(options: &Options) -> Result<(), Failure> {
 /// Plays a recording on the screen; where there is none to draw on, prints its summary.
 pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Result<(), Failure> {
     let channels = Arc::new(Channels::new(config));
-    let (desk, holder) = (Desk::new(config, &channels), inputs::holder(config, &channels));
+    let (desk, holder) = (Desk::detailed(config, &channels), inputs::holder(config, &channels));
     if !stdout().is_terminal() {
         return summarise(config, &recording, &channels, desk, holder);
     }

@@ -35,7 +35,7 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let inputs = inputs::chosen(&options.input, &config)?;
     stage::needs_terminal()?;
     let channels = Arc::new(Channels::new(&config));
-    let (desk, holder) = (Desk::new(&config, &channels), inputs::holder(&config, &channels));
+    let (desk, holder) = (Desk::detailed(&config, &channels), inputs::holder(&config, &channels));
 
     let runtime = stage::runtime()?;
     let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::default()))?;

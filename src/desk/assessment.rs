@@ -5,7 +5,10 @@ use std::sync::Arc;
 use chrono::{DateTime, SecondsFormat, Utc};
 use serde::{Serialize, Serializer};
 
-use crate::margin::{Action, Binding, Intact, OutageRecord, Picture, Reclose};
+use crate::{
+    margin::{Action, Binding, Intact, OutageRecord, Picture, Reclose},
+    source::{SpreadPoint, Step},
+};
 
 /// One corridor at one frame. `None` stands where a value does not exist.
 #[derive(Debug, Clone, PartialEq, Serialize)]
@@ -131,6 +134,17 @@ pub struct Detail {
     pub circuits: Vec<CircuitDetail>,
     /// The power-angle curve of the present network, swing sources.
     pub picture: Picture,
+    /// The course of learning.
+    pub learned: Arc<Learned>,
+}
+
+/// How the sources were learned.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Learned {
+    /// The recent steps, oldest first.
+    pub steps: Vec<Step>,
+    /// The spread over the last day, oldest first.
+    pub history: Vec<SpreadPoint>,
 }
 
 /// A bus as fitted.

@@ -1,16 +1,17 @@
 use std::sync::Arc;
 
 use super::{
-    Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Reclose, SourceRecord, State,
+    Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Learned, Reclose, SourceRecord,
+    State,
 };
 use crate::{
     config::Config,
     feed::{Channels, Slot, Snapshot},
     fit::{Fit, FittedState, Fitter, Standing},
     grid::{Circuit, Corridor, FROM, TO},
-    margin::{Engine, Judgement, Operating, Trend},
+    margin::{Behind, Engine, Judgement, Present, Seated, Trend},
     network::Topology,
-    source::Estimate,
+    source::{Learner, Observation},
 };
 
 /// One corridor with what is remembered of it.
@@ -19,11 +20,14 @@ pub struct CorridorDesk {
     corridor: Arc<Corridor>,
     channels: Arc<Channels>,
     fitter: Fitter,
-    sources: Estimate,
+    learner: Learner,
     engine: Engine,
     trend: Trend,
-    /// Statuses of the frame before: a trend does not reach across a change.
+    /// Statuses of the frame before, and how often they have changed.
     topology: Option<Topology>,
+    switchings: u64,
+    detailed: bool,
+    learned: Arc<Learned>,
 }
 
 impl CorridorDesk {
@@ -31,10 +35,13 @@ impl CorridorDesk {
         let corridor = Arc::new(corridor.clone());
         Self {
             fitter: Fitter::new(corridor.clone(), channels, &config.measurement),
-            sources: Estimate::configured(&corridor.sides.map(|side| side.source)),
+            learner: Learner::new(&corridor.sides.map(|side| side.source), config.learning),
             engine: Engine::new(config.grid.frequency_hz),
             trend: Trend::default(),
             topology: None,
+            switchings: 0,
+            detailed: false,
+            learned: Arc::default(),
             channels: channels.clone(),
             corridor,
         }
@@ -45,11 +52,28 @@ impl CorridorDesk {
         &self.corridor
     }
 
+    /// What is being learned of its sources.
+    pub fn learner(&self) -> &Learner {
+        &self.learner
+    }
+
+    /// What is being learned of its sources, to take up what was kept.
+    pub fn learner_mut(&mut self) -> &mut Learner {
+        &mut self.learner
+    }
+
+    /// Brings what a screen draws with every assessment.
+    pub(super) fn detailed(self) -> Self {
+        Self { detailed: true, ..self }
+    }
+
     /// This corridor at a snapshot.
     pub fn assess(&mut self, snapshot: &Snapshot) -> Assessment {
         let fit = self.fitter.fit(snapshot);
         if self.topology.as_ref() != Some(&fit.topology) {
+            // A trend does not reach across a switching.
             self.trend.clear();
+            self.switchings += 1;
             self.topology = Some(fit.topology.clone());
         }
         match &fit.standing {
@@ -60,17 +84,16 @@ impl CorridorDesk {
     }
 
     fn joined(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState) -> Assessment {
-        let judgement = self.engine.judge(
-            &self.corridor,
-            &Operating {
-                topology: &fit.topology,
-                voltage: &state.voltage,
-                load: &state.load,
-                z_ohm: self.sources.z_ohm(),
-                covariance: &self.sources.covariance,
-                stored_energy_mws: fit.stored_energy_mws,
-            },
-        );
+        let present = Present { topology: &fit.topology, voltage: &state.voltage, load: &state.load };
+        let seated = self.engine.seat(&self.corridor, &present);
+        self.learn(snapshot, fit, state, &seated);
+        let estimate = self.learner.estimate();
+        let behind = Behind {
+            z_ohm: estimate.z_ohm(),
+            covariance: &estimate.covariance,
+            stored_energy_mws: fit.stored_energy_mws,
+        };
+        let judgement = self.engine.judge(&self.corridor, &present, &seated, &behind);
         if !judgement.headroom_mw.is_finite() {
             return self.blank(snapshot, fit);
         }
@@ -85,7 +108,7 @@ impl CorridorDesk {
                 _ if headroom < thin_mw => State::Thin,
                 _ => State::Ample,
             },
-            exporter: Some(self.corridor.buses[judgement.exporter].name.clone()),
+            exporter: Some(self.corridor.buses[seated.exporter].name.clone()),
             transfer_mw: Some(judgement.transfer_mw),
             bus_angle_deg: Some(judgement.bus_angle_rad.to_degrees()),
             internal_angle_deg: Some(judgement.internal_angle_rad.to_degrees()),
@@ -98,13 +121,32 @@ impl CorridorDesk {
             headroom_sd_mw: Some(judgement.headroom_sd_mw),
             minutes_to_thin: self.trend.minutes_to(thin_mw, headroom),
             minutes_to_spent: self.trend.minutes_to(0.0, headroom),
-            detail: Some(Arc::new(self.detail(fit, state, &judgement))),
+            detail: self.detailed.then(|| Arc::new(self.detail(fit, state, &seated, &judgement))),
             intact: Some(judgement.intact),
             outages: judgement.outages,
             binding: Some(judgement.binding),
             actions: judgement.actions,
             reclose: judgement.reclose,
             ..self.blank(snapshot, fit)
+        }
+    }
+
+    fn learn(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState, seated: &Seated) {
+        let step = self.learner.observe(&Observation {
+            time: snapshot.time,
+            kv: [FROM, TO].map(|bus| state.voltage[bus].norm()),
+            mw: seated.power_mva.map(|power| power.re),
+            mvar: seated.power_mva.map(|power| power.im),
+            y: seated.y,
+            topology: self.switchings,
+            sigma: self.fitter.terminal_sigma(),
+            fit_ok: fit.chi2.zip(fit.limit).is_none_or(|(chi2, limit)| chi2 <= limit),
+        });
+        if self.detailed && (step.is_some() || self.learner.history().next_back() != self.learned.history.last()) {
+            self.learned = Arc::new(Learned {
+                steps: self.learner.steps().copied().collect(),
+                history: self.learner.history().copied().collect(),
+            });
         }
     }
 
@@ -163,21 +205,22 @@ impl CorridorDesk {
     }
 
     fn sources(&self) -> [SourceRecord; 2] {
-        let sd = self.sources.sd();
+        let estimate = self.learner.estimate();
+        let sd = estimate.sd();
         [FROM, TO].map(|side| SourceRecord {
             bus: self.corridor.buses[side].name.clone(),
             e_kv: None,
             angle_deg: None,
-            r_ohm: self.sources.mean[2 * side],
-            x_ohm: self.sources.mean[2 * side + 1],
+            r_ohm: estimate.mean[2 * side],
+            x_ohm: estimate.mean[2 * side + 1],
             r_sd: sd[2 * side],
             x_sd: sd[2 * side + 1],
-            basis: if self.sources.steps[side] > 0 { Basis::Learned } else { Basis::Configured },
-            steps: self.sources.steps[side],
+            basis: if estimate.steps[side] > 0 { Basis::Learned } else { Basis::Configured },
+            steps: estimate.steps[side],
         })
     }
 
-    fn detail(&self, fit: &Fit, state: &FittedState, judgement: &Judgement) -> Detail {
+    fn detail(&self, fit: &Fit, state: &FittedState, seated: &Seated, judgement: &Judgement) -> Detail {
         let live = (0..self.corridor.buses.len()).filter(|bus| state.live[*bus]);
         let buses = live.map(|bus| {
             let voltage = state.voltage[bus];
@@ -190,7 +233,7 @@ impl CorridorDesk {
                 load_mvar: load.im,
             }
         });
-        let circuits = self.corridor.circuits.iter().zip(&judgement.circuits).enumerate();
+        let circuits = self.corridor.circuits.iter().zip(&seated.circuits).enumerate();
         let circuits = circuits.map(|(index, (circuit, present))| CircuitDetail {
             name: circuit.name.clone(),
             closed: fit.topology.closed[index],
@@ -198,7 +241,12 @@ impl CorridorDesk {
             loading_pct: circuit.rating_a.map(|rating_a| 100.0 * present.amperes / rating_a),
             banks: banks(circuit, &fit.topology.inserted[index]),
         });
-        Detail { buses: buses.collect(), circuits: circuits.collect(), picture: judgement.picture }
+        Detail {
+            buses: buses.collect(),
+            circuits: circuits.collect(),
+            picture: judgement.picture,
+            learned: self.learned.clone(),
+        }
     }
 }
 

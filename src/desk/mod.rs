@@ -6,7 +6,7 @@ mod corridor;
 use std::sync::Arc;
 
 pub use crate::margin::{Action, Binding, Criterion, Intact, IntactLimits, OutageLimits, OutageRecord, Reclose};
-pub use assessment::{Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, SourceRecord, State};
+pub use assessment::{Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, Learned, SourceRecord, State};
 pub use corridor::CorridorDesk;
 
 use crate::{
@@ -26,6 +26,11 @@ impl Desk {
     pub fn new(config: &Config, channels: &Arc<Channels>) -> Self {
         let corridors = config.grid.corridors.iter();
         Self { corridors: corridors.map(|corridor| CorridorDesk::new(corridor, config, channels)).collect() }
+    }
+
+    /// The same, bringing with every assessment what a screen draws besides.
+    pub fn detailed(config: &Config, channels: &Arc<Channels>) -> Self {
+        Self { corridors: Self::new(config, channels).corridors.into_iter().map(CorridorDesk::detailed).collect() }
     }
 
     /// Every corridor at a snapshot, in order.

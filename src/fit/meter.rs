@@ -3,7 +3,7 @@
 use crate::{
     config::MeasurementSettings,
     feed::{Channels, End, Point, Quality, Quantity, Reading, Slot, Snapshot},
-    grid::{BankIndex, BusIndex, Circuit, Corridor, Line},
+    grid::{BankIndex, BusIndex, Circuit, Corridor, three_phase_mva},
 };
 
 /// Four per bus, then four per circuit: position in every list of measurements.
@@ -35,14 +35,12 @@ pub(super) fn usable(snapshot: &Snapshot, slot: Slot) -> Option<Reading> {
 /// Size against which a circuit's power is metered, MVA: thermal; without a rating its surge impedance loading; without
 /// charging a tenth of what it carries at 90°.
 fn rated_mva(circuit: &Circuit, nominal_kv: f64) -> f64 {
-    let (x_ohm, b_us) = match circuit.line {
-        Line::PerKm { length_km, x_ohm_per_km, b_us_per_km, .. } => (x_ohm_per_km * length_km, b_us_per_km * length_km),
-        Line::Totals { x_ohm, b_us, .. } => (x_ohm, b_us),
-    };
     match circuit.rating_a {
-        Some(rating_a) => 3f64.sqrt() * nominal_kv * rating_a * 1e-3,
-        None if b_us > 0.0 => nominal_kv.powi(2) / (x_ohm / (b_us * 1e-6)).sqrt(),
-        None => 0.1 * nominal_kv.powi(2) / x_ohm,
+        Some(rating_a) => three_phase_mva(nominal_kv, rating_a),
+        None => circuit
+            .line
+            .surge_impedance_loading_mw(nominal_kv)
+            .unwrap_or_else(|| 0.1 * nominal_kv * nominal_kv / circuit.line.totals().x_ohm),
     }
 }
 
@@ -121,6 +119,11 @@ impl Meters {
             z.push(value);
             w.push(weight);
         }
+    }
+
+    /// Standard deviation of a measurement in its channel's unit.
+    pub fn sigma(&self, meter: Meter) -> f64 {
+        self.sigma[meter] * self.unit[meter]
     }
 
     /// Weight of a load that is assumed, not measured.

@@ -20,7 +20,7 @@ use statrs::distribution::{ChiSquared, ContinuousCDF};
 use crate::{
     config::MeasurementSettings,
     feed::{Channels, Slot, Snapshot},
-    grid::{Corridor, TO},
+    grid::{Corridor, FROM, TO},
     network::{C64, Topology},
 };
 use estimator::Estimator;
@@ -103,6 +103,7 @@ pub struct Fitter {
     branches: Branches,
     wiring: Wiring,
     estimator: Estimator,
+    terminal_sigma: [f64; 6],
     z: Vec<f64>,
     w: Vec<f64>,
 }
@@ -112,6 +113,12 @@ impl Fitter {
     pub fn new(corridor: Arc<Corridor>, channels: &Channels, settings: &MeasurementSettings) -> Self {
         let meters = Meters::new(&corridor, channels, settings);
         let quantile = |dof| ChiSquared::new(dof as f64).ok().map(|chi2| chi2.inverse_cdf(CONFIDENCE));
+        let kv = [FROM, TO].map(|bus| meters.sigma(Meters::kv(bus)));
+        let power = [FROM, TO].map(|bus| {
+            let at_bus = corridor.circuits.iter().enumerate().filter(|(_, circuit)| circuit.between.contains(&bus));
+            at_bus.map(|(index, _)| meters.sigma(meters.flow(index)[0]).powi(2)).sum::<f64>().sqrt()
+        });
+        let terminal_sigma = [kv[FROM], kv[TO], power[FROM], power[TO], power[FROM], power[TO]];
         let mut branches = Branches::new(&corridor);
         let wiring = Wiring::new(&corridor, &Topology::complete(&corridor), &meters, &mut branches);
         Self {
@@ -122,9 +129,15 @@ impl Fitter {
             branches,
             wiring,
             estimator: Estimator::default(),
+            terminal_sigma,
             z: Vec::new(),
             w: Vec::new(),
         }
+    }
+
+    /// Metering class at the terminals: kV, MW and Mvar of all circuits there together, `from` and `to` each.
+    pub fn terminal_sigma(&self) -> [f64; 6] {
+        self.terminal_sigma
     }
 
     /// The state that agrees best with a snapshot.

@@ -3,42 +3,61 @@
 use nalgebra::Matrix4;
 
 use super::{
-    Action, Binding, Criterion, Intact, IntactLimits, Machine, OutageLimits, OutageRecord, Picture, Reclose,
+    Action, Binding, Intact, Machine, OutageRecord, Picture, Reclose,
     case::{CaseSet, seat},
     outage::Outage,
     reclose,
-    stress::{Sources, Stress},
-    view::View,
+    scene::{Scene, separation, tightest},
+    sensitivity::Sensitivity,
+    stress::Stress,
 };
 use crate::{
     feed::End,
-    grid::{BankIndex, BusIndex, Circuit, Corridor, FROM, TO},
-    network::{AMPERES, Admittance, C64, Topology},
+    grid::{BankIndex, BusIndex, Corridor, FROM, TO},
+    network::{AMPERES, Admittance, C64, M2, Topology},
 };
 
-/// The present state of a corridor and what stands behind its terminals.
+/// A corridor's state, closed circuits joining its terminals.
 #[derive(Debug, Clone, Copy)]
-pub struct Operating<'a> {
+pub struct Present<'a> {
     /// Statuses in force.
     pub topology: &'a Topology,
     /// Voltage by bus, kV, with `to` at angle 0.
     pub voltage: &'a [C64],
     /// Load admittance by bus, S.
     pub load: &'a [C64],
-    /// Settled impedances behind `from` and `to`, ohm.
+}
+
+/// What stands behind its terminals, `from` and `to`.
+#[derive(Debug, Clone, Copy)]
+pub struct Behind<'a> {
+    /// Settled impedances, ohm.
     pub z_ohm: [C64; 2],
-    /// Covariance of R and X behind `from`, then `to`, ohm².
+    /// Covariance of R and X `from`, R and X `to`, ohm².
     pub covariance: &'a Matrix4<f64>,
-    /// Stored energy behind `from` and `to`, MW·s; `None`: infinite.
+    /// Stored energy, MW·s; `None`: infinite.
     pub stored_energy_mws: [Option<f64>; 2],
+}
+
+/// A state taken in: who exports, and what the sources see.
+#[derive(Debug, Clone)]
+pub struct Seated {
+    /// The bus whose terminal sends MW into the circuits.
+    pub exporter: BusIndex,
+    /// Circuits and loads reduced to `from` and `to`, S.
+    pub y: M2,
+    /// Power that leaves each source, into circuits and terminal load, MVA.
+    pub power_mva: [C64; 2],
+    /// By circuit, also the open ones.
+    pub circuits: Vec<CircuitFlow>,
+    set: usize,
+    loads: Vec<C64>,
 }
 
 /// All that is found of a corridor in one state.
 #[derive(Debug, Clone)]
 pub struct Judgement {
-    /// The bus whose terminal sends MW into the circuits.
-    pub exporter: BusIndex,
-    /// MW from there into the circuits.
+    /// MW from the exporter's terminal into the circuits.
     pub transfer_mw: f64,
     /// Exporter minus importer, between the terminals, rad.
     pub bus_angle_rad: f64,
@@ -62,8 +81,6 @@ pub struct Judgement {
     pub reclose: Vec<Reclose>,
     /// The present curve, sources of the swing.
     pub picture: Picture,
-    /// By circuit, also the open ones.
-    pub circuits: Vec<CircuitFlow>,
 }
 
 /// What a circuit carries.
@@ -75,19 +92,12 @@ pub struct CircuitFlow {
     pub amperes: f64,
 }
 
-/// What sets the headroom, by index.
-#[derive(Debug, Clone, Copy)]
-struct Tightest {
-    limit_mw: f64,
-    outage: Option<usize>,
-    criterion: Criterion,
-}
-
 /// Judges one corridor; keeps the networks of the topologies met last.
 #[derive(Debug, Clone)]
 pub struct Engine {
     frequency_hz: f64,
     sets: Vec<(Topology, CaseSet)>,
+    sensitivity: Option<Sensitivity>,
     scratch: Admittance,
 }
 
@@ -97,22 +107,32 @@ const SETS_KEPT: usize = 24;
 impl Engine {
     /// For a corridor of a grid of this frequency, Hz.
     pub fn new(frequency_hz: f64) -> Self {
-        Self { frequency_hz, sets: Vec::new(), scratch: Admittance::new(2) }
+        Self { frequency_hz, sets: Vec::new(), sensitivity: None, scratch: Admittance::new(2) }
     }
 
-    /// Judges a state in which closed circuits join the terminals.
-    pub fn judge(&mut self, corridor: &Corridor, now: &Operating) -> Judgement {
+    /// Takes a state in, before it is judged.
+    pub fn seat(&mut self, corridor: &Corridor, now: &Present) -> Seated {
         let (circuits, sent_mw) = self.flows(corridor, now);
         let exporter = if sent_mw[TO] > sent_mw[FROM] { TO } else { FROM };
-        let importer = 1 - exporter;
         let loads: Vec<_> = (0..corridor.buses.len()).map(|bus| now.load[seat(exporter, bus)]).collect();
-        let machine = Machine::new([exporter, importer].map(|side| now.stored_energy_mws[side]), self.frequency_hz);
-        let index = self.prepare(corridor, now.topology, exporter, &loads);
-        let set = &self.sets[index].1;
+        let set = self.prepare(corridor, now.topology, exporter, &loads);
+        let reduced = self.sets[set].1.present.network.reduced.y;
+        let y = if exporter == FROM { reduced } else { M2::new(reduced.m22, reduced.m21, reduced.m12, reduced.m11) };
+        let [from, to] = [now.voltage[FROM], now.voltage[TO]];
+        let power_mva = [from * (y.m11 * from + y.m12 * to).conj(), to * (y.m21 * from + y.m22 * to).conj()];
+        Seated { exporter, y, power_mva, circuits, set, loads }
+    }
 
-        let z = [exporter, importer].map(|side| now.z_ohm[side]);
+    /// Judges the state that was taken in last.
+    pub fn judge(&mut self, corridor: &Corridor, now: &Present, seated: &Seated, behind: &Behind) -> Judgement {
+        let &Seated { exporter, ref loads, .. } = seated;
+        let importer = 1 - exporter;
+        let machine = Machine::new([exporter, importer].map(|side| behind.stored_energy_mws[side]), self.frequency_hz);
+        let set = &self.sets[seated.set].1;
+
+        let z = [exporter, importer].map(|side| behind.z_ohm[side]);
         let terminals = [exporter, importer].map(|bus| now.voltage[bus]);
-        let scene = Scene { corridor, set, machine, loads: &loads, terminals };
+        let scene = Scene { corridor, set, machine, loads, terminals };
         let (stress, e) = scene.stress(z);
         let angle = (e[0] * e[1].conj()).arg();
         let transfer_mw = stress.transfer_at(angle);
@@ -127,17 +147,17 @@ impl Engine {
         }
         let intact = scene.intact(&stress, angle);
         let tightest = tightest(outages.iter().map(|outage| outage.limit_mw), &intact.limit_mw, &stress);
-        let variance = scene.variance(&stress, angle, &tightest, now.covariance);
+        let known = self.sensitivity.take().filter(|known| known.holds_for(seated.set, &tightest, &stress));
+        let sensitivity = known.unwrap_or_else(|| Sensitivity::of(&scene, seated.set, &tightest, &stress, angle));
         let reclose = reclose::judge(corridor, now.topology, &scene.view(&stress), &stress, angle, now.voltage);
         let judgement = Judgement {
-            exporter,
             transfer_mw,
             bus_angle_rad: (terminals[0] * terminals[1].conj()).arg(),
             internal_angle_rad: angle,
             e_kv: [e[exporter], e[importer]],
             intact,
             headroom_mw: tightest.limit_mw - transfer_mw,
-            headroom_sd_mw: variance.max(0.0).sqrt(),
+            headroom_sd_mw: sensitivity.sd_mw(behind.covariance),
             binding: Binding {
                 outage: tightest.outage.map(|index| outages[index].name.clone()),
                 criterion: tightest.criterion,
@@ -146,14 +166,14 @@ impl Engine {
             actions: Vec::new(),
             reclose,
             picture: Picture { curve: stress.swing_curve(&point), p_m_mw: point.p_m_mw, angle_rad: point.angle_rad },
-            circuits,
         };
-        let actions = self.actions(corridor, now.topology, exporter, &loads, &stress, stress.p_m_mw(angle));
+        self.sensitivity = Some(sensitivity);
+        let actions = self.actions(corridor, now.topology, exporter, loads, &stress, stress.p_m_mw(angle));
         Judgement { actions, ..judgement }
     }
 
     /// What each circuit carries, and the MW that each terminal sends into them.
-    fn flows(&mut self, corridor: &Corridor, now: &Operating) -> (Vec<CircuitFlow>, [f64; 2]) {
+    fn flows(&mut self, corridor: &Corridor, now: &Present) -> (Vec<CircuitFlow>, [f64; 2]) {
         let index = self.find(corridor, now.topology, FROM);
         let mut sent_mw = [0.0; 2];
         let mut flows = vec![CircuitFlow::default(); corridor.circuits.len()];
@@ -174,7 +194,8 @@ impl Engine {
         let known = self.sets.iter().position(|(known, set)| set.exporter == exporter && known == topology);
         known.unwrap_or_else(|| {
             if self.sets.len() == SETS_KEPT {
-                self.sets.remove(0);
+                self.sets.clear();
+                self.sensitivity = None;
             }
             self.sets.push((topology.clone(), CaseSet::new(corridor, topology, exporter)));
             self.sets.len() - 1
@@ -234,163 +255,6 @@ impl Engine {
         }
         actions
     }
-}
-
-/// One topology with everything that does not depend on the impedance of the sources.
-struct Scene<'a> {
-    corridor: &'a Corridor,
-    set: &'a CaseSet,
-    machine: Machine,
-    loads: &'a [C64],
-    /// Voltages of exporter and importer, kV.
-    terminals: [C64; 2],
-}
-
-fn continuous(circuit: &Circuit) -> Option<f64> {
-    circuit.rating_a
-}
-
-impl Scene<'_> {
-    /// E = V + Z·I with the present voltages and currents, and the stress from there; exporter first.
-    fn stress(&self, z: [C64; 2]) -> (Stress, [C64; 2]) {
-        let y = &self.set.present.network.reduced.y;
-        let [vx, vi] = self.terminals;
-        let e = [vx + z[0] * (y.m11 * vx + y.m12 * vi), vi + z[1] * (y.m21 * vx + y.m22 * vi)];
-        let [x, i] = [self.set.exporter, 1 - self.set.exporter];
-        let swing_x_ohm = [x, i].map(|side| self.corridor.sides[side].source.swing_x_ohm);
-        let sources = Sources { z, swing_x_ohm, e_kv: e.map(C64::norm) };
-        (Stress::new(&self.set.present, sources, self.machine, self.loads[0]), e)
-    }
-
-    fn view<'b>(&'b self, stress: &'b Stress) -> View<'b> {
-        View {
-            corridor: self.corridor,
-            exporter: self.set.exporter,
-            case: &self.set.present,
-            settled: &stress.settled,
-            e_kv: stress.sources.e_kv,
-        }
-    }
-
-    fn intact(&self, stress: &Stress, angle_rad: f64) -> Intact {
-        let loaded = self.view(stress).loading(angle_rad, continuous);
-        Intact {
-            peak_mw: stress.settled.peak_mw(),
-            angle_margin_deg: (stress.end_rad - angle_rad).to_degrees(),
-            loading_pct: loaded.as_ref().map(|loaded| loaded.pct),
-            loaded_circuit: loaded.map(|loaded| loaded.circuit),
-            limit_mw: self.intact_limits(stress),
-        }
-    }
-
-    fn intact_limits(&self, stress: &Stress) -> IntactLimits {
-        let view = self.view(stress);
-        let angle = stress.end_rad - self.corridor.require.intact_angle_margin_deg.to_radians();
-        let within = |angle: f64| (angle < stress.end_rad).then(|| stress.transfer_at(angle));
-        IntactLimits {
-            angle: Some(stress.transfer_at(angle.max(stress.start_rad))),
-            loading: view.overload_rad(stress.start_rad, continuous).and_then(within),
-            voltage: view.sag_rad(stress.start_rad).and_then(within),
-        }
-    }
-
-    fn tightest(&self, stress: &Stress, now_rad: f64) -> Tightest {
-        let limits = self.set.outages.iter().map(|case| {
-            Outage::new(self.corridor, self.set.exporter, case, stress)
-                .map_or_else(|| separation(self.corridor), |outage| outage.limits(now_rad))
-        });
-        tightest(limits, &self.intact_limits(stress), stress)
-    }
-
-    /// gᵀ C g with g the gradient of the tightest limit by R and X of both sides; the transfer is measured.
-    fn variance(&self, base: &Stress, now_rad: f64, tightest: &Tightest, covariance: &Matrix4<f64>) -> f64 {
-        const STEP: f64 = 1e-3;
-        let crossing = match (tightest.outage, tightest.criterion) {
-            (Some(index), Criterion::Area) => self.crossing(base, index, now_rad),
-            _ => None,
-        };
-        let mut gradient = nalgebra::Vector4::zeros();
-        for (parameter, slope) in gradient.iter_mut().enumerate() {
-            if covariance[(parameter, parameter)] <= 0.0 {
-                continue;
-            }
-            let side = usize::from(parameter / 2 != self.set.exporter);
-            let mut z = base.sources.z;
-            let step = STEP * z[side].norm();
-            z[side] += if parameter % 2 == 0 { C64::new(step, 0.0) } else { C64::new(0.0, step) };
-            let (stress, _) = self.stress(z);
-            let limit_mw = self.limit(&stress, tightest, crossing.as_ref());
-            *slope = limit_mw.map_or(0.0, |limit_mw| (limit_mw - tightest.limit_mw) / step);
-        }
-        (gradient.transpose() * covariance * gradient)[0]
-    }
-
-    /// Where an outage's area margin crosses the required one, and how steeply.
-    fn crossing(&self, stress: &Stress, outage: usize, now_rad: f64) -> Option<Crossing> {
-        const STEP_RAD: f64 = 1e-4;
-        let outage = Outage::new(self.corridor, self.set.exporter, &self.set.outages[outage], stress)?;
-        let angle_rad = outage.area_limit_rad(now_rad)?;
-        let excess = outage.area_excess(angle_rad);
-        let slope = (excess - outage.area_excess(angle_rad - STEP_RAD)) / STEP_RAD;
-        (slope < 0.0).then_some(Crossing { angle_rad, excess, slope })
-    }
-
-    /// The limit that was the tightest one, with slightly other sources.
-    fn limit(&self, stress: &Stress, tightest: &Tightest, crossing: Option<&Crossing>) -> Option<f64> {
-        let Some(index) = tightest.outage else {
-            let limits = self.intact_limits(stress);
-            return match tightest.criterion {
-                Criterion::Loading => limits.loading,
-                Criterion::Voltage => limits.voltage,
-                _ => limits.angle,
-            };
-        };
-        let outage = Outage::new(self.corridor, self.set.exporter, &self.set.outages[index], stress)?;
-        match tightest.criterion {
-            Criterion::Angle => outage.angle_limit(),
-            Criterion::Area => crossing.map(|crossing| {
-                // The implicit function theorem: the crossing moves by the change of the excess over its slope.
-                let moved = (outage.area_excess(crossing.angle_rad) - crossing.excess) / crossing.slope;
-                stress.transfer_at(crossing.angle_rad - moved)
-            }),
-            Criterion::Loading => outage.loading_limit(),
-            Criterion::Voltage => outage.voltage_limit(),
-            Criterion::Separation => None,
-        }
-    }
-}
-
-/// A point where an excess falls through zero.
-#[derive(Debug, Clone, Copy)]
-struct Crossing {
-    angle_rad: f64,
-    excess: f64,
-    slope: f64,
-}
-
-fn tightest(outages: impl Iterator<Item = OutageLimits>, intact: &IntactLimits, stress: &Stress) -> Tightest {
-    let peak = stress.transfer_at(stress.end_rad);
-    let mut tightest = Tightest { limit_mw: peak, outage: None, criterion: Criterion::Angle };
-    let mut consider = |outage, criterion, limit: Option<f64>| {
-        if let Some(limit_mw) = limit.filter(|limit_mw| *limit_mw < tightest.limit_mw) {
-            tightest = Tightest { limit_mw, outage, criterion };
-        }
-    };
-    for (index, limits) in outages.enumerate() {
-        consider(Some(index), Criterion::Separation, limits.separation);
-        consider(Some(index), Criterion::Angle, limits.angle);
-        consider(Some(index), Criterion::Area, limits.area);
-        consider(Some(index), Criterion::Loading, limits.loading);
-        consider(Some(index), Criterion::Voltage, limits.voltage);
-    }
-    consider(None, Criterion::Angle, intact.angle);
-    consider(None, Criterion::Loading, intact.loading);
-    consider(None, Criterion::Voltage, intact.voltage);
-    tightest
-}
-
-fn separation(corridor: &Corridor) -> OutageLimits {
-    OutageLimits { separation: (!corridor.require.accept_separation).then_some(0.0), ..OutageLimits::default() }
 }
 
 fn separated(name: std::sync::Arc<str>, corridor: &Corridor) -> OutageRecord {

@@ -11,12 +11,14 @@ mod power_angle;
 mod reclose;
 mod record;
 mod root;
+mod scene;
+mod sensitivity;
 mod stress;
 mod swing;
 mod trend;
 mod view;
 
-pub use engine::{CircuitFlow, Engine, Judgement, Operating};
+pub use engine::{Behind, CircuitFlow, Engine, Judgement, Present, Seated};
 pub use machine::Machine;
 pub use picture::{OutagePicture, Picture};
 pub use power_angle::PowerAngle;

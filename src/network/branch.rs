@@ -3,7 +3,7 @@
 use super::{C64, TwoPort};
 use crate::{
     feed::End,
-    grid::{Circuit, FaultKind, Line},
+    grid::{Circuit, FaultKind, Line, LineTotals},
 };
 
 /// Admittance matrix of a reciprocal branch, S.
@@ -34,12 +34,8 @@ impl From<TwoPort> for Branch {
 
 /// Series impedance (ohm) and shunt admittance (S) of the whole circuit.
 fn totals(line: Line) -> (C64, C64) {
-    match line {
-        Line::PerKm { length_km, r_ohm_per_km, x_ohm_per_km, b_us_per_km } => {
-            (C64::new(r_ohm_per_km, x_ohm_per_km) * length_km, C64::new(0.0, b_us_per_km * length_km * 1e-6))
-        }
-        Line::Totals { r_ohm, x_ohm, b_us } => (C64::new(r_ohm, x_ohm), C64::new(0.0, b_us * 1e-6)),
-    }
+    let LineTotals { r_ohm, x_ohm, b_us } = line.totals();
+    (C64::new(r_ohm, x_ohm), C64::new(0.0, b_us * 1e-6))
 }
 
 /// The piece of a circuit between two fractions of it, with those inserted banks that stand in it.

@@ -1,39 +1,33 @@
-//! What stands behind each terminal.
+//! What stands behind each terminal: the Thevenin impedances of both sides, learned from sudden steps.
+//!
+//! A tap, a shunt, a lost unit moves one side of a corridor only, and by far more than its background. Judged at both
+//! ends together, such a step tells which side moved, and so how stiff the other one is:
+//!
+//! 1. [`Learner::observe`] takes terminal quantities frame by frame into short means, and compares them with a robust
+//!    background;
+//! 2. where the means before and after an instant differ by far more than that, both are fitted to terminal voltages, four
+//!    cases of what may have happened are weighed, and the impedances updated;
+//! 3. [`Estimate`] says what is known, [`Step`] what was seen, and [`store`] keeps it over a restart.
+//!
+//! Everything is a deterministic function of configuration and observations, in constant memory.
+//!
+//! Sources: Bar-Shalom, Li and Kirubarajan, *Estimation with Applications to Tracking and Navigation*, 2001 (ch. 10:
+//! iterated extended Kalman filter; ch. 11: static multiple models, Gaussian sums) · Schweppe, *Power system static-state
+//! estimation*, IEEE Trans. PAS 1970 (weighted least squares) · Vu, Begovic, Novosel and Saha, IEEE Trans. Power Systems
+//! 1999 (Thevenin equivalents from local phasors) · Rousseeuw and Croux, JASA 1993 (median absolute deviation).
 
-use nalgebra::{Matrix4, Vector4};
+mod background;
+mod detector;
+mod estimate;
+mod hypothesis;
+mod learner;
+mod log;
+pub mod store;
+mod terminal;
+mod watch;
+mod window;
 
-use crate::grid::ConfiguredSource;
-
-/// Both sides' Thevenin impedances as they are known now: R `from`, X `from`, R `to`, X `to`, ohm.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Estimate {
-    /// Mean.
-    pub mean: Vector4<f64>,
-    /// Covariance.
-    pub covariance: Matrix4<f64>,
-    /// Steps that each side's impedance was learned from.
-    pub steps: [u64; 2],
-}
-
-impl Estimate {
-    /// As configured.
-    pub fn configured(sources: &[ConfiguredSource; 2]) -> Self {
-        let [a, b] = sources;
-        let sd = Vector4::new(a.r_sd_ohm(), a.x_sd_ohm(), b.r_sd_ohm(), b.x_sd_ohm());
-        Self {
-            mean: Vector4::new(a.r_ohm, a.x_ohm, b.r_ohm, b.x_ohm),
-            covariance: Matrix4::from_diagonal(&sd.component_mul(&sd)),
-            steps: [0, 0],
-        }
-    }
-
-    /// Standard deviation of each.
-    pub fn sd(&self) -> Vector4<f64> {
-        self.covariance.diagonal().map(|v| v.max(0.0).sqrt())
-    }
-
-    /// The impedances behind `from` and `to`, ohm.
-    pub fn z_ohm(&self) -> [nalgebra::Complex<f64>; 2] {
-        [0, 2].map(|k| nalgebra::Complex::new(self.mean[k], self.mean[k + 1]))
-    }
-}
+pub use estimate::Estimate;
+pub use learner::Learner;
+pub use log::{Moved, SpreadPoint, Step};
+pub use terminal::Observation;

@@ -22,7 +22,7 @@ pub fn assess_lines(config: &str, lines: &[u8]) -> Vec<Assessment> {
     decoder.push(lines, &mut tally, &mut frames);
     decoder.finish(&mut tally, &mut frames);
     let mut holder = Holder::new(&channels, TimeDelta::seconds(10));
-    let mut desk = Desk::new(&config, &channels);
+    let mut desk = Desk::detailed(&config, &channels);
     let snapshots = frames.iter().filter_map(|frame| holder.take(frame));
     snapshots.map(|snapshot| desk.assess(&snapshot)).last().expect("at least one frame")
 }

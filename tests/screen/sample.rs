@@ -270,5 +270,6 @@ fn detail(transfer_mw: f64, picture: Picture) -> Detail {
         buses: vec![bus("Skarn", 408.02, 14.1), bus("Velm", 402.4, 0.0)],
         circuits: CIRCUITS.iter().map(circuit).collect(),
         picture,
+        learned: Arc::default(),
     }
 }

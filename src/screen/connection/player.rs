@@ -197,7 +197,7 @@ mod tests {
         fs::write(&path, recorded()).unwrap();
         let channels = Arc::new(Channels::new(&config));
         let holder = Holder::new(&channels, TimeDelta::seconds(10));
-        let desk = Desk::new(&config, &channels);
+        let desk = Desk::detailed(&config, &channels);
         (Player::new(Recording::Files(vec![path.clone()]), channels, holder, desk).unwrap(), path)
     }
 

@@ -1,0 +1,98 @@
+//! Keeps what was learned over a restart: one small JSON file for all corridors.
+
+use std::{
+    collections::BTreeMap,
+    fs::{self, File},
+    io::{self, Read, Write},
+    path::{Path, PathBuf},
+};
+
+use chrono::{DateTime, Utc};
+use serde::{Deserialize, Serialize};
+use thiserror::Error;
+
+use super::Step;
+
+/// No state file of sane size is larger.
+const LARGEST_BYTES: u64 = 16 << 20;
+const VERSION: u32 = 1;
+
+/// What was learned of one corridor.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Memory {
+    /// Configured means and variances, which it must still fit: R and X `from`, R and X `to`.
+    pub(super) configured: [[f64; 2]; 4],
+    pub(super) mean: [f64; 4],
+    pub(super) covariance: [[f64; 4]; 4],
+    pub(super) steps: [u64; 2],
+    pub(super) both: f64,
+    pub(super) time: DateTime<Utc>,
+    pub(super) recent: Vec<Step>,
+}
+
+/// Why what was learned is not taken up again.
+#[derive(Debug, Error)]
+pub enum StoreError {
+    /// The file cannot be read or written.
+    #[error("{}: {source}; check that the directory exists and is writable", path.display())]
+    File {
+        /// Which file.
+        path: PathBuf,
+        /// Why.
+        source: io::Error,
+    },
+    /// The file is damaged.
+    #[error("{}: not a state file ({what}); it is ignored, and will be written anew", path.display())]
+    Damaged {
+        /// Which file.
+        path: PathBuf,
+        /// What is wrong.
+        what: String,
+    },
+    /// What was learned belongs to another configuration.
+    #[error("learned with other configured sources; learning starts again from the configuration")]
+    OtherSources,
+    /// The numbers make no sense.
+    #[error("impossible impedances or spreads; learning starts again from the configuration")]
+    Impossible,
+}
+
+#[derive(Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct StateFile {
+    version: u32,
+    corridors: BTreeMap<String, Memory>,
+}
+
+/// Reads what was learned, by corridor; nothing where there is no file yet.
+pub fn load(path: &Path) -> Result<BTreeMap<String, Memory>, StoreError> {
+    let file = match File::open(path) {
+        Err(error) if error.kind() == io::ErrorKind::NotFound => return Ok(BTreeMap::new()),
+        opened => opened.map_err(|source| StoreError::File { path: path.to_owned(), source })?,
+    };
+    let mut bytes = Vec::new();
+    file.take(LARGEST_BYTES)
+        .read_to_end(&mut bytes)
+        .map_err(|source| StoreError::File { path: path.to_owned(), source })?;
+    let damaged = |what: String| StoreError::Damaged { path: path.to_owned(), what };
+    let state: StateFile = serde_json::from_slice(&bytes).map_err(|error| damaged(error.to_string()))?;
+    if state.version != VERSION {
+        return Err(damaged(format!("version {} instead of {VERSION}", state.version)));
+    }
+    Ok(state.corridors)
+}
+
+/// Writes what was learned, whole or not at all: beside the file first, then in its place.
+pub fn save(path: &Path, corridors: BTreeMap<String, Memory>) -> Result<(), StoreError> {
+    let mut beside = path.as_os_str().to_owned();
+    beside.push(".new");
+    let write = || {
+        let mut file = File::create(&beside)?;
+        serde_json::to_writer(&mut file, &StateFile { version: VERSION, corridors })?;
+        file.flush()?;
+        file.sync_all()?;
+        fs::rename(&beside, path)
+    };
+    write().map_err(|source| StoreError::File { path: path.to_owned(), source })
+}

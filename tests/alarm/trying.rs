@@ -107,7 +107,7 @@ impl Bed {
         let day = String::from_utf8(zstd::decode_all(&day[..]).unwrap()).unwrap();
         let time = |line: &str| line.split('T').nth(1).map(|time| time[..5].to_owned());
         let evening = day.lines().filter(|line| time(line).is_some_and(|t| ("18:50".."19:50").contains(&&*t)));
-        let evening: String = evening.map(|line| format!("{line}\n")).collect();
+        let evening = evening.collect::<Vec<_>>().join("\n");
         let calm =
             "[[alarm]]\nname = \"time short\"\nenabled = false\n[[alarm]]\nname = \"headroom thin\"\nsetpoint = 10\n";
         for (name, text) in [

@@ -17,6 +17,7 @@ use crate::{
     feed::{Channels, Holder, Monitor},
     report::summary::Summary,
     screen::{
+        Ending,
         connection::{Player, Recording, Replay},
         state::parse_time,
     },
@@ -87,7 +88,8 @@ pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Resu
         replay.begin(at, speed, playing);
         replay.run();
     });
-    stage::show(stage::runtime()?, config, parcels, orders, connection)
+    let ending = stage::show(&stage::runtime()?, config, parcels, orders)?;
+    if ending == Ending::Disconnected && connection.join().is_err() { Err(stage::fault()) } else { Ok(()) }
 }
 
 /// Every frame as fast as it goes, and what came of it as text.

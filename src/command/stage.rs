@@ -3,7 +3,6 @@
 use std::{
     io::{IsTerminal, stdout},
     sync::{Arc, mpsc::SyncSender},
-    thread::JoinHandle,
 };
 
 use tokio::{
@@ -35,20 +34,18 @@ pub(super) fn runtime() -> Result<Runtime, Failure> {
     Ok(Builder::new_multi_thread().worker_threads(2).enable_all().build()?)
 }
 
-/// Shows a connection until the user leaves, or it breaks.
+/// Shows a connection until the user leaves, or it breaks; the terminal is given back by then.
 pub(super) fn show(
-    runtime: Runtime,
+    runtime: &Runtime,
     config: &Config,
     parcels: watch::Receiver<Option<Parcel>>,
     orders: SyncSender<Order>,
-    connection: JoinHandle<()>,
-) -> Result<(), Failure> {
+) -> Result<Ending, Failure> {
     let app = App::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
-    let ending = runtime.block_on(screen::run(app, parcels, orders));
-    // A thread that waits for standard input cannot be stopped, nor need it be waited for.
-    runtime.shutdown_background();
-    if ending? == Ending::Disconnected && connection.join().is_err() {
-        return Err("the thread that assesses failed; this is a fault of the program, please report it".into());
-    }
-    Ok(())
+    Ok(runtime.block_on(screen::run(app, parcels, orders))?)
+}
+
+/// What to say of a connection that broke down.
+pub(super) fn fault() -> Failure {
+    "the thread that assesses failed; this is a fault of the program, please report it".into()
 }

@@ -55,6 +55,8 @@ pub struct Config {
     pub alarms: Vec<Vec<Definition>>,
     /// Where the journal is kept.
     pub journal: JournalSettings,
+    /// Where `watch` keeps what it learned, from this file's folder (`[learning] state_file`).
+    pub state_file: Option<String>,
 }
 
 /// Measurement classes (`[measurement]`): common metering practice by default.
@@ -150,14 +152,17 @@ fn read(mut root: Section<'_>) -> Config {
         .map(|mut section| (section.sections("alarm", alarm::MOST_ALARMS), corridor::read(section, &mut names)))
         .unzip();
     let grid = Grid { frequency_hz, corridors };
+    let mut learned = root.section("learning");
+    let state_file = learned.text("state_file").filter(|name| !name.is_empty());
     Config {
         time_zone,
         measurement: measurement(root.section("measurement")),
         feed: feed(root.section("feed")),
         channel_names: channels::read(root.section("channels"), &grid, &names),
-        learning: learning(root.section("learning")),
+        learning: learning(learned),
         alarms: alarm::all(&mut root, &grid, alarms),
         journal: journal::read(root.section("journal")),
+        state_file,
         grid,
     }
 }

@@ -3,6 +3,7 @@
 //! What is sent is always the whole present, in a [`Parcel`] that is cheap to clone. Only the newest is kept, so a
 //! slow screen never slows the desk, and a fast desk never floods the screen.
 
+mod keeper;
 mod live;
 mod parcel;
 mod player;
@@ -10,6 +11,7 @@ mod recording;
 mod replay;
 mod report;
 
+pub use keeper::Keeper;
 pub use live::watch;
 pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Seeking};
 pub use player::{Goal, Place, Player};

@@ -232,7 +232,7 @@ impl Replay {
             findings: Vec::new(),
         });
         let inputs = trouble.chain(report::inputs(self.player.monitor())).collect();
-        let feed = FeedReport { inputs, frames: here.taken as u64, arrived: None, ended: false };
+        let feed = FeedReport { inputs, frames: here.taken as u64, ..FeedReport::default() };
         let chronicle = here.chronicle.clone();
         self.parcels.send_replace(Some(Parcel { chronicle, feed, origin: Origin::Replay(playback) }));
     }

@@ -63,6 +63,16 @@ fn broken_configurations_say_all_that_is_wrong() {
     }
 }
 
+/// The bundled configurations are right, and the reference says the defaults that the program has.
+#[test]
+fn bundled_configurations_are_read() {
+    let reference = Config::load("config/reference.toml".as_ref()).unwrap_or_else(|errors| panic!("{errors}"));
+    assert_eq!(reference.measurement, MeasurementSettings::default());
+    assert_eq!(reference.learning, LearningSettings::default());
+    assert_eq!(reference.feed, FeedSettings { inputs: reference.feed.inputs.clone(), ..FeedSettings::default() });
+    Config::load("config/demo.toml".as_ref()).unwrap_or_else(|errors| panic!("{errors}"));
+}
+
 #[test]
 fn every_key_is_read() {
     let config = Config::parse(VALID, "valid.toml").unwrap_or_else(|errors| panic!("{errors}"));

@@ -2,6 +2,7 @@
 //!
 //! To add a key: one line where its table is read, with its limits and its default.
 
+mod alarm;
 mod channels;
 mod check;
 mod corridor;
@@ -10,6 +11,7 @@ mod error;
 pub(crate) mod file;
 pub(crate) mod findings;
 pub(crate) mod given;
+mod journal;
 pub(crate) mod limits;
 mod names;
 pub(crate) mod section;
@@ -20,8 +22,9 @@ use std::{collections::BTreeMap, path::Path};
 use chrono_tz::{TZ_VARIANTS, Tz};
 
 pub use error::{ConfigError, ConfigErrors};
+pub use journal::JournalSettings;
 
-use crate::grid::Grid;
+use crate::{alarm::Definition, grid::Grid};
 use check::GridNames;
 use findings::Findings;
 use limits::{NOT_NEGATIVE, POSITIVE};
@@ -48,6 +51,10 @@ pub struct Config {
     pub channel_names: BTreeMap<String, String>,
     /// How the sources are learned.
     pub learning: LearningSettings,
+    /// The alarms of each corridor, in the order of the corridors (`[[alarm]]`, `[[corridor.alarm]]`).
+    pub alarms: Vec<Vec<Definition>>,
+    /// Where the journal is kept.
+    pub journal: JournalSettings,
     /// Where `watch` keeps what it learned, from this file's folder (`[learning] state_file`).
     pub state_file: Option<String>,
 }
@@ -140,7 +147,10 @@ fn read(mut root: Section<'_>) -> Config {
 
     let mut names = GridNames::new(root.findings());
     let corridors = root.required_sections("corridor", MOST_CORRIDORS);
-    let corridors = corridors.into_iter().map(|section| corridor::read(section, &mut names)).collect();
+    let (alarms, corridors) = corridors
+        .into_iter()
+        .map(|mut section| (section.sections("alarm", alarm::MOST_ALARMS), corridor::read(section, &mut names)))
+        .unzip();
     let grid = Grid { frequency_hz, corridors };
     let mut learned = root.section("learning");
     let state_file = learned.text("state_file").filter(|name| !name.is_empty());
@@ -150,6 +160,8 @@ fn read(mut root: Section<'_>) -> Config {
         feed: feed(root.section("feed")),
         channel_names: channels::read(root.section("channels"), &grid, &names),
         learning: learning(learned),
+        alarms: alarm::all(&mut root, &grid, alarms),
+        journal: journal::read(root.section("journal")),
         state_file,
         grid,
     }

@@ -39,6 +39,11 @@ impl<'a> Section<'a> {
         self.items.is_some()
     }
 
+    /// Whether the file gives a key.
+    pub fn has(&self, key: &str) -> bool {
+        self.items.is_some_and(|items| items.contains_key(key))
+    }
+
     /// Where a key stands, or where it is missed.
     pub fn place(&self, key: &str) -> Place {
         let found = self.items.and_then(|items| items.get_key_value(key));

@@ -4,6 +4,7 @@ use std::fmt;
 
 use super::table::Table;
 use crate::{
+    alarm::{Definition, Suppression},
     config::Config,
     grid::{
         Bus, Circuit, CombinedOutage, Corridor, FROM, Fault, FaultKind, Line, LineTotals, Load, Side, TO,
@@ -16,10 +17,12 @@ pub struct Understood<'a>(pub &'a Config);
 
 impl fmt::Display for Understood<'_> {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let Config { grid, time_zone, measurement, feed, channel_names, learning, state_file } = self.0;
+        let Config { grid, time_zone, measurement, feed, channel_names, learning, alarms, journal, state_file } =
+            self.0;
         writeln!(f, "{} at {} Hz", counted(grid.corridors.len(), "corridor"), grid.frequency_hz)?;
-        for corridor in &grid.corridors {
+        for (corridor, alarms) in grid.corridors.iter().zip(alarms) {
             write!(f, "\n{}", UnderstoodCorridor(corridor))?;
+            write!(f, "\n  alarms\n{}", alarms_table(alarms))?;
         }
         let inputs =
             if feed.inputs.is_empty() { "named on the command line".to_owned() } else { feed.inputs.join(", ") };
@@ -37,6 +40,7 @@ impl fmt::Display for Understood<'_> {
         } else {
             writeln!(f, "    sources: as configured")?;
         }
+        writeln!(f, "    journal: entries are kept for {} days", journal.keep_days)?;
         writeln!(f, "    times shown in {}", time_zone.name())
     }
 }
@@ -75,6 +79,26 @@ impl fmt::Display for UnderstoodCorridor<'_> {
         }
         Ok(())
     }
+}
+
+fn alarms_table(alarms: &[Definition]) -> Table<7> {
+    let row = |alarm: &Definition| {
+        let Definition { name, kind, priority, setpoint, deadband, on_delay, off_delay, suppress_while, .. } = alarm;
+        let Suppression { circuits_out, transfer_below_mw } = suppress_while;
+        let out = circuits_out.iter().map(|circuit| format!("{circuit} is out"));
+        let below = transfer_below_mw.iter().map(|mw| format!("less than {mw} MW"));
+        [
+            name.to_string(),
+            priority.to_string(),
+            kind.to_string(),
+            figure(*setpoint),
+            figure(*deadband),
+            format!("{} / {} s", on_delay.as_seconds_f64(), off_delay.as_seconds_f64()),
+            out.chain(below).collect::<Vec<_>>().join(" or "),
+        ]
+    };
+    let heading = ["", "priority", "on", "setpoint", "deadband", "delays", "suppressed while"];
+    Table::new(heading, alarms.iter().map(row))
 }
 
 fn buses_table(corridor: &Corridor) -> Table<4> {

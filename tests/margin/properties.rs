@@ -320,20 +320,46 @@ fn two_equal_circuits_are_one_of_half_the_impedance() {
     assert!(two.outages[0].peak_mw.unwrap() < peak(&two));
 }
 
-/// A corridor judged some spreads below its headroom is thin before it is so by the headroom itself.
-#[test]
-fn the_state_may_be_judged_below_the_headroom() {
-    let invented = Invented {
-        circuits: vec![(200.0, None), (220.0, None), (240.0, None)],
+/// Three measured circuits that carry a good deal.
+fn three_circuits() -> Invented {
+    Invented {
+        circuits: vec![(200.0, None), (220.0, Some(15.0)), (240.0, None)],
         sources: [[1.0, 20.0, 0.0], [1.0, 15.0, 0.0]],
         stored_energy: [60_000.0, 90_000.0],
         fault: ("three-phase", 0.0, 100.0),
         require: (20.0, 0.1),
         rating_a: 3000.0,
         kv: [405.0, 400.0],
-        angle_deg: 8.0,
-        loads: [[0.0; 2]; 2],
-    };
+        angle_deg: 9.0,
+        loads: [[300.0, 50.0], [700.0, 90.0]],
+    }
+}
+
+#[test]
+fn one_wrong_meter_is_named_and_hardly_moves_the_headroom() {
+    let invented = three_circuits();
+    let right = invented.assess();
+    let allowed_mw = 0.01 * right.intact.as_ref().expect("a state").peak_mw;
+    let exact = invented.values(false);
+    for (channel, value) in exact.iter().filter(|(channel, _)| channel.starts_with('L')) {
+        for wrong in [0.9, 1.1, -1.0] {
+            let mut values = exact.clone();
+            values.insert(channel.clone(), wrong * value);
+            let found = assess(&invented.config(false), &values);
+            let moved = found.headroom_mw.expect("a state") - right.headroom_mw.expect("a state");
+            assert!(moved.abs() < allowed_mw, "{channel} times {wrong}: {moved} MW");
+            let suspects: Vec<_> = found.fit.suspects.iter().map(|suspect| &**suspect).collect();
+            assert!(suspects.is_empty() || suspects == [channel], "{channel} times {wrong}: {suspects:?}");
+            // A tenth of a few Mvar is within the metering class; a tenth of these MW is not.
+            assert!(!suspects.is_empty() || !channel.contains(".mw"), "{channel} times {wrong} goes unnoticed");
+        }
+    }
+}
+
+/// A corridor judged some spreads below its headroom is thin before it is so by the headroom itself.
+#[test]
+fn the_state_may_be_judged_below_the_headroom() {
+    let invented = three_circuits();
     let judged = |spreads: f64, thin_mw: f64| {
         let keys = format!("name = \"Skarn-Velm\"\nthin_mw = {thin_mw}\nstate_spreads = {spreads}\n");
         let config = invented.config(false).replace("name = \"Skarn-Velm\"\n", &keys);

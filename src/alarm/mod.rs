@@ -1,0 +1,27 @@
+//! Alarms an operator can live with, after IEC 62682 and ANSI/ISA-18.2: what they watch, when they are raised, and what
+//! the operator does with them.
+//!
+//! A [`Definition`] says what to watch; a [`Board`] keeps the state of each alarm. Assessments, the passing of time and
+//! the operator's actions go in, [`Transition`]s come out. Time is the frames' time, so that the same frames give
+//! the same transitions, live or replayed.
+
+mod board;
+mod built_in;
+mod condition;
+mod corridor_board;
+mod definition;
+mod kind;
+mod operator;
+mod reading;
+mod state;
+mod transition;
+pub mod trial;
+
+pub use board::{AlarmId, Board, Summary};
+pub use built_in::{BUILT_IN, built_in};
+pub use corridor_board::{Alarm, CorridorBoard, Standing};
+pub use definition::{Definition, Priority, Suppression};
+pub use kind::{Direction, Kind};
+pub use operator::{Action, LONGEST_SHELVING, Refusal};
+pub use state::{Event, State};
+pub use transition::{Note, Restored, Transition};

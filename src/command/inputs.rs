@@ -15,7 +15,7 @@ pub(super) fn chosen(named: &[Input], config: &Config) -> Result<Vec<Input>, Fai
         inputs = config.feed.inputs.iter().map(|input| input.parse()).collect::<Result<_, _>>()?;
     }
     if inputs.is_empty() {
-        return Err("no input: name one with --input, or set `inputs` under [feed] in the configuration".into());
+        return Err("no input: name a file or an --input, or set `inputs` under [feed] in the configuration".into());
     }
     if inputs.iter().filter(|input| **input == Input::Stdin).count() > 1 {
         return Err("standard input can be read only once".into());
@@ -25,9 +25,7 @@ pub(super) fn chosen(named: &[Input], config: &Config) -> Result<Vec<Input>, Fai
 
 /// How long a value stands.
 pub(super) fn max_age(config: &Config) -> TimeDelta {
-    #[allow(clippy::cast_possible_truncation, reason = "saturates")]
-    let milliseconds = (config.feed.max_age_s * 1000.0) as i64;
-    TimeDelta::try_milliseconds(milliseconds).unwrap_or(TimeDelta::MAX)
+    config.feed.max_age()
 }
 
 /// Keeps values as long as the configuration says.

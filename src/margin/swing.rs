@@ -68,7 +68,8 @@ impl Swing {
             let jet = self.jet(moment);
             let left = end - moment.time_s;
             if jet.last_term(left) <= TOLERANCE_RAD {
-                return Some(Moment { time_s: end, ..jet.at(left) });
+                let reached = Moment { time_s: end, ..jet.at(left) };
+                return (reached.angle_rad + self.kinetic(&reached)).is_finite().then_some(reached);
             }
             moment = jet.at(jet.reach_s().min(left));
         }

@@ -1,6 +1,6 @@
 //! One drill, and what desks make of it.
 
-use std::sync::Arc;
+use std::{sync::Arc, time::Duration};
 
 use chrono::TimeDelta;
 use tautline::{
@@ -30,12 +30,11 @@ pub struct Outcome {
     pub looks: Vec<Look>,
 }
 
-/// A headroom learned, as configured, and with the true sources, MW.
+/// A headroom's errors against that of the true sources, MW: learned, and as configured.
 pub struct Look {
-    pub learned_mw: f64,
-    pub sd_mw: f64,
-    pub configured_mw: f64,
-    pub true_mw: f64,
+    pub learned_off: f64,
+    pub learned_sd: f64,
+    pub configured_off: f64,
 }
 
 impl Course {
@@ -59,7 +58,7 @@ impl Course {
 
     /// Frames as they stand in a feed: with what is held of earlier ones.
     pub fn snapshots(&self, frames: impl Iterator<Item = Frame>) -> impl Iterator<Item = Snapshot> {
-        let max_age = TimeDelta::milliseconds((self.config.feed.max_age_s * 1e3) as i64);
+        let max_age = TimeDelta::from_std(Duration::from_secs_f64(self.config.feed.max_age_s)).unwrap();
         let mut holder = Holder::new(&self.channels, max_age);
         frames.filter_map(move |frame| holder.take(&frame))
     }
@@ -104,14 +103,11 @@ impl Course {
                 next_look_s += LOOK_EVERY_S;
                 let own = desk.assess(&snapshot);
                 let [configured, truth] = others.each_mut().map(|other| other.assess(&snapshot).headroom_mw);
-                looks.extend((|| {
-                    Some(Look {
-                        learned_mw: own.headroom_mw?,
-                        sd_mw: own.headroom_sd_mw?,
-                        configured_mw: configured?,
-                        true_mw: truth?,
-                    })
-                })());
+                let headrooms = [own.headroom_mw, own.headroom_sd_mw, configured, truth];
+                if let [Some(learned), Some(learned_sd), Some(configured), Some(truth)] = headrooms {
+                    let (learned_off, configured_off) = (learned - truth, configured - truth);
+                    looks.push(Look { learned_off, learned_sd, configured_off });
+                }
             }
             let newest = desk.learner().steps().next_back();
             steps.extend(newest.filter(|step| steps.last() != Some(*step)));

@@ -116,7 +116,7 @@ fn coincident_steps_get_no_foothold() {
 fn configured_sources_are_held_at_every_frame() {
     let course = poor(2, |_| ());
     let mut desk = course.holding();
-    let sides = desk.corridor().sides.clone();
+    let sides = desk.corridor().sides;
     for snapshot in course.snapshots(course.drill()).step_by(15) {
         let assessment = desk.assess(&snapshot);
         for (record, side) in assessment.sources.iter().zip(&sides) {

@@ -40,11 +40,14 @@ fn drills_with_coincident_steps_come_near_their_truth() {
     assert!(drills.headroom_error_left(0.5) <= 0.5, "{drills}");
 }
 
+/// What a kind of drills is called, and how one is made.
+type Kind = (&'static str, fn(u64) -> Course);
+
 /// The long run: `cargo test --release --test learning long_run -- --ignored --nocapture`.
 #[test]
 #[ignore = "minutes; prints the statistics of 200 drills of each kind"]
 fn long_run() {
-    let kinds: [(&str, fn(u64) -> Course); 11] = [
+    let kinds: [Kind; 11] = [
         ("mixed", |seed| Course::new(&mixed(seed))),
         ("coincident", |seed| Course::new(&coincident(seed))),
         ("good telemetry", |seed| Course::new(&Invention { with_slow_telemetry: false, ..mixed(seed) })),

@@ -40,7 +40,7 @@ fn configured_sources_are_held() {
     for (bus, side) in corridor.buses.iter().zip(&corridor.sides) {
         let (record, source) = (&record["sources"][&*bus.name], side.source);
         let [r, x, r_sd, x_sd] = ["r_ohm", "x_ohm", "r_sd", "x_sd"].map(|key| record[key].as_f64().unwrap());
-        assert_eq!([r, x], [source.r_ohm, source.x_ohm]);
+        assert_eq!([r, x].map(f64::to_bits), [source.r_ohm, source.x_ohm].map(f64::to_bits));
         assert!((r_sd - source.r_sd_ohm()).abs() < 1e-12 && (x_sd - source.x_sd_ohm()).abs() < 1e-12);
         assert_eq!((record["basis"].as_str(), record["steps"].as_u64()), (Some("configured"), Some(0)));
     }

@@ -50,11 +50,11 @@ impl Statistics {
             self.in_spreads.push(off / sd[2 * side + 1]);
         }
         let looks = &outcome.looks;
-        self.headroom_in_spreads.extend(looks.iter().map(|look| (look.learned_mw - look.true_mw) / look.sd_mw));
-        let count = looks.len() as f64;
+        self.headroom_in_spreads.extend(looks.iter().map(|look| look.learned_off / look.learned_sd));
+        let mean = |sum: f64| sum / looks.len() as f64;
         self.headroom_off_mw.push([
-            looks.iter().map(|look| (look.learned_mw - look.true_mw).abs()).sum::<f64>() / count,
-            looks.iter().map(|look| (look.configured_mw - look.true_mw).abs()).sum::<f64>() / count,
+            mean(looks.iter().map(|look| look.learned_off.abs()).sum()),
+            mean(looks.iter().map(|look| look.configured_off.abs()).sum()),
         ]);
         let start = outcome.facts[0].time;
         let end = outcome.facts[outcome.facts.len() - 1].time;
@@ -105,6 +105,7 @@ impl Statistics {
     }
 }
 
+#[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "a place in a list")]
 fn quantile(values: impl Iterator<Item = f64>, part: f64) -> f64 {
     let mut values: Vec<f64> = values.collect();
     values.sort_by(f64::total_cmp);

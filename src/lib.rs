@@ -9,6 +9,26 @@
 //! 3. [`screen`] and [`report`] show the assessments, and [`command`] ties a feed, a desk and one of these together.
 //!
 //! [`grid`] says what a corridor is, [`config`] reads one from a file, and [`drill`] makes feeds with known truth.
+//!
+//! ```
+//! use std::sync::Arc;
+//! use tautline::{config::Config, desk::Desk, feed::{Channels, Decoder, Format, Holder, Tally}};
+//!
+//! let config = Config::parse(include_str!("../tests/cases/two-area/config.toml"), "config.toml")?;
+//! let channels = Arc::new(Channels::new(&config));
+//! let (mut tally, mut frames) = (Tally::default(), Vec::new());
+//! let mut decoder = Decoder::new(Format::JsonLines, channels.clone());
+//! decoder.push(include_bytes!("../tests/cases/two-area/frames.jsonl"), &mut tally, &mut frames);
+//! decoder.finish(&mut tally, &mut frames);
+//!
+//! let mut holder = Holder::new(&channels, chrono::TimeDelta::seconds(10));
+//! let mut desk = Desk::new(&config, &channels);
+//! let snapshot = holder.take(&frames[0]).expect("the first frame is not older than any");
+//! let assessment = &desk.assess(&snapshot)[0];
+//! assert!((assessment.headroom_mw.expect("a state") - 47.65).abs() < 0.01);
+//! assert_eq!(assessment.binding.as_ref().and_then(|binding| binding.outage.as_deref()), Some("7-8 a"));
+//! # Ok::<(), Box<dyn std::error::Error>>(())
+//! ```
 #![forbid(unsafe_code)]
 
 pub mod alarm;

@@ -64,12 +64,19 @@ pub enum Sources {
     Configured,
 }
 
+impl Sources {
+    /// Lets the command line overrule the configuration.
+    pub(super) fn choose(chosen: Option<Self>, config: &mut Config) {
+        if let Some(sources) = chosen {
+            config.learning.enabled = sources == Self::Learned;
+        }
+    }
+}
+
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
     let mut config = Config::load(&options.config)?;
-    if let Some(sources) = options.sources {
-        config.learning.enabled = sources == Sources::Learned;
-    }
+    Sources::choose(options.sources, &mut config);
     let inputs = options.inputs(&config)?;
     // Inputs are read beside the thread that assesses.
     let runtime = runtime::Builder::new_multi_thread().worker_threads(2).enable_all().build()?;

@@ -3,9 +3,11 @@
 use super::{Failure, replay};
 use crate::{config::Config, screen::connection::Recording};
 
+/// `config/demo.toml`.
 const CONFIG: &str = include_str!("../../config/demo.toml");
+/// `replay-data/demo-day.jsonl.zst`.
 const DAY: &[u8] = include_bytes!("../../replay-data/demo-day.jsonl.zst");
-/// Recorded seconds in a second: the day in a quarter of an hour, say.
+/// Recorded seconds in a second: the day takes twelve minutes.
 const SPEED: u32 = 120;
 
 /// Replays the demo day, or prints its summary when standard output is not a terminal.

@@ -93,6 +93,7 @@ fn invent(options: &Options, folder: &Path) -> Result<(), Failure> {
         interval_s: 1.0,
         ..Invention::default()
     };
+    fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()))?;
     let Invented { config, scenario } = invention.invent();
     for (name, text) in [("config.toml", config), ("scenario.toml", scenario)] {
         let path = folder.join(name);

@@ -10,7 +10,7 @@ use std::{
 use clap::Args;
 use tokio::sync::watch;
 
-use super::{Failure, inputs, stage};
+use super::{Failure, assess::Sources, inputs, stage};
 use crate::{
     config::Config,
     desk::Desk,
@@ -36,6 +36,9 @@ pub struct Options {
     files: Vec<PathBuf>,
     #[command(flatten)]
     start: Start,
+    /// What stands behind the terminals [default: as the configuration says, else learned]
+    #[arg(long, value_enum)]
+    sources: Option<Sources>,
 }
 
 /// How to start.
@@ -54,7 +57,8 @@ pub struct Start {
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
-    let config = Config::load(&options.config)?;
+    let mut config = Config::load(&options.config)?;
+    Sources::choose(options.sources, &mut config);
     play(&config, Recording::Files(options.files.clone()), &options.start)
 }
 

@@ -9,7 +9,7 @@ use std::{
 use clap::Args;
 use tokio::sync::watch;
 
-use super::{Failure, inputs, stage};
+use super::{Failure, assess::Sources, inputs, stage};
 use crate::{
     config::Config,
     desk::Desk,
@@ -27,11 +27,15 @@ pub struct Options {
     /// udp-listen://[HOST]:PORT, unix:PATH or follow:PATH [default: the configuration's]
     #[arg(long, value_name = "INPUT")]
     input: Vec<Input>,
+    /// What stands behind the terminals [default: as the configuration says, else learned]
+    #[arg(long, value_enum)]
+    sources: Option<Sources>,
 }
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
-    let config = Config::load(&options.config)?;
+    let mut config = Config::load(&options.config)?;
+    Sources::choose(options.sources, &mut config);
     let inputs = inputs::chosen(&options.input, &config)?;
     stage::needs_terminal()?;
     let channels = Arc::new(Channels::new(&config));

@@ -17,11 +17,12 @@ use tautline::{
 
 use super::sample;
 
+#[allow(clippy::needless_pass_by_value, reason = "reads better where it is called")]
 /// A screen that watches these corridors live; each frame is ten minutes of them, then as given.
 pub fn live(assessments: Vec<Assessment>) -> App {
     let names: Vec<_> = assessments.iter().map(|assessment| &*assessment.corridor).collect();
     let mut app = App::new(sample::grid(&names), Tz::UTC, TimeDelta::seconds(10));
-    app.receive(Parcel { chronicle: played(assessments), feed: feed(), origin: Origin::Live });
+    app.receive(Parcel { chronicle: played(&assessments), feed: feed(), origin: Origin::Live });
     app.clock = Instant::now();
     app
 }
@@ -36,13 +37,11 @@ pub fn replay(assessments: Vec<Assessment>) -> App {
         seen.take(sample::time(60 * minute), if minute % 40 < 30 { tautline::desk::State::Ample } else { state });
     }
     parcel.origin = Origin::Replay(Playback {
-        name: "day.jsonl.zst".into(),
         playing: true,
         speed: 60,
         now: parcel.chronicle.time(),
         extent: Some((sample::time(0), sample::time(86_400))),
         taken: 3600,
-        total: Some(43_200),
         seeking: None,
         at_end: false,
         seen: Arc::new(seen),
@@ -52,11 +51,11 @@ pub fn replay(assessments: Vec<Assessment>) -> App {
 
 const HISTORY_S: i64 = 7200;
 
-fn played(assessments: Vec<Assessment>) -> Chronicle {
+fn played(assessments: &[Assessment]) -> Chronicle {
     let mut chronicle = Chronicle::default();
     for minute in 0..=HISTORY_S / 60 {
         let fade = (HISTORY_S / 60 - minute) as f64;
-        let mut frame = assessments.clone();
+        let mut frame = assessments.to_vec();
         for assessment in &mut frame {
             assessment.time = sample::time(60 * minute);
             if let Some(headroom) = &mut assessment.headroom_mw {

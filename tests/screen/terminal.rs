@@ -177,3 +177,20 @@ fn without_a_terminal_a_replay_is_summed_up_and_a_watch_refuses() {
     assert!(String::from_utf8_lossy(&output.stderr).contains("not a single frame was read"));
     fs::remove_file(empty).unwrap();
 }
+
+#[test]
+fn the_demo_day_opens_and_is_summed_up_anywhere() {
+    let mut command = tautline();
+    command.current_dir(std::env::temp_dir());
+    let mut stage = Stage::new(command);
+    stage.wait_for("headroom");
+    stage.keyboard.write_all(b"q").unwrap();
+    assert!(stage.wait_for_end().success());
+    stage.assert_given_back();
+
+    let output = tautline().current_dir(std::env::temp_dir()).output().unwrap();
+    assert!(output.status.success());
+    let text = String::from_utf8(output.stdout).unwrap();
+    assert_eq!(text.matches("least headroom").count(), 3, "{text}");
+    assert!(text.contains("spent") && text.contains("tautline advises."), "{text}");
+}

@@ -51,8 +51,6 @@ pub struct InputReport {
 /// A recording being played.
 #[derive(Debug, Clone)]
 pub struct Playback {
-    /// What it is called.
-    pub name: Arc<str>,
     /// Running, unless paused.
     pub playing: bool,
     /// Recorded seconds in a second.
@@ -63,8 +61,6 @@ pub struct Playback {
     pub extent: Option<(DateTime<Utc>, DateTime<Utc>)>,
     /// Frames taken to get here.
     pub taken: usize,
-    /// Frames of the recording, once they are counted.
-    pub total: Option<usize>,
     /// On the way to another place.
     pub seeking: Option<Seeking>,
     /// The last frame is taken.

@@ -24,15 +24,13 @@ pub enum Recording {
     },
 }
 
-/// From when to when a recording goes, and in how many frames.
+/// From when to when a recording goes.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub struct Extent {
     /// Time of the first frame.
     pub first: DateTime<Utc>,
     /// Time of the last.
     pub last: DateTime<Utc>,
-    /// How many there are.
-    pub frames: usize,
 }
 
 impl Recording {
@@ -71,9 +69,8 @@ impl Recording {
         let (recording, channels, found) = (self.clone(), channels.clone(), extent.clone());
         thread::spawn(move || {
             let frames = recording.open(&channels).into_iter().flatten();
-            let whole = frames.fold(None, |extent: Option<Extent>, frame| {
-                let before = extent.unwrap_or(Extent { first: frame.time, last: frame.time, frames: 0 });
-                Some(Extent { last: frame.time, frames: before.frames + 1, ..before })
+            let whole = frames.map(|frame| frame.time).fold(None, |extent: Option<Extent>, time| {
+                Some(Extent { first: extent.map_or(time, |extent| extent.first), last: time })
             });
             if let Some(whole) = whole {
                 let _ = found.set(whole);

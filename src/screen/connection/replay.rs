@@ -161,7 +161,9 @@ impl Replay {
             }
             Order::Jump(by) => {
                 if let Some(time) = self.now().and_then(|now| now.checked_add_signed(by)) {
-                    self.go(Goal::Time(time));
+                    // A jump on leads on, even out of a gap longer than itself.
+                    let next = self.player.next_time().filter(|_| by > TimeDelta::zero());
+                    self.go(Goal::Time(next.map_or(time, |next| next.max(time))));
                 }
             }
             Order::Seek(time) => self.go(Goal::Time(time)),
@@ -215,19 +217,17 @@ impl Replay {
         let here = self.player.here();
         let extent = self.extent.get();
         let playback = Playback {
-            name: self.recording.name().into(),
             playing: self.playing,
             speed: self.speed,
             now: if at_end { here.time } else { now },
             extent: extent.map(|extent| (extent.first, extent.last)),
             taken: here.taken,
-            total: extent.map(|extent| extent.frames),
             seeking: self.seeking.as_ref().map(|seek| seek.progress(here.taken, here.time)),
             at_end,
             seen: self.player.seen().clone(),
         };
         let trouble = self.trouble.iter().map(|trouble| InputReport {
-            name: playback.name.clone(),
+            name: self.recording.name().into(),
             standing: trouble.clone(),
             findings: Vec::new(),
         });

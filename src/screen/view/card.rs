@@ -29,10 +29,10 @@ pub fn draw(frame: &mut Frame, area: Rect, track: &Track, chosen: bool, app: &Ap
 
     let big = digits::rows(&figures::headroom(assessment.headroom_mw));
     let spread = assessment.headroom_sd_mw.map_or(String::new(), |sd| format!(" ±{}", figures::mw(Some(sd.ceil()))));
-    let left = big.into_iter().map(|line| Line::styled(line, theme.strong())).chain([
-        Line::raw(format!("MW headroom{spread}")),
-        Line::raw(text::cut(&set_by(assessment), usize::from(DIGITS) - 1)),
-    ]);
+    let left = big
+        .into_iter()
+        .map(|line| Line::styled(line, theme.strong()))
+        .chain([Line::raw(format!("MW headroom{spread}")), Line::raw(set_by(assessment, usize::from(DIGITS) - 1))]);
     for (index, line) in (0..).zip(left) {
         frame.render_widget(line, super::row(numbers, index));
     }

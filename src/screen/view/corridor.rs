@@ -60,7 +60,7 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
     if panels.len() < 6 {
         drawn.targets = draw_tabs(frame, tabs, panels, theme);
     }
-    for (panel, at) in arranged(panels, body) {
+    for (panel, at) in arranged(panels, body, network::height(&subject)) {
         let inner = if panels.len() > 1 { headed(frame, at, panel, &subject) } else { at };
         let inner = Rect { width: inner.width.saturating_sub(1), ..inner };
         match panel {
@@ -90,7 +90,7 @@ fn verdict_line(subject: &Subject, width: usize) -> Line<'static> {
     let spans = vec![
         Span::styled(" headroom ", theme.quiet()),
         Span::styled(format!("{} MW", headroom(assessment)), theme.strong()),
-        Span::raw(format!(" ({})", set_by(assessment))),
+        Span::raw(format!(" ({})", set_by(assessment, 26))),
         Span::raw(format!("  {}", trend::words(subject.track))),
         Span::raw(if best.is_empty() { String::new() } else { format!("  {best}") }),
     ];
@@ -143,7 +143,7 @@ fn headed(frame: &mut Frame, area: Rect, panel: Panel, subject: &Subject) -> Rec
     Rect { y: area.y + 1, height: area.height.saturating_sub(1), ..area }.intersection(area)
 }
 
-fn arranged(panels: &[Panel], area: Rect) -> Vec<(Panel, Rect)> {
+fn arranged(panels: &[Panel], area: Rect, network_height: u16) -> Vec<(Panel, Rect)> {
     use Constraint::{Fill, Length, Percentage};
     use Panel::{Actions, Curves, Data, Network, Outages, Sources};
     match panels {
@@ -155,14 +155,14 @@ fn arranged(panels: &[Panel], area: Rect) -> Vec<(Panel, Rect)> {
         }
         [_, _, _] => {
             let [left, data] = Layout::horizontal([Fill(1), Percentage(45)]).areas(area);
-            let [sources, network] = Layout::vertical([Length(13), Fill(1)]).areas(left);
+            let [sources, network] = Layout::vertical([Fill(1), Length(network_height)]).areas(left);
             vec![(Sources, sources), (Network, network), (Data, data)]
         }
         _ => {
             let [left, right] = Layout::horizontal([Fill(1), Length(76)]).areas(area);
             let [curves, outages] = Layout::vertical([Fill(1), Percentage(36)]).areas(left);
             let [actions, sources, network, data] =
-                Layout::vertical([Length(11), Length(12), Fill(1), Length(15)]).areas(right);
+                Layout::vertical([Length(10), Fill(1), Length(network_height), Length(14)]).areas(right);
             vec![
                 (Curves, curves),
                 (Outages, outages),

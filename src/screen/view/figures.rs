@@ -52,14 +52,17 @@ pub fn duration(span: TimeDelta) -> String {
     }
 }
 
-/// Minutes ahead, rounded down.
+/// Minutes ahead, rounded down; far ahead in hours alone, since nobody knows better.
 pub fn minutes(minutes: f64) -> String {
     if minutes < 1.0 {
         return "under 1 min".into();
     }
     #[allow(clippy::cast_possible_truncation, reason = "bounded; not a number gives the bound")]
     let seconds = (minutes.min(1e6) * 60.0) as i64;
-    duration(TimeDelta::seconds(seconds))
+    match seconds {
+        7200..172_800 => format!("{} h", seconds / 3600),
+        _ => duration(TimeDelta::seconds(seconds)),
+    }
 }
 
 /// Time of day.
@@ -85,6 +88,7 @@ mod tests {
         assert_eq!(deg(Some(41.2)), "41°");
         assert_eq!(minutes(0.3), "under 1 min");
         assert_eq!(minutes(38.9), "38 min");
+        assert_eq!(minutes(154.0), "2 h");
         assert_eq!(minutes(f64::INFINITY), "694 days");
         assert_eq!(duration(TimeDelta::seconds(7260)), "2 h 01 min");
     }

@@ -8,6 +8,12 @@ use super::{
     text::{clean, left, right},
 };
 
+/// Rows that the panel would like, its heading included.
+pub fn height(subject: &Subject) -> u16 {
+    let listed = subject.track.latest.detail.as_ref().map_or(0, |detail| detail.circuits.len() + detail.buses.len());
+    u16::try_from(listed + 7).unwrap_or(u16::MAX).min(18)
+}
+
 /// The panel's lines.
 pub fn lines(subject: &Subject, width: usize) -> Vec<Line<'static>> {
     let theme = subject.theme;

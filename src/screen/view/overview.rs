@@ -72,7 +72,8 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
     }
     let used = count.saturating_mul(height);
     let below = Rect { y: list.y.saturating_add(used), height: list.height.saturating_sub(used), ..list };
-    if below.height >= NEWS_HEIGHT {
+    let any_news = app.parcel.as_ref().is_some_and(|parcel| !parcel.chronicle.events.is_empty());
+    if any_news && below.height >= NEWS_HEIGHT {
         let title = format!("─ latest messages {}", "─".repeat(usize::from(below.width).saturating_sub(19)));
         let news = messages::events(app, theme, usize::from(below.width)).take(usize::from(below.height) - 1);
         let lines: Vec<_> = iter::once(Line::styled(title, theme.quiet())).chain(news).collect();

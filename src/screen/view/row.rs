@@ -104,7 +104,7 @@ impl Columns {
             Span::styled(left(&headroom(assessment), HEADROOM), theme.strong()),
             Span::raw(format!(
                 " {} {} {}",
-                left(&set_by(assessment), self.set_by),
+                left(&set_by(assessment, self.set_by), self.set_by),
                 right(&figures::mw(assessment.transfer_mw), TRANSFER),
                 left(&trend::words(track), self.trend)
             )),
@@ -169,15 +169,13 @@ pub fn headroom(assessment: &Assessment) -> String {
     }
 }
 
-/// The outage and the criterion that set the headroom.
-pub fn set_by(assessment: &Assessment) -> String {
-    match &assessment.binding {
-        None => figures::NONE.into(),
-        Some(binding) => {
-            let outage =
-                binding.outage.as_deref().map_or("nothing lost".into(), |name| format!("{} out", text::clean(name)));
-            format!("{outage}, {}", criterion(binding.criterion))
-        }
+/// The outage and the criterion that set the headroom; of the two the outage’s name is cut to fit.
+pub fn set_by(assessment: &Assessment, width: usize) -> String {
+    let Some(binding) = &assessment.binding else { return figures::NONE.into() };
+    let by = criterion(binding.criterion);
+    match &binding.outage {
+        Some(name) => format!("{} out, {by}", text::cut(name, width.saturating_sub(by.len() + 6))),
+        None => format!("nothing lost, {by}"),
     }
 }
 

@@ -6,7 +6,8 @@
 //! 2. [`desk`] takes each corridor of a frame through [`fit`] (measurements to a state), [`source`] (what
 //!    stands behind each terminal) and [`margin`] (every outage, the headroom), on top of [`network`]
 //!    (two-ports, admittance, reduction),
-//! 3. [`screen`] and [`report`] show the assessments, and [`command`] ties a feed, a desk and one of these together.
+//! 3. [`alarm`] watches them, and [`journal`] keeps what the alarms did,
+//! 4. [`screen`] and [`report`] show the assessments, and [`command`] ties a feed, a desk and one of these together.
 //!
 //! [`grid`] says what a corridor is, [`config`] reads one from a file, and [`drill`] makes feeds with known truth.
 //!
@@ -39,6 +40,7 @@ pub mod drill;
 pub mod feed;
 pub mod fit;
 pub mod grid;
+pub mod journal;
 pub mod margin;
 pub mod network;
 pub mod report;

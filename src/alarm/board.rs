@@ -68,11 +68,7 @@ impl Board {
     }
 
     /// Acknowledges those of the alarms that wait for it.
-    pub fn acknowledge_all(
-        &mut self,
-        ids: impl IntoIterator<Item = AlarmId>,
-        time: DateTime<Utc>,
-    ) -> Vec<Transition> {
+    pub fn acknowledge_all(&mut self, ids: impl IntoIterator<Item = AlarmId>, time: DateTime<Utc>) -> Vec<Transition> {
         ids.into_iter().filter_map(|id| self.act(id, &Action::Acknowledge, time).ok()).collect()
     }
 
@@ -150,7 +146,9 @@ impl Board {
                 board.take_over(before.swap_remove(index), time, &mut transitions);
             }
         }
-        before.into_iter().for_each(|gone| gone.withdraw(time, &mut transitions));
+        for gone in before {
+            gone.withdraw(time, &mut transitions);
+        }
         transitions
     }
 }

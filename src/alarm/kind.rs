@@ -1,5 +1,6 @@
 use std::fmt;
 
+use Direction::{High, Low};
 use serde::Serialize;
 
 /// What an alarm watches.
@@ -51,11 +52,119 @@ struct Facts {
     direction: Direction,
     /// Setpoints that make sense.
     range: [f64; 2],
-    /// Whether the setpoint may be left out, as 1.
-    counts: bool,
     message: &'static str,
     action: &'static str,
 }
+
+const ANY: [f64; 2] = [-1e6, 1e6];
+const POSITIVE: [f64; 2] = [1e-6, 1e6];
+const RELIEVE: &str = "Lower the transfer, insert a bypassed capacitor or return an open circuit";
+
+const fn facts(
+    word: &'static str,
+    unit: &'static str,
+    direction: Direction,
+    range: [f64; 2],
+    message: &'static str,
+    action: &'static str,
+) -> Facts {
+    Facts { word, unit, direction, range, message, action }
+}
+
+/// In the order of the kinds.
+static FACTS: [Facts; Kind::ALL.len()] = [
+    facts("headroom_mw", "MW", Low, ANY, "Little room is left before the next outage is not survived", RELIEVE),
+    facts(
+        "headroom_pct",
+        "%",
+        Low,
+        [-100.0, 100.0],
+        "Little room is left before the next outage is not survived",
+        RELIEVE,
+    ),
+    facts("angle_margin_deg", "°", Low, [0.0, 90.0], "The worst outage would leave a small angle margin", RELIEVE),
+    facts("area_margin", "", Low, [-1.0, 1.0], "The worst outage would use up the decelerating area", RELIEVE),
+    facts(
+        "clearing_reserve_ms",
+        "ms",
+        Low,
+        [-2000.0, 2000.0],
+        "The worst fault leaves little time beyond the protection's own",
+        "Lower the transfer, and see that no protection works on its backup time alone",
+    ),
+    facts(
+        "standing_angle_deg",
+        "°",
+        High,
+        [1e-6, 180.0],
+        "The angle across an open circuit stands in the way of its return",
+        "Lower the transfer to what the reclosing list says, then close the circuit",
+    ),
+    facts(
+        "minutes_left",
+        "min",
+        Low,
+        POSITIVE,
+        "At the present trend nothing is left soon",
+        "Ask for redispatch now, while there is time",
+    ),
+    facts(
+        "loading_pct",
+        "%",
+        High,
+        POSITIVE,
+        "A circuit carries more than its continuous rating allows",
+        "Lower the transfer or the reactive flow within the short-time rating's minutes",
+    ),
+    facts(
+        "data_age_s",
+        "s",
+        High,
+        POSITIVE,
+        "No frame has come: what is shown is old",
+        "Look at the telemetry link; watch the corridor by other means",
+    ),
+    facts(
+        "blind",
+        "",
+        High,
+        [1.0, 1.0],
+        "Too little is measured to say how much room is left",
+        "See which channels are missing; hold the transfer at its last known safe value",
+    ),
+    facts(
+        "suspects",
+        "",
+        High,
+        [1.0, 1e6],
+        "A measurement disagrees with all others and is set aside",
+        "Have the meter checked; the headroom goes on without it",
+    ),
+    facts(
+        "fit",
+        "",
+        High,
+        POSITIVE,
+        "The measurements do not agree with each other",
+        "Trust the headroom less; have impedances, ratios and meters checked",
+    ),
+    facts(
+        "source_widened_pct",
+        "%",
+        High,
+        POSITIVE,
+        "What was learned of one side no longer fits what is seen",
+        "Ask the neighbour what changed; the spread of the headroom is wide again until new steps are seen",
+    ),
+    facts(
+        "source_moved_pct",
+        "%",
+        High,
+        POSITIVE,
+        "One side is far from its configured short-circuit power",
+        "Compare with the last study, and have the configuration renewed if the grid has changed",
+    ),
+];
 
 impl Kind {
     /// All of them.
@@ -103,7 +212,7 @@ impl Kind {
 
     /// Setpoint where none is given; `None`: it must be.
     pub fn usual_setpoint(self) -> Option<f64> {
-        self.facts().counts.then_some(1.0)
+        matches!(self, Self::Blind | Self::Suspects | Self::Fit).then_some(1.0)
     }
 
     /// Whether it tells of a margin that shrinks, so that it can warn of the margin's end.
@@ -122,119 +231,8 @@ impl Kind {
         self.facts().action
     }
 
-    fn facts(self) -> Facts {
-        use Direction::{High, Low};
-        let facts = |word, unit, direction, range, message, action| Facts {
-            word,
-            unit,
-            direction,
-            range,
-            counts: matches!(self, Self::Blind | Self::Suspects | Self::Fit),
-            message,
-            action,
-        };
-        let any = [-1e6, 1e6];
-        let positive = [1e-6, 1e6];
-        let reduce = "Lower the transfer, insert a bypassed capacitor or return an open circuit";
-        match self {
-            Self::HeadroomMw => {
-                facts("headroom_mw", "MW", Low, any, "Little room is left before the next outage is not survived", reduce)
-            }
-            Self::HeadroomPct => facts(
-                "headroom_pct",
-                "%",
-                Low,
-                [-100.0, 100.0],
-                "Little room is left before the next outage is not survived",
-                reduce,
-            ),
-            Self::AngleMargin => {
-                facts("angle_margin_deg", "°", Low, [0.0, 90.0], "The worst outage would leave a small angle margin", reduce)
-            }
-            Self::AreaMargin => {
-                facts("area_margin", "", Low, [-1.0, 1.0], "The worst outage would use up the decelerating area", reduce)
-            }
-            Self::ClearingReserve => facts(
-                "clearing_reserve_ms",
-                "ms",
-                Low,
-                [-2000.0, 2000.0],
-                "The worst fault leaves little time beyond the protection's own",
-                "Lower the transfer, and see that no protection works on its backup time alone",
-            ),
-            Self::StandingAngle => facts(
-                "standing_angle_deg",
-                "°",
-                High,
-                [1e-6, 180.0],
-                "The angle across an open circuit stands in the way of its return",
-                "Lower the transfer to what the reclosing list says, then close the circuit",
-            ),
-            Self::MinutesLeft => facts(
-                "minutes_left",
-                "min",
-                Low,
-                positive,
-                "At the present trend nothing is left soon",
-                "Ask for redispatch now, while there is time",
-            ),
-            Self::Loading => facts(
-                "loading_pct",
-                "%",
-                High,
-                positive,
-                "A circuit carries more than its continuous rating allows",
-                "Lower the transfer or the reactive flow within the short-time rating's minutes",
-            ),
-            Self::DataAge => facts(
-                "data_age_s",
-                "s",
-                High,
-                positive,
-                "No frame has come: what is shown is old",
-                "Look at the telemetry link; watch the corridor by other means",
-            ),
-            Self::Blind => facts(
-                "blind",
-                "",
-                High,
-                [1.0, 1.0],
-                "Too little is measured to say how much room is left",
-                "See which channels are missing; hold the transfer at its last known safe value",
-            ),
-            Self::Suspects => facts(
-                "suspects",
-                "",
-                High,
-                [1.0, 1e6],
-                "A measurement disagrees with all others and is set aside",
-                "Have the meter checked; the headroom goes on without it",
-            ),
-            Self::Fit => facts(
-                "fit",
-                "",
-                High,
-                positive,
-                "The measurements do not agree with each other",
-                "Trust the headroom less; have impedances, ratios and meters checked",
-            ),
-            Self::SourceWidened => facts(
-                "source_widened_pct",
-                "%",
-                High,
-                positive,
-                "What was learned of one side no longer fits what is seen",
-                "Ask the neighbour what changed; the spread of the headroom is wide again until new steps are seen",
-            ),
-            Self::SourceMoved => facts(
-                "source_moved_pct",
-                "%",
-                High,
-                positive,
-                "One side is far from its configured short-circuit power",
-                "Compare with the last study, and have the configuration renewed if the grid has changed",
-            ),
-        }
+    fn facts(self) -> &'static Facts {
+        &FACTS[self as usize]
     }
 }
 

@@ -47,8 +47,7 @@ impl Reader {
 
     /// Keeps what later readings are compared with.
     pub fn remember(&mut self, assessment: &Assessment) {
-        for ((source, configured), narrowed) in
-            assessment.sources.iter().zip(&self.configured).zip(&mut self.narrowed)
+        for ((source, configured), narrowed) in assessment.sources.iter().zip(&self.configured).zip(&mut self.narrowed)
         {
             *narrowed |= source.basis == Basis::Learned && source.x_sd < NARROW * configured.x_sd_ohm();
         }

@@ -73,9 +73,7 @@ const DIAGRAM: &[(State, Event, Next)] = {
         Unsuppress,
     };
     use Next::{Afresh, To};
-    use State::{
-        Acknowledged, Normal, OutOfService, ReturnedUnacknowledged, Shelved, Suppressed, Unacknowledged,
-    };
+    use State::{Acknowledged, Normal, OutOfService, ReturnedUnacknowledged, Shelved, Suppressed, Unacknowledged};
     &[
         (Normal, Alarm, To(Unacknowledged)),
         (Unacknowledged, Acknowledge, To(Acknowledged)),
@@ -219,13 +217,13 @@ mod tests {
     /// A or B by the condition, H while the design suppresses it.
     const PUBLISHED: [(State, [char; 10]); 7] = [
         //                       alarm return ack shelve unshelve ends suppress unsuppress remove return
-        (Normal,                 ['B', '.', '.', 'G', '.', '.', 'H', '.', 'I', '.']),
-        (Unacknowledged,         ['.', 'D', 'C', 'G', '.', '.', 'H', '.', 'I', '.']),
-        (Acknowledged,           ['.', 'A', '.', 'G', '.', '.', 'H', '.', 'I', '.']),
+        (Normal, ['B', '.', '.', 'G', '.', '.', 'H', '.', 'I', '.']),
+        (Unacknowledged, ['.', 'D', 'C', 'G', '.', '.', 'H', '.', 'I', '.']),
+        (Acknowledged, ['.', 'A', '.', 'G', '.', '.', 'H', '.', 'I', '.']),
         (ReturnedUnacknowledged, ['B', '.', 'A', 'G', '.', '.', 'H', '.', 'I', '.']),
-        (Shelved,                ['.', '.', '.', '.', '?', '?', '.', '.', 'I', '.']),
-        (Suppressed,             ['.', '.', '.', 'G', '.', '.', '.', '?', 'I', '.']),
-        (OutOfService,           ['.', '.', '.', '.', '.', '.', '.', '.', '.', '?']),
+        (Shelved, ['.', '.', '.', '.', '?', '?', '.', '.', 'I', '.']),
+        (Suppressed, ['.', '.', '.', 'G', '.', '.', '.', '?', 'I', '.']),
+        (OutOfService, ['.', '.', '.', '.', '.', '.', '.', '.', '.', '?']),
     ];
 
     fn letter(state: State) -> char {

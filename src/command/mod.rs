@@ -5,6 +5,7 @@ pub mod check;
 pub mod demo;
 pub mod drill;
 mod inputs;
+pub mod journal;
 pub mod replay;
 pub mod shell;
 mod stage;
@@ -35,6 +36,8 @@ pub enum Command {
     Watch(watch::Options),
     /// Play recorded files on the screen.
     Replay(replay::Options),
+    /// Print or export what the alarms did.
+    Journal(journal::Options),
     /// Make a feed with known truth.
     Drill(drill::Options),
     /// Write shell completions to standard output.
@@ -54,6 +57,7 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         Some(Command::Assess(options)) => assess::run(&options),
         Some(Command::Watch(options)) => watch::run(&options),
         Some(Command::Replay(options)) => replay::run(&options),
+        Some(Command::Journal(options)) => journal::run(&options),
         Some(Command::Drill(options)) => drill::run(&options),
         Some(Command::Completions(options)) => shell::completions(&options),
         Some(Command::Man) => shell::man(),

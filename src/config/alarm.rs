@@ -62,7 +62,7 @@ impl Known {
     }
 
     /// Reads a layer, whose alarms are known from then on; its circuits are those of these corridors.
-    pub fn read<'a>(&mut self, sections: Vec<Section<'a>>, corridors: &[Corridor]) -> Layer {
+    pub fn read(&mut self, sections: Vec<Section<'_>>, corridors: &[Corridor]) -> Layer {
         let Some(first) = sections.first() else { return Layer(Vec::new()) };
         let mut names = Names::new(first.findings());
         Layer(sections.into_iter().filter_map(|section| self.change(section, &mut names, corridors)).collect())
@@ -78,20 +78,20 @@ impl Known {
         names.claim(&name, "alarm", &section.place("name"));
         let given = word(&mut section, "on", Kind::from_word, &Kind::ALL.map(Kind::word));
         let known = self.0.get(&name).copied();
-        if let (Some(known), Some(Some(given))) = (known, given)
+        if let (Some(known), Some(given)) = (known, given)
             && known != given
         {
             section.wrong("on", format!("alarm {} is on {known} already; choose another name", quoted(&name)));
         }
-        if known.is_none() && given.is_none() {
+        if known.is_none() && !section.has("on") {
             let advice = section.findings().advice(&name, self.0.keys().map(String::as_str));
             section.missed("on", &format!("say what a new alarm is on, or name one that is there: {advice}"));
         }
-        let kind = known.or(given.flatten());
+        let kind = known.or(given);
         let change = Change {
             is_new: known.is_none(),
             enabled: section.flag("enabled").unwrap_or(true),
-            priority: word(&mut section, "priority", Priority::from_word, &Priority::ALL.map(Priority::word)).flatten(),
+            priority: word(&mut section, "priority", Priority::from_word, &Priority::ALL.map(Priority::word)),
             setpoint: section.number("setpoint", kind.map_or(super::limits::ANY, setpoints)),
             deadband: section.number("deadband", NOT_NEGATIVE),
             on_delay: delay(&mut section, "on_delay_s"),
@@ -184,20 +184,20 @@ impl Change {
     }
 }
 
-/// What a word stands for; nothing within, and reported, where it is none of those.
+/// What a word stands for; nothing, and reported, where it is none of those.
 fn word<'a, T>(
     section: &mut Section<'a>,
     key: &'a str,
     from_word: impl Fn(&str) -> Option<T>,
     words: &[&str],
-) -> Option<Option<T>> {
+) -> Option<T> {
     let given = section.text(key)?;
     let found = from_word(&given);
     if found.is_none() && !given.is_empty() {
         let advice = section.findings().advice(&given, words.iter().copied());
         section.wrong(key, format!("no {} is possible here; {advice}", quoted(&given)));
     }
-    Some(found)
+    found
 }
 
 fn setpoints(kind: Kind) -> Limits {

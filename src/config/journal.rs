@@ -2,6 +2,8 @@
 
 use std::path::{Path, PathBuf};
 
+use chrono::TimeDelta;
+
 use super::{limits::Limits, section::Section};
 
 /// Where the journal is kept and for how long (`[journal]`).
@@ -9,7 +11,7 @@ use super::{limits::Limits, section::Section};
 pub struct JournalSettings {
     /// The database, from the folder of the configuration (`file`); `None`: beside the configuration, with its name.
     pub file: Option<PathBuf>,
-    /// Entries older than this before the newest are deleted, days (`keep_days`).
+    /// Entries that were written longer ago are deleted, days (`keep_days`).
     pub keep_days: f64,
 }
 
@@ -20,6 +22,13 @@ impl Default for JournalSettings {
 }
 
 impl JournalSettings {
+    /// How long entries are kept.
+    pub fn keep(&self) -> TimeDelta {
+        // Limited to a century.
+        #[allow(clippy::cast_possible_truncation)]
+        TimeDelta::seconds((86_400.0 * self.keep_days) as i64)
+    }
+
     /// The database that belongs to a configuration file.
     pub fn path(&self, config: &Path) -> PathBuf {
         match &self.file {

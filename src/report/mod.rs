@@ -1,6 +1,7 @@
 //! Assessments and configurations for other programs and other people: one file a format.
 
 pub mod check;
+pub mod journal;
 pub mod jsonl;
 pub mod summary;
 mod table;

@@ -1,0 +1,7 @@
+//! Alarms: their definitions, their behaviour, what is kept of them, and how thresholds are tried.
+
+mod bed;
+mod board;
+mod definitions;
+mod journal;
+mod killing;

@@ -6,6 +6,8 @@ mod sample;
 #[path = "screen/stage.rs"]
 mod stage;
 
+#[path = "screen/alarms.rs"]
+mod alarms;
 #[path = "screen/drawings.rs"]
 mod drawings;
 #[path = "screen/keys.rs"]
@@ -15,3 +17,6 @@ mod keys;
 mod terminal;
 #[path = "screen/unbreakable.rs"]
 mod unbreakable;
+#[cfg(unix)]
+#[path = "screen/watching.rs"]
+mod watching;

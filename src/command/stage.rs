@@ -2,7 +2,7 @@
 
 use std::{
     io::{IsTerminal, stdout},
-    sync::{Arc, mpsc::SyncSender},
+    sync::Arc,
     thread::JoinHandle,
 };
 
@@ -15,11 +15,14 @@ use super::{Failure, inputs};
 use crate::{
     config::Config,
     screen::{
-        self, Ending,
+        self,
         connection::{Order, Parcel},
         state::App,
     },
 };
+
+/// Orders that wait at most; more come faster than anybody means them.
+pub(super) const ORDERS_WAITING: usize = 64;
 
 /// Refuses where there is no terminal to draw on.
 pub(super) fn needs_terminal() -> Result<(), Failure> {
@@ -40,14 +43,18 @@ pub(super) fn show(
     runtime: Runtime,
     config: &Config,
     parcels: watch::Receiver<Option<Parcel>>,
-    orders: SyncSender<Order>,
+    order: impl Fn(Order) -> bool,
     connection: JoinHandle<()>,
 ) -> Result<(), Failure> {
-    let app = App::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
-    let ending = runtime.block_on(screen::run(app, parcels, orders));
+    let mut app = App::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
+    app.settings = config.screen.clone();
+    let ending = runtime.block_on(screen::run(app, parcels, order));
+    // It ends once the screen is gone, after it has written down what it has to.
+    let outcome = connection.join();
     // A thread that waits for standard input cannot be stopped, nor need it be waited for.
     runtime.shutdown_background();
-    if ending? == Ending::Disconnected && connection.join().is_err() {
+    ending?;
+    if outcome.is_err() {
         return Err("the thread that assesses failed; this is a fault of the program, please report it".into());
     }
     Ok(())

@@ -1,20 +1,16 @@
 //! `tautline watch`: live inputs on the screen.
 
-use std::{
-    path::PathBuf,
-    sync::{Arc, mpsc::sync_channel},
-    thread,
-};
+use std::{env, path::PathBuf, sync::Arc, thread};
 
 use clap::Args;
-use tokio::sync::watch;
+use tokio::sync::{mpsc, watch};
 
 use super::{Failure, assess::Sources, inputs, stage};
 use crate::{
     config::Config,
     desk::Desk,
     feed::{Channels, Feed, Input, Patience},
-    screen::connection,
+    screen::connection::{Duty, Live},
 };
 
 /// Options of `watch`.
@@ -43,10 +39,12 @@ pub fn run(options: &Options) -> Result<(), Failure> {
 
     let runtime = stage::runtime()?;
     let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::default()))?;
+    let by = env::var("USER").ok();
+    let duty = Duty::begin(&config, config.journal.path(&options.config), by)?;
     let (sender, parcels) = watch::channel(None);
+    let (orders, taken) = mpsc::channel(stage::ORDERS_WAITING);
+    let live = Live { feed, desk, holder, duty, parcels: sender, orders: taken };
     let handle = runtime.handle().clone();
-    let connection = thread::spawn(move || handle.block_on(connection::watch(feed, desk, holder, sender)));
-    // Nobody takes orders: a live feed cannot be played.
-    let (orders, _) = sync_channel(1);
-    stage::show(runtime, &config, parcels, orders, connection)
+    let connection = thread::spawn(move || handle.block_on(live.run()));
+    stage::show(runtime, &config, parcels, move |order| orders.try_send(order).is_ok(), connection)
 }

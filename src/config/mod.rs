@@ -14,6 +14,7 @@ pub(crate) mod given;
 mod journal;
 pub(crate) mod limits;
 mod names;
+mod screen;
 pub(crate) mod section;
 pub(crate) mod wording;
 
@@ -23,6 +24,7 @@ use chrono_tz::{TZ_VARIANTS, Tz};
 
 pub use error::{ConfigError, ConfigErrors};
 pub use journal::JournalSettings;
+pub use screen::ScreenSettings;
 
 use crate::{alarm::Definition, grid::Grid};
 use check::GridNames;
@@ -55,6 +57,8 @@ pub struct Config {
     pub alarms: Vec<Vec<Definition>>,
     /// Where the journal is kept.
     pub journal: JournalSettings,
+    /// How the screen calls for attention.
+    pub screen: ScreenSettings,
 }
 
 /// Measurement classes (`[measurement]`): common metering practice by default.
@@ -158,6 +162,7 @@ fn read(mut root: Section<'_>) -> Config {
         learning: learning(root.section("learning")),
         alarms: alarm::all(&mut root, &grid, alarms),
         journal: journal::read(root.section("journal")),
+        screen: screen::read(root.section("screen")),
         grid,
     }
 }

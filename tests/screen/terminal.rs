@@ -21,16 +21,16 @@ use rustix::{
 const PATIENCE: Duration = Duration::from_secs(30);
 
 /// A program on a terminal of 80×24.
-struct Stage {
-    child: Child,
-    keyboard: File,
+pub struct Stage {
+    pub child: Child,
+    pub keyboard: File,
     terminal: OwnedFd,
     output: Receiver<Vec<u8>>,
-    seen: String,
+    pub seen: String,
 }
 
 impl Stage {
-    fn new(mut command: Command) -> Self {
+    pub fn new(mut command: Command) -> Self {
         let master = openpt(OpenptFlags::RDWR | OpenptFlags::NOCTTY).unwrap();
         grantpt(&master).unwrap();
         unlockpt(&master).unwrap();
@@ -59,7 +59,7 @@ impl Stage {
     }
 
     /// Waits until the output contains a text.
-    fn wait_for(&mut self, text: &str) {
+    pub fn wait_for(&mut self, text: &str) {
         let start = Instant::now();
         while !self.seen.contains(text) {
             assert!(start.elapsed() < PATIENCE, "no “{text}” in {:?}", self.seen);
@@ -69,7 +69,7 @@ impl Stage {
         }
     }
 
-    fn wait_for_end(&mut self) -> ExitStatus {
+    pub fn wait_for_end(&mut self) -> ExitStatus {
         let start = Instant::now();
         loop {
             if let Some(status) = self.child.try_wait().unwrap() {
@@ -96,7 +96,7 @@ fn files() -> (PathBuf, PathBuf) {
     (case.join("config.toml"), case.join("frames.jsonl"))
 }
 
-fn tautline() -> Command {
+pub fn tautline() -> Command {
     let mut command = Command::new(env!("CARGO_BIN_EXE_tautline"));
     command.env_remove("NO_COLOR");
     command
@@ -131,6 +131,13 @@ fn keys_and_signals_give_the_terminal_back() {
 #[test]
 fn watching_a_file_shows_it_and_says_when_it_has_ended() {
     let (config, frames) = files();
+    // The journal goes beside the configuration.
+    let folder = tempfile::tempdir().unwrap();
+    let config = {
+        let copy = folder.path().join("config.toml");
+        fs::copy(config, &copy).unwrap();
+        copy
+    };
     let mut command = tautline();
     command.arg("watch").arg("--config").arg(config).arg("--input").arg(frames);
     let mut stage = Stage::new(command);

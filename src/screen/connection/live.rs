@@ -1,46 +1,117 @@
 use std::time::{Duration, Instant};
 
-use tokio::{sync::watch, time::timeout};
+use chrono::TimeDelta;
+use tokio::{
+    sync::{mpsc, watch},
+    time::{Interval, MissedTickBehavior, interval},
+};
 
-use super::{FeedReport, Origin, Parcel, report};
+use super::{Duty, FeedReport, Order, Origin, Parcel, report};
 use crate::{
     desk::Desk,
-    feed::{Feed, Holder},
+    feed::{Feed, Frame, Holder},
     screen::state::Chronicle,
 };
 
 /// Frames taken in one go at most.
 const BATCH_FRAMES: usize = 64;
-/// How often to look at the inputs when no frame comes.
+/// How often to look at the inputs and the time when no frame comes.
 const LOOK_AGAIN: Duration = Duration::from_secs(1);
 
-/// Assesses every frame of a live feed until it ends and the screen is gone.
-pub async fn watch(mut feed: Feed, mut desk: Desk, mut holder: Holder, parcels: watch::Sender<Option<Parcel>>) {
-    let mut chronicle = Chronicle::default();
-    let mut feed_report = FeedReport::default();
-    while !feed_report.ended && !parcels.is_closed() {
-        match timeout(LOOK_AGAIN, feed.next_batch(BATCH_FRAMES)).await {
-            Err(_) => {}
-            Ok(None) => feed_report.ended = true,
-            Ok(Some(frames)) => {
-                for frame in frames {
-                    feed_report.frames += 1;
-                    feed_report.arrived = Some(Instant::now());
-                    if let Some(snapshot) = holder.take(&frame) {
-                        chronicle.take(desk.assess(&snapshot));
-                    }
-                }
+/// A live feed at work: assesses every frame, keeps the alarms, and sends what comes of it.
+pub struct Live {
+    /// Where frames come from.
+    pub feed: Feed,
+    /// What assesses them.
+    pub desk: Desk,
+    /// What holds values between them.
+    pub holder: Holder,
+    /// The alarms.
+    pub duty: Duty,
+    /// Where what came of it goes.
+    pub parcels: watch::Sender<Option<Parcel>>,
+    /// What the operator asks for.
+    pub orders: mpsc::Receiver<Order>,
+}
+
+/// What a live feed came to so far.
+#[derive(Default)]
+struct Sofar {
+    chronicle: Chronicle,
+    feed: FeedReport,
+}
+
+/// What woke it up.
+enum Woken {
+    Order(Order),
+    Frames(Option<Vec<Frame>>),
+    Time,
+    Left,
+}
+
+impl Live {
+    /// Watches until the screen is gone.
+    pub async fn run(mut self) {
+        let mut second = interval(LOOK_AGAIN);
+        second.set_missed_tick_behavior(MissedTickBehavior::Skip);
+        let mut sofar = Sofar::default();
+        loop {
+            match self.wait(&mut second, sofar.feed.ended).await {
+                Woken::Left => break,
+                Woken::Order(Order::Alarm(order)) => self.duty.obey(&order),
+                Woken::Order(_) => {}
+                Woken::Frames(None) => sofar.feed.ended = true,
+                Woken::Frames(Some(frames)) => self.take(&mut sofar, &frames),
+                Woken::Time => self.let_time_pass(&sofar),
+            }
+            sofar.feed.inputs = report::inputs(self.feed.monitor());
+            self.send(&sofar);
+        }
+        self.duty.end();
+    }
+
+    /// Orders first: a flood of frames must not keep the operator waiting.
+    async fn wait(&mut self, second: &mut Interval, ended: bool) -> Woken {
+        tokio::select! {
+            biased;
+            () = self.parcels.closed() => Woken::Left,
+            order = self.orders.recv() => order.map_or(Woken::Left, Woken::Order),
+            _ = second.tick() => Woken::Time,
+            frames = self.feed.next_batch(BATCH_FRAMES), if !ended => Woken::Frames(frames),
+        }
+    }
+
+    fn take(&mut self, sofar: &mut Sofar, frames: &[Frame]) {
+        let mut entries = Vec::new();
+        for frame in frames {
+            sofar.feed.frames += 1;
+            sofar.feed.arrived = Some(Instant::now());
+            if let Some(snapshot) = self.holder.take(frame) {
+                let assessments = self.desk.assess(&snapshot);
+                entries.extend(self.duty.observe(&assessments));
+                sofar.chronicle.take(assessments);
             }
         }
-        feed_report.inputs = report::inputs(feed.monitor());
-        let parcel = Parcel { chronicle: chronicle.clone(), feed: feed_report.clone(), origin: Origin::Live };
-        parcels.send_if_modified(|sent| {
-            let news = sent.as_ref().is_none_or(|sent| sent.feed != parcel.feed);
-            if news {
-                *sent = Some(parcel);
-            }
-            news
-        });
+        self.duty.write(entries);
     }
-    parcels.closed().await;
+
+    /// Without frames the frames' time goes on by this computer's clock.
+    fn let_time_pass(&mut self, sofar: &Sofar) {
+        let passed = sofar.feed.arrived.map(|arrived| arrived.elapsed()).filter(|passed| *passed >= LOOK_AGAIN);
+        let passed = passed.and_then(|passed| TimeDelta::from_std(passed).ok());
+        match sofar.chronicle.time().zip(passed).and_then(|(time, passed)| time.checked_add_signed(passed)) {
+            Some(now) => self.duty.elapse(now),
+            None => self.duty.write(Vec::new()),
+        }
+    }
+
+    fn send(&self, sofar: &Sofar) {
+        let parcel = Parcel {
+            chronicle: sofar.chronicle.clone(),
+            alarms: self.duty.report().clone(),
+            feed: sofar.feed.clone(),
+            origin: Origin::Live,
+        };
+        self.parcels.send_replace(Some(parcel));
+    }
 }

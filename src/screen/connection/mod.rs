@@ -3,6 +3,8 @@
 //! What is sent is always the whole present, in a [`Parcel`] that is cheap to clone. Only the newest is kept, so a
 //! slow screen never slows the desk, and a fast desk never floods the screen.
 
+mod alarms;
+mod duty;
 mod live;
 mod parcel;
 mod player;
@@ -10,7 +12,9 @@ mod recording;
 mod replay;
 mod report;
 
-pub use live::watch;
+pub use alarms::{AlarmKey, AlarmOrder, AlarmReport, Alarms, LOG_KEPT, Seen, Wish};
+pub use duty::Duty;
+pub use live::Live;
 pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Seeking};
 pub use player::{Goal, Place, Player};
 pub use recording::{Extent, Recording};

@@ -2,6 +2,7 @@ use std::{sync::Arc, time::Instant};
 
 use chrono::{DateTime, TimeDelta, Utc};
 
+use super::{AlarmOrder, AlarmReport};
 use crate::screen::state::{Chronicle, Strip};
 
 /// Everything a screen shows, as it stands.
@@ -9,6 +10,8 @@ use crate::screen::state::{Chronicle, Strip};
 pub struct Parcel {
     /// The corridors, and what became of them so far.
     pub chronicle: Chronicle,
+    /// Their alarms.
+    pub alarms: AlarmReport,
     /// How the feed does.
     pub feed: FeedReport,
     /// Live or recorded.
@@ -78,8 +81,8 @@ pub struct Seeking {
     pub done: f64,
 }
 
-/// What the screen asks of a recording.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+/// What the screen asks for; most of it can be asked of a recording only.
+#[derive(Debug, Clone, PartialEq, Eq)]
 pub enum Order {
     /// Play or pause.
     Toggle,
@@ -97,6 +100,8 @@ pub enum Order {
     Seek(DateTime<Utc>),
     /// Stop seeking where we are.
     Cancel,
+    /// Something with alarms, also live.
+    Alarm(AlarmOrder),
 }
 
 /// The speeds that keys step through.

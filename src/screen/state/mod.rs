@@ -1,5 +1,6 @@
 //! What the screen remembers: a pure model that takes keys and parcels in and gives orders out. No terminal.
 
+mod alarms;
 mod chronicle;
 mod event;
 mod history;
@@ -14,6 +15,7 @@ use chrono::TimeDelta;
 use chrono_tz::Tz;
 use ratatui::layout::Size;
 
+pub use alarms::{AlarmPage, Prompt};
 pub use chronicle::{Chronicle, EVENTS_KEPT, Track};
 pub use event::{Event, criterion, severity, transitions, word};
 pub use history::{History, Strip};
@@ -24,6 +26,7 @@ pub use pointer::{Drawn, Target};
 
 use super::connection::{Origin, Parcel, Playback};
 use crate::{
+    config::ScreenSettings,
     desk::{Assessment, OutageRecord},
     grid::{Corridor, Grid},
 };
@@ -57,10 +60,16 @@ pub struct App {
     pub panel: Panel,
     /// First line shown of a page that is longer than the screen.
     pub scroll: usize,
+    /// How to call for attention.
+    pub settings: ScreenSettings,
+    /// The alarm page.
+    pub alarms: AlarmPage,
     /// Of the terminal.
     pub size: Size,
     /// This computer's clock at the last drawing.
     pub clock: Instant,
+    /// The same when this began.
+    started: Instant,
     /// A word on the last key, until the next.
     pub notice: Option<String>,
     /// What the last drawing found out.
@@ -76,6 +85,8 @@ pub enum Page {
     Overview,
     /// One corridor.
     Corridor,
+    /// What calls for the operator.
+    Alarms,
     /// What happened.
     Messages,
     /// Keys, numbers, caution.
@@ -98,12 +109,15 @@ pub enum Typing {
     Filter,
     /// A time to go to.
     Time(String),
+    /// Something about an alarm.
+    Alarm(Prompt, String),
 }
 
 impl App {
     /// Nothing known yet.
     pub fn new(grid: Arc<Grid>, zone: Tz, max_age: TimeDelta) -> Self {
         let page = if grid.corridors.len() == 1 { Page::Corridor } else { Page::Overview };
+        let started = Instant::now();
         Self {
             grid,
             zone,
@@ -118,8 +132,11 @@ impl App {
             outage: None,
             panel: Panel::Outages,
             scroll: 0,
+            settings: ScreenSettings::default(),
+            alarms: AlarmPage::default(),
             size: Size::new(80, 24),
-            clock: Instant::now(),
+            clock: started,
+            started,
             notice: None,
             drawn: Drawn::default(),
             leaving: false,
@@ -128,6 +145,7 @@ impl App {
 
     /// Takes in what the connection sent.
     pub fn receive(&mut self, parcel: Parcel) {
+        self.receive_alarms(&parcel.alarms);
         self.parcel = Some(parcel);
     }
 
@@ -190,7 +208,8 @@ impl App {
 
     /// Whether the picture changes by the passing of time alone.
     pub fn ticks(&self) -> bool {
-        self.parcel.as_ref().is_some_and(|parcel| matches!(parcel.origin, Origin::Live) && !parcel.feed.ended)
+        let is_live = |parcel: &Parcel| matches!(parcel.origin, Origin::Live) && !parcel.feed.ended;
+        self.blinks() || self.parcel.as_ref().is_some_and(is_live)
     }
 }
 

@@ -12,6 +12,7 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
         Page::Overview if app.sort == Sort::WorstFirst => "worst first",
         Page::Overview => "all corridors",
         Page::Corridor => "corridor",
+        Page::Alarms => "alarms",
         Page::Messages => "messages",
         Page::Help => "help",
     };

@@ -63,6 +63,16 @@ fn broken_configurations_say_all_that_is_wrong() {
     }
 }
 
+/// The bundled configurations are right, and the reference says the defaults that the program has.
+#[test]
+fn bundled_configurations_are_read() {
+    let reference = Config::load("config/reference.toml".as_ref()).unwrap_or_else(|errors| panic!("{errors}"));
+    assert_eq!(reference.measurement, MeasurementSettings::default());
+    assert_eq!(reference.learning, LearningSettings::default());
+    assert_eq!(reference.feed, FeedSettings { inputs: reference.feed.inputs.clone(), ..FeedSettings::default() });
+    Config::load("config/demo.toml".as_ref()).unwrap_or_else(|errors| panic!("{errors}"));
+}
+
 #[test]
 fn every_key_is_read() {
     let config = Config::parse(VALID, "valid.toml").unwrap_or_else(|errors| panic!("{errors}"));
@@ -89,6 +99,7 @@ fn every_key_is_read() {
 
     let corridor = &config.grid.corridors[0];
     assert_eq!((&*corridor.name, corridor.thin_mw), ("Skarn-Velm", 150.0));
+    assert_eq!([0, 1].map(|index| config.grid.corridors[index].state_spreads.to_string()), ["0", "2"]);
     let buses: Vec<_> = corridor.buses.iter().map(|bus| (&*bus.name, bus.nominal_kv, bus.min_kv, bus.load)).collect();
     let load = Load { mw: 800.0, mvar: 120.0 };
     let expected = [("Skarn", 400.0, Some(370.0), Some(load)), ("Velm", 400.0, None, None), ("Mid", 400.0, None, None)];

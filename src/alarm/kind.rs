@@ -6,9 +6,9 @@ use serde::Serialize;
 /// What an alarm watches.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
 pub enum Kind {
-    /// Headroom, MW.
+    /// Headroom, MW, less the spreads by which the corridor's state is judged.
     HeadroomMw,
-    /// Headroom, % of the limit.
+    /// The same, % of the limit.
     HeadroomPct,
     /// Smallest angle margin after any outage, degrees; 0 where there is no equilibrium.
     AngleMargin,

@@ -15,6 +15,7 @@ mod operator;
 mod reading;
 mod state;
 mod transition;
+pub mod trial;
 
 pub use board::{AlarmId, Board, Summary};
 pub use built_in::{BUILT_IN, built_in};

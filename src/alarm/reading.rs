@@ -31,6 +31,8 @@ use Reading::{Absent, Unknown, Value};
 #[derive(Debug, Clone)]
 pub(super) struct Reader {
     clear_ms: Option<f64>,
+    /// Spreads taken off the headroom, as for the corridor's state.
+    state_spreads: f64,
     configured: [ConfiguredSource; 2],
     /// Sides whose spread was once much narrower than configured.
     narrowed: [bool; 2],
@@ -40,6 +42,7 @@ impl Reader {
     pub fn new(corridor: &Corridor) -> Self {
         Self {
             clear_ms: corridor.fault.map(|fault| fault.clear_ms),
+            state_spreads: corridor.state_spreads,
             configured: corridor.sides.map(|side| side.source),
             narrowed: [false; 2],
         }
@@ -70,8 +73,8 @@ impl Reader {
             Kind::SourceWidened => worst_source(assessment, |side, source| self.widened(side, source)),
             Kind::SourceMoved => worst_source(assessment, |side, source| self.moved(side, source)),
             _ if assessment.state == State::Blind => Unknown,
-            Kind::HeadroomMw => of_binding(assessment, assessment.headroom_mw),
-            Kind::HeadroomPct => of_binding(assessment, headroom_pct(assessment)),
+            Kind::HeadroomMw => of_binding(assessment, self.headroom_mw(assessment)),
+            Kind::HeadroomPct => of_binding(assessment, self.headroom_pct(assessment)),
             Kind::AngleMargin => lowest(assessment, |outage| Some(outage.angle_margin_deg.unwrap_or(0.0))),
             Kind::AreaMargin => lowest(assessment, |outage| outage.area_margin),
             Kind::ClearingReserve => lowest(assessment, |outage| Some(outage.critical_ms? - self.clear_ms?)),
@@ -90,6 +93,18 @@ impl Reader {
         }
     }
 
+    /// The headroom by which the corridor's state is judged.
+    fn headroom_mw(&self, assessment: &Assessment) -> Option<f64> {
+        Some(assessment.headroom_mw? - self.state_spreads * assessment.headroom_sd_mw.unwrap_or(0.0))
+    }
+
+    /// Of a limit that is nothing, nothing is left; below −100 % a percentage says no more.
+    fn headroom_pct(&self, assessment: &Assessment) -> Option<f64> {
+        let headroom_mw = self.headroom_mw(assessment)?;
+        let limit_mw = assessment.transfer_mw? + headroom_mw;
+        Some(if limit_mw > 0.0 { (100.0 * headroom_mw / limit_mw).max(-100.0) } else { -100.0 })
+    }
+
     fn widened(&self, side: usize, source: &SourceRecord) -> Option<f64> {
         self.narrowed[side].then(|| 100.0 * source.x_sd / self.configured[side].x_sd_ohm())
     }
@@ -104,13 +119,6 @@ impl Reader {
 
 fn of_binding(assessment: &Assessment, value: Option<f64>) -> Reading<'_> {
     value.map_or(Absent, |value| Value(value, assessment.binding.as_ref().and_then(|binding| binding.outage.as_ref())))
-}
-
-/// Of a limit that is nothing, nothing is left; below −100 % a percentage says no more.
-fn headroom_pct(assessment: &Assessment) -> Option<f64> {
-    let headroom_mw = assessment.headroom_mw?;
-    let limit_mw = assessment.transfer_mw? + headroom_mw;
-    Some(if limit_mw > 0.0 { (100.0 * headroom_mw / limit_mw).max(-100.0) } else { -100.0 })
 }
 
 /// The outage with the lowest value; those that separate the corridor have none.

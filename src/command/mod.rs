@@ -9,6 +9,7 @@ pub mod journal;
 pub mod replay;
 pub mod shell;
 mod stage;
+pub mod try_thresholds;
 pub mod watch;
 
 use clap::{Parser, Subcommand};
@@ -36,6 +37,8 @@ pub enum Command {
     Watch(watch::Options),
     /// Play recorded files on the screen.
     Replay(replay::Options),
+    /// Try alarms on recorded days: how many, how early, and what they would have missed.
+    Try(try_thresholds::Options),
     /// Print or export what the alarms did.
     Journal(journal::Options),
     /// Make a feed with known truth.
@@ -57,6 +60,7 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         Some(Command::Assess(options)) => assess::run(&options),
         Some(Command::Watch(options)) => watch::run(&options),
         Some(Command::Replay(options)) => replay::run(&options),
+        Some(Command::Try(options)) => try_thresholds::run(&options),
         Some(Command::Journal(options)) => journal::run(&options),
         Some(Command::Drill(options)) => drill::run(&options),
         Some(Command::Completions(options)) => shell::completions(&options),

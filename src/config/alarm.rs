@@ -39,7 +39,7 @@ struct Change {
     name: String,
     kind: Kind,
     is_new: bool,
-    enabled: bool,
+    enabled: Option<bool>,
     priority: Option<Priority>,
     setpoint: Option<f64>,
     deadband: Option<f64>,
@@ -90,7 +90,7 @@ impl Known {
         let kind = known.or(given);
         let change = Change {
             is_new: known.is_none(),
-            enabled: section.flag("enabled").unwrap_or(true),
+            enabled: section.flag("enabled"),
             priority: word(&mut section, "priority", Priority::from_word, &Priority::ALL.map(Priority::word)),
             setpoint: section.number("setpoint", kind.map_or(super::limits::ANY, setpoints)),
             deadband: section.number("deadband", NOT_NEGATIVE),
@@ -119,18 +119,15 @@ pub(super) fn resolve(
     root: &Section<'_>,
     reported: &RefCell<HashSet<(usize, String)>>,
 ) -> Vec<Definition> {
-    let mut definitions = built_in(corridor);
+    let mut definitions: Vec<_> = built_in(corridor).into_iter().map(|definition| (definition, true)).collect();
     for change in layers.into_iter().flat_map(|layer| &layer.0) {
-        let found = definitions.iter().position(|definition| *definition.name == *change.name);
-        if !change.enabled {
-            definitions.extract_if(.., |definition| *definition.name == *change.name).for_each(drop);
-            continue;
-        }
+        let found = definitions.iter().position(|(definition, _)| *definition.name == *change.name);
         let index = found.unwrap_or_else(|| {
-            definitions.push(fresh(change));
+            definitions.push((fresh(change), true));
             definitions.len() - 1
         });
-        let definition = &mut definitions[index];
+        let (definition, enabled) = &mut definitions[index];
+        *enabled = change.enabled.unwrap_or(*enabled);
         change.apply(definition);
         let Definition { setpoint, deadband, .. } = definition;
         // A setpoint of nothing has no size to compare with.
@@ -142,11 +139,10 @@ pub(super) fn resolve(
             }
         }
     }
-    definitions
+    definitions.into_iter().filter_map(|(definition, enabled)| enabled.then_some(definition)).collect()
 }
 
-/// An alarm that is in no earlier layer, as its table leaves it open. One that an earlier layer has taken out comes back
-/// as new.
+/// An alarm that is in no earlier layer, as its table leaves it open.
 fn fresh(change: &Change) -> Definition {
     let setpoint = change.setpoint.or(change.kind.usual_setpoint()).unwrap_or(f64::NAN);
     Definition {
@@ -223,7 +219,8 @@ fn suppression(mut section: Section<'_>, corridors: &[Corridor]) -> Option<Suppr
     let known = |named: super::given::Placed| {
         let circuit = circuits().find(|name| ***name == *named.text).cloned();
         if circuit.is_none() && !named.text.is_empty() {
-            let advice = section.findings().advice(&named.text, circuits().map(|name| &**name));
+            let advice =
+                section.findings().advice(&named.text, circuits().map(|name| &**name).filter(|name| !name.is_empty()));
             section.findings().report(&named.place, format!("no circuit {} here; {advice}", quoted(&named.text)));
         }
         circuit

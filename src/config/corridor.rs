@@ -45,6 +45,7 @@ pub(super) fn read<'a>(mut section: Section<'a>, names: &mut GridNames<'a>) -> C
     let name = section.required_text("name", "name the corridor");
     names.corridors.claim(&name, "corridor", &section.place("name"));
     let thin_mw = section.number("thin_mw", NOT_NEGATIVE).unwrap_or(DEFAULT_THIN_MW);
+    let state_spreads = section.number("state_spreads", NOT_NEGATIVE.up_to(10.0)).unwrap_or(0.0);
 
     let mut buses = Buses { list: Vec::new(), names: Names::new(section.findings()), distinct: true };
     let from = section.required_section("from", "describe the terminal that positive transfer leaves");
@@ -79,6 +80,7 @@ pub(super) fn read<'a>(mut section: Section<'a>, names: &mut GridNames<'a>) -> C
         require: requirements(section.section("require")),
         reclose: synchronism_check(section.section("reclose")),
         thin_mw,
+        state_spreads,
     }
 }
 

@@ -100,12 +100,13 @@ impl CorridorDesk {
         let headroom = judgement.headroom_mw;
         self.trend.push(snapshot.time, headroom);
         let thin_mw = self.corridor.thin_mw;
+        let sure = headroom - self.corridor.state_spreads * judgement.headroom_sd_mw;
         let [from, to] = judgement.e_kv;
         let [source_from, source_to] = self.sources();
         Assessment {
-            state: match headroom {
-                _ if headroom <= 0.0 => State::Spent,
-                _ if headroom < thin_mw => State::Thin,
+            state: match sure {
+                _ if sure <= 0.0 => State::Spent,
+                _ if sure < thin_mw => State::Thin,
                 _ => State::Ample,
             },
             exporter: Some(self.corridor.buses[seated.exporter].name.clone()),
@@ -119,8 +120,8 @@ impl CorridorDesk {
             ],
             headroom_mw: Some(headroom),
             headroom_sd_mw: Some(judgement.headroom_sd_mw),
-            minutes_to_thin: self.trend.minutes_to(thin_mw, headroom),
-            minutes_to_spent: self.trend.minutes_to(0.0, headroom),
+            minutes_to_thin: self.trend.minutes_to(thin_mw, sure),
+            minutes_to_spent: self.trend.minutes_to(0.0, sure),
             detail: self.detailed.then(|| Arc::new(self.detail(fit, state, &seated, &judgement))),
             intact: Some(judgement.intact),
             outages: judgement.outages,

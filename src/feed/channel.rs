@@ -2,7 +2,7 @@ use std::{collections::HashMap, ops::RangeInclusive, sync::Arc};
 
 use crate::{
     config::Config,
-    grid::{BankIndex, BusIndex, Corridor},
+    grid::{BankIndex, BusIndex, Corridor, End},
 };
 
 /// Index of a channel in [`Channels`], and of its reading in a [`super::Snapshot`].
@@ -25,15 +25,6 @@ pub enum Point {
     Closed(usize),
     /// Whether a bank is inserted.
     Inserted(BankIndex),
-}
-
-/// An end of a circuit.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum End {
-    /// At the circuit's first bus.
-    From,
-    /// At its second.
-    To,
 }
 
 /// Active or reactive.

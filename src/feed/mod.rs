@@ -22,7 +22,8 @@ mod snapshot;
 mod stream;
 mod tally;
 
-pub use channel::{Channels, End, Point, Quantity, Slot};
+pub use crate::grid::End;
+pub use channel::{Channels, Point, Quantity, Slot};
 pub use decoder::{Decoder, Format};
 pub use frame::{Frame, Quality, Reading};
 pub use input::{Address, Input, InputError};

@@ -43,6 +43,8 @@ pub struct Corridor {
     pub reclose: SynchronismCheck,
     /// Headroom below which the corridor is thin, MW.
     pub thin_mw: f64,
+    /// How many of its spreads are taken off the headroom before the corridor's state is judged by it.
+    pub state_spreads: f64,
 }
 
 /// A terminal bus or a station.
@@ -128,6 +130,15 @@ pub struct Circuit {
     pub short_time_rating_a: Option<f64>,
     /// Its series capacitors, in ascending order of place.
     pub banks: Vec<Bank>,
+}
+
+/// An end of a circuit.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum End {
+    /// At the circuit's first bus.
+    From,
+    /// At its second.
+    To,
 }
 
 /// How a circuit's parameters are given.

@@ -4,8 +4,7 @@
 use std::sync::Arc;
 
 use crate::{
-    feed::End,
-    grid::{BankIndex, BusIndex, Circuit, Corridor, FROM, TO},
+    grid::{BankIndex, BusIndex, Circuit, Corridor, End, FROM, TO},
     network::{Admittance, Branch, C64, FaultedBranch, Reduced, Topology},
 };
 

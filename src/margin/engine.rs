@@ -12,8 +12,7 @@ use super::{
     stress::Stress,
 };
 use crate::{
-    feed::End,
-    grid::{BankIndex, BusIndex, Corridor, FROM, TO},
+    grid::{BankIndex, BusIndex, Corridor, End, FROM, TO},
     network::{AMPERES, Admittance, C64, M2, Topology},
 };
 

@@ -8,8 +8,7 @@ use super::{
     stress::Settled,
 };
 use crate::{
-    feed::End,
-    grid::{BusIndex, Circuit, Corridor},
+    grid::{BusIndex, Circuit, Corridor, End},
     network::{AMPERES, C64},
 };
 

@@ -1,10 +1,7 @@
 //! A circuit as a branch between its two buses: whole, compensated, or with a fault on it.
 
 use super::{C64, TwoPort};
-use crate::{
-    feed::End,
-    grid::{Circuit, FaultKind, Line, LineTotals},
-};
+use crate::grid::{Circuit, End, FaultKind, Line, LineTotals};
 
 /// Admittance matrix of a reciprocal branch, S.
 #[derive(Debug, Clone, Copy, PartialEq)]

@@ -54,8 +54,12 @@ struct UnderstoodCorridor<'a>(&'a Corridor);
 impl fmt::Display for UnderstoodCorridor<'_> {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let corridor = self.0;
-        let Corridor { name, buses, require, reclose, thin_mw, fault, .. } = corridor;
-        writeln!(f, "{name}: from {} to {}, thin below {thin_mw} MW", buses[FROM].name, buses[TO].name)?;
+        let Corridor { name, buses, require, reclose, thin_mw, state_spreads, fault, .. } = corridor;
+        write!(f, "{name}: from {} to {}, thin below {thin_mw} MW", buses[FROM].name, buses[TO].name)?;
+        if *state_spreads > 0.0 {
+            write!(f, ", judged {state_spreads} spreads below the headroom")?;
+        }
+        writeln!(f)?;
         write!(f, "\n  buses\n{}", buses_table(corridor))?;
         write!(f, "\n  circuits\n{}", circuits_table(corridor))?;
         if corridor.banks().next().is_some() {

@@ -5,3 +5,4 @@ pub mod journal;
 pub mod jsonl;
 pub mod summary;
 mod table;
+pub mod trial;

@@ -2,13 +2,13 @@ use std::fmt;
 
 /// Rows under a heading, columns lined up, columns that are empty in every row left out.
 pub(super) struct Table<const N: usize> {
-    heading: [&'static str; N],
+    heading: [String; N],
     rows: Vec<[String; N]>,
 }
 
 impl<const N: usize> Table<N> {
-    pub fn new(heading: [&'static str; N], rows: impl IntoIterator<Item = [String; N]>) -> Self {
-        Self { heading, rows: rows.into_iter().collect() }
+    pub fn new(heading: [&str; N], rows: impl IntoIterator<Item = [String; N]>) -> Self {
+        Self { heading: heading.map(str::to_owned), rows: rows.into_iter().collect() }
     }
 }
 
@@ -23,7 +23,7 @@ impl<const N: usize> fmt::Display for Table<N> {
             let cells: Vec<_> = columns.iter().map(|(column, width)| format!("{:width$}", cell(*column))).collect();
             writeln!(f, "    {}", cells.join("   ").trim_end())
         };
-        write(&|column| self.heading[column].to_owned())?;
+        write(&|column| self.heading[column].clone())?;
         self.rows.iter().try_for_each(|row| write(&|column| row[column].clone()))
     }
 }

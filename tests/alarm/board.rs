@@ -60,6 +60,16 @@ fn the_setpoint_itself_is_beyond_and_the_end_of_the_deadband_not_yet_clear() {
 }
 
 #[test]
+fn the_headroom_is_judged_as_the_state_is() {
+    let mut board = Board::new(&config(ONLY, "state_spreads = 2"));
+    // A spread of 10 MW: 221 is judged as 201, and 219 as 199.
+    let seen = run(&mut board, "room", (0..).zip([221.0, 219.0]).map(|(s, mw)| headroom(20 * s, mw)));
+    assert_eq!(seen, []);
+    let seen = run(&mut board, "room", [headroom(40, 219.0)]);
+    assert_eq!((states(&seen), seen[0].value), (vec![(40, State::Unacknowledged)], Some(199.0)));
+}
+
+#[test]
 fn what_is_not_known_changes_nothing() {
     let mut board = board(ONLY);
     let course = |s| match s {

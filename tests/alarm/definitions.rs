@@ -53,8 +53,8 @@ fn each_layer_changes_what_it_names() {
         setpoint = 400
         [[corridor.alarm]]
         name = "source moved"
+        enabled = true
         priority = "high"
-        setpoint = 30
         [[corridor.alarm]]
         name = "angle"
         enabled = false
@@ -66,7 +66,7 @@ fn each_layer_changes_what_it_names() {
     let has = |corridor: usize, name: &str| config.alarms[corridor].iter().any(|alarm| *alarm.name == *name);
     assert!(!has(1, "source moved") && !has(0, "angle"));
     let again = named(&config, 0, "source moved");
-    assert_eq!((again.kind, again.setpoint, again.priority), (Kind::SourceMoved, 30.0, Priority::High));
+    assert_eq!((again.kind, again.setpoint, again.priority), (Kind::SourceMoved, 50.0, Priority::High));
     let expected = Definition {
         name: "angle".into(),
         kind: Kind::AngleMargin,

@@ -3,5 +3,7 @@
 mod bed;
 mod board;
 mod definitions;
+mod demo;
 mod journal;
 mod killing;
+mod trying;

@@ -54,6 +54,7 @@ pub fn corridor(stations: &[&str], circuits: Vec<Circuit>) -> Corridor {
         require: Requirements::default(),
         reclose: SynchronismCheck::default(),
         thin_mw: 0.0,
+        state_spreads: 0.0,
     }
 }
 

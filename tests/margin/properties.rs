@@ -319,3 +319,57 @@ fn two_equal_circuits_are_one_of_half_the_impedance() {
     // The loss of one halves the admittance between the terminals: never more than what both carry.
     assert!(two.outages[0].peak_mw.unwrap() < peak(&two));
 }
+
+/// Three measured circuits that carry a good deal.
+fn three_circuits() -> Invented {
+    Invented {
+        circuits: vec![(200.0, None), (220.0, Some(15.0)), (240.0, None)],
+        sources: [[1.0, 20.0, 0.0], [1.0, 15.0, 0.0]],
+        stored_energy: [60_000.0, 90_000.0],
+        fault: ("three-phase", 0.0, 100.0),
+        require: (20.0, 0.1),
+        rating_a: 3000.0,
+        kv: [405.0, 400.0],
+        angle_deg: 9.0,
+        loads: [[300.0, 50.0], [700.0, 90.0]],
+    }
+}
+
+#[test]
+fn one_wrong_meter_is_named_and_hardly_moves_the_headroom() {
+    let invented = three_circuits();
+    let right = invented.assess();
+    let allowed_mw = 0.01 * right.intact.as_ref().expect("a state").peak_mw;
+    let exact = invented.values(false);
+    for (channel, value) in exact.iter().filter(|(channel, _)| channel.starts_with('L')) {
+        for wrong in [0.9, 1.1, -1.0] {
+            let mut values = exact.clone();
+            values.insert(channel.clone(), wrong * value);
+            let found = assess(&invented.config(false), &values);
+            let moved = found.headroom_mw.expect("a state") - right.headroom_mw.expect("a state");
+            assert!(moved.abs() < allowed_mw, "{channel} times {wrong}: {moved} MW");
+            let suspects: Vec<_> = found.fit.suspects.iter().map(|suspect| &**suspect).collect();
+            assert!(suspects.is_empty() || suspects == [channel], "{channel} times {wrong}: {suspects:?}");
+            // A tenth of a few Mvar is within the metering class; a tenth of these MW is not.
+            assert!(!suspects.is_empty() || !channel.contains(".mw"), "{channel} times {wrong} goes unnoticed");
+        }
+    }
+}
+
+/// A corridor judged some spreads below its headroom is thin before it is so by the headroom itself.
+#[test]
+fn the_state_may_be_judged_below_the_headroom() {
+    let invented = three_circuits();
+    let judged = |spreads: f64, thin_mw: f64| {
+        let keys = format!("name = \"Skarn-Velm\"\nthin_mw = {thin_mw}\nstate_spreads = {spreads}\n");
+        let config = invented.config(false).replace("name = \"Skarn-Velm\"\n", &keys);
+        assess(&config, &invented.values(false))
+    };
+    let plain = judged(0.0, 1.0);
+    let (headroom, spread) = (plain.headroom_mw.unwrap(), plain.headroom_sd_mw.unwrap());
+    assert!(headroom > 0.0 && spread > 1.0, "{headroom} {spread}");
+    let thin_mw = headroom - spread;
+    assert_eq!(judged(0.5, thin_mw).state, tautline::desk::State::Ample);
+    assert_eq!(judged(1.5, thin_mw).state, tautline::desk::State::Thin);
+    assert_eq!(judged(0.0, thin_mw).headroom_mw, plain.headroom_mw, "the headroom stays what it is");
+}

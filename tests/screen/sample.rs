@@ -49,6 +49,7 @@ pub fn grid(names: &[&str]) -> Arc<Grid> {
         require: Requirements { angle_margin_deg: 30.0, area_margin: 0.2, ..Requirements::default() },
         reclose: SynchronismCheck::default(),
         thin_mw: 100.0,
+        state_spreads: 0.0,
     });
     Arc::new(Grid { frequency_hz: 50.0, corridors: corridors.collect() })
 }

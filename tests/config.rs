@@ -96,6 +96,7 @@ fn every_key_is_read() {
         aging_ohm_per_sqrt_day: 0.5,
     };
     assert_eq!(config.learning, learning);
+    assert_eq!(config.state_file.as_deref(), Some("kept/grid.json"));
 
     let corridor = &config.grid.corridors[0];
     assert_eq!((&*corridor.name, corridor.thin_mw), ("Skarn-Velm", 150.0));

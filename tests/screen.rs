@@ -13,6 +13,9 @@ mod drawings;
 #[path = "screen/keys.rs"]
 mod keys;
 #[cfg(unix)]
+#[path = "screen/pty.rs"]
+mod pty;
+#[cfg(unix)]
 #[path = "screen/terminal.rs"]
 mod terminal;
 #[path = "screen/unbreakable.rs"]

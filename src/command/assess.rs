@@ -8,7 +8,6 @@ use std::{
     time::Duration,
 };
 
-use chrono::TimeDelta;
 use clap::{Args, ValueEnum};
 use futures::FutureExt;
 use rayon::{ThreadPool, ThreadPoolBuilder, prelude::*};
@@ -17,7 +16,7 @@ use tokio::{
     signal::unix::{SignalKind, signal},
 };
 
-use super::Failure;
+use super::{Failure, inputs};
 use crate::{
     config::Config,
     desk::{Assessment, CorridorDesk, Desk},
@@ -77,7 +76,7 @@ impl Sources {
 pub fn run(options: &Options) -> Result<(), Failure> {
     let mut config = Config::load(&options.config)?;
     Sources::choose(options.sources, &mut config);
-    let inputs = options.inputs(&config)?;
+    let inputs = inputs::chosen(&[&options.input[..], &options.files[..]].concat(), &config)?;
     // Inputs are read beside the thread that assesses.
     let runtime = runtime::Builder::new_multi_thread().worker_threads(2).enable_all().build()?;
     let outcome = runtime.block_on(assess(options, &config, &inputs));
@@ -91,22 +90,6 @@ pub fn run(options: &Options) -> Result<(), Failure> {
 
 fn is_broken_pipe(failure: &(dyn std::error::Error + 'static)) -> bool {
     failure.downcast_ref::<io::Error>().is_some_and(|error| error.kind() == io::ErrorKind::BrokenPipe)
-}
-
-impl Options {
-    fn inputs(&self, config: &Config) -> Result<Vec<Input>, Failure> {
-        let mut inputs = [&self.input[..], &self.files[..]].concat();
-        if inputs.is_empty() {
-            inputs = config.feed.inputs.iter().map(|input| input.parse()).collect::<Result<_, _>>()?;
-        }
-        if inputs.is_empty() {
-            return Err("no input: name a file or an --input, or set `inputs` under [feed] in the configuration".into());
-        }
-        if inputs.iter().filter(|input| **input == Input::Stdin).count() > 1 {
-            return Err("standard input can be read only once".into());
-        }
-        Ok(inputs)
-    }
 }
 
 async fn assess(options: &Options, config: &Config, inputs: &[Input]) -> Result<(), Failure> {
@@ -175,11 +158,10 @@ struct Seat {
 
 impl Bench {
     fn new(options: &Options, config: &Config, channels: &Arc<Channels>) -> Result<Self, Failure> {
-        let max_age = TimeDelta::from_std(Duration::try_from_secs_f64(config.feed.max_age_s)?)?;
         let seat = |desk| Seat { desk, last_only: options.last, last: None, records: Vec::new(), ends: Vec::new() };
         Ok(Self {
             pool: ThreadPoolBuilder::new().num_threads(options.threads.map_or(0, NonZeroUsize::get)).build()?,
-            holder: Holder::new(channels, max_age),
+            holder: inputs::holder(config, channels),
             seats: Desk::new(config, channels).corridors.into_iter().map(seat).collect(),
         })
     }

@@ -15,7 +15,7 @@ pub(super) fn chosen(named: &[Input], config: &Config) -> Result<Vec<Input>, Fai
         inputs = config.feed.inputs.iter().map(|input| input.parse()).collect::<Result<_, _>>()?;
     }
     if inputs.is_empty() {
-        return Err("no input: name one with --input, or set `inputs` under [feed] in the configuration".into());
+        return Err("no input: name a file or an --input, or set `inputs` under [feed] in the configuration".into());
     }
     if inputs.iter().filter(|input| **input == Input::Stdin).count() > 1 {
         return Err("standard input can be read only once".into());

@@ -18,6 +18,7 @@ use crate::{
     feed::{Channels, Holder, Monitor},
     report::summary::Summary,
     screen::{
+        Ending,
         connection::{Player, Recording, Replay},
         state::parse_time,
     },
@@ -85,7 +86,8 @@ pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Resu
         replay.begin(at, speed, playing);
         replay.run();
     });
-    stage::show(stage::runtime()?, config, parcels, move |order| orders.try_send(order).is_ok(), connection)
+    let ending = stage::show(&stage::runtime()?, config, parcels, move |order| orders.try_send(order).is_ok())?;
+    if ending == Ending::Disconnected && connection.join().is_err() { Err(stage::fault()) } else { Ok(()) }
 }
 
 /// Every frame as fast as it goes, and what came of it as text.

@@ -3,7 +3,6 @@
 use std::{
     io::{IsTerminal, stdout},
     sync::Arc,
-    thread::JoinHandle,
 };
 
 use tokio::{
@@ -15,7 +14,7 @@ use super::{Failure, inputs};
 use crate::{
     config::Config,
     screen::{
-        self,
+        self, Ending,
         connection::{Order, Parcel},
         state::App,
     },
@@ -38,24 +37,19 @@ pub(super) fn runtime() -> Result<Runtime, Failure> {
     Ok(Builder::new_multi_thread().worker_threads(2).enable_all().build()?)
 }
 
-/// Shows a connection until the user leaves, or it breaks.
+/// Shows a connection until the user leaves, or it breaks; the terminal is given back by then.
 pub(super) fn show(
-    runtime: Runtime,
+    runtime: &Runtime,
     config: &Config,
     parcels: watch::Receiver<Option<Parcel>>,
     order: impl Fn(Order) -> bool,
-    connection: JoinHandle<()>,
-) -> Result<(), Failure> {
+) -> Result<Ending, Failure> {
     let mut app = App::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
     app.settings = config.screen.clone();
-    let ending = runtime.block_on(screen::run(app, parcels, order));
-    // It ends once the screen is gone, after it has written down what it has to.
-    let outcome = connection.join();
-    // A thread that waits for standard input cannot be stopped, nor need it be waited for.
-    runtime.shutdown_background();
-    ending?;
-    if outcome.is_err() {
-        return Err("the thread that assesses failed; this is a fault of the program, please report it".into());
-    }
-    Ok(())
+    Ok(runtime.block_on(screen::run(app, parcels, order))?)
+}
+
+/// What to say of a connection that broke down.
+pub(super) fn fault() -> Failure {
+    "the thread that assesses failed; this is a fault of the program, please report it".into()
 }

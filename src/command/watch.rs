@@ -1,6 +1,11 @@
 //! `tautline watch`: live inputs on the screen.
 
-use std::{env, path::PathBuf, sync::Arc, thread};
+use std::{
+    env, fs,
+    path::{Path, PathBuf},
+    sync::Arc,
+    thread,
+};
 
 use clap::Args;
 use tokio::sync::{mpsc, watch};
@@ -10,7 +15,7 @@ use crate::{
     config::Config,
     desk::Desk,
     feed::{Channels, Feed, Input, Patience},
-    screen::connection::{Duty, Live},
+    screen::connection::{Duty, Keeper, Live},
 };
 
 /// Options of `watch`.
@@ -26,6 +31,13 @@ pub struct Options {
     /// What stands behind the terminals [default: as the configuration says, else learned]
     #[arg(long, value_enum)]
     sources: Option<Sources>,
+    /// Where what is learned is kept over a restart [default: as the configuration says, else beside it, named like it
+    /// and ending in .learned.json]
+    #[arg(long, value_name = "FILE", conflicts_with = "no_state")]
+    state: Option<PathBuf>,
+    /// Begin with the configured sources, and keep nothing
+    #[arg(long)]
+    no_state: bool,
 }
 
 /// Runs it.
@@ -33,18 +45,50 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let mut config = Config::load(&options.config)?;
     Sources::choose(options.sources, &mut config);
     let inputs = inputs::chosen(&options.input, &config)?;
+    let state_file = options.state_file(&config)?;
     stage::needs_terminal()?;
     let channels = Arc::new(Channels::new(&config));
-    let (desk, holder) = (Desk::detailed(&config, &channels), inputs::holder(&config, &channels));
+    let (mut desk, holder) = (Desk::detailed(&config, &channels), inputs::holder(&config, &channels));
 
     let runtime = stage::runtime()?;
     let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::default()))?;
-    let by = env::var("USER").ok();
-    let duty = Duty::begin(&config, config.journal.path(&options.config), by)?;
+    let keeper = state_file.map(|path| Keeper::open(path, &mut desk));
+    for finding in keeper.iter().flat_map(Keeper::findings) {
+        eprintln!("tautline: {finding}");
+    }
+    let duty = Duty::begin(&config, config.journal.path(&options.config), env::var("USER").ok())?;
     let (sender, parcels) = watch::channel(None);
     let (orders, taken) = mpsc::channel(stage::ORDERS_WAITING);
-    let live = Live { feed, desk, holder, duty, parcels: sender, orders: taken };
+    let live = Live { feed, desk, holder, duty, keeper, parcels: sender, orders: taken };
     let handle = runtime.handle().clone();
     let connection = thread::spawn(move || handle.block_on(live.run()));
-    stage::show(runtime, &config, parcels, move |order| orders.try_send(order).is_ok(), connection)
+    let ending = stage::show(&runtime, &config, parcels, move |order| orders.try_send(order).is_ok());
+    // It ends with the screen, once the journal is closed and what was learned is kept.
+    let kept = connection.join();
+    // A thread that waits for standard input cannot be stopped, nor need it be waited for.
+    runtime.shutdown_background();
+    ending?;
+    if let Some(trouble) = kept.map_err(|_| stage::fault())? {
+        eprintln!("tautline: {trouble}");
+    }
+    Ok(())
+}
+
+impl Options {
+    fn state_file(&self, config: &Config) -> Result<Option<PathBuf>, Failure> {
+        if self.no_state || !config.learning.enabled {
+            return Ok(None);
+        }
+        let configured = || {
+            let name = config.state_file.as_ref()?;
+            Some(self.config.parent().unwrap_or(Path::new("")).join(name))
+        };
+        let path = self.state.clone().or_else(configured).unwrap_or_else(|| self.config.with_extension("learned.json"));
+        if fs::canonicalize(&path).is_ok_and(|path| fs::canonicalize(&self.config).is_ok_and(|config| config == path)) {
+            return Err(
+                format!("{} is the configuration; name another file for what is learned", path.display()).into()
+            );
+        }
+        Ok(Some(path))
+    }
 }

@@ -59,6 +59,8 @@ pub struct Config {
     pub journal: JournalSettings,
     /// How the screen calls for attention.
     pub screen: ScreenSettings,
+    /// Where `watch` keeps what it learned, from this file's folder (`[learning] state_file`).
+    pub state_file: Option<String>,
 }
 
 /// Measurement classes (`[measurement]`): common metering practice by default.
@@ -154,15 +156,18 @@ fn read(mut root: Section<'_>) -> Config {
         .map(|mut section| (section.sections("alarm", alarm::MOST_ALARMS), corridor::read(section, &mut names)))
         .unzip();
     let grid = Grid { frequency_hz, corridors };
+    let mut learned = root.section("learning");
+    let state_file = learned.text("state_file").filter(|name| !name.is_empty());
     Config {
         time_zone,
         measurement: measurement(root.section("measurement")),
         feed: feed(root.section("feed")),
         channel_names: channels::read(root.section("channels"), &grid, &names),
-        learning: learning(root.section("learning")),
         alarms: alarm::all(&mut root, &grid, alarms),
         journal: journal::read(root.section("journal")),
         screen: screen::read(root.section("screen")),
+        learning: learning(learned),
+        state_file,
         grid,
     }
 }

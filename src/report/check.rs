@@ -17,7 +17,8 @@ pub struct Understood<'a>(pub &'a Config);
 
 impl fmt::Display for Understood<'_> {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let Config { grid, time_zone, measurement, feed, channel_names, learning, alarms, journal, screen } = self.0;
+        let Config { grid, time_zone, measurement, feed, channel_names, learning, alarms, journal, screen, state_file } =
+            self.0;
         writeln!(f, "{} at {} Hz", counted(grid.corridors.len(), "corridor"), grid.frequency_hz)?;
         for (corridor, alarms) in grid.corridors.iter().zip(alarms) {
             write!(f, "\n{}", UnderstoodCorridor(corridor))?;
@@ -33,7 +34,6 @@ impl fmt::Display for Understood<'_> {
             "    standard deviations: kV {} %, angles {}°, MW and Mvar {} % of thermal MVA",
             measurement.kv_sigma_pct, measurement.angle_sigma_deg, measurement.power_sigma_pct
         )?;
-        writeln!(f, "    sources: {}", if learning.enabled { "learned from steps" } else { "as configured" })?;
         writeln!(f, "    journal: entries are kept for {} days", journal.keep_days)?;
         let bell: Vec<_> = screen.bell.iter().map(|priority| priority.word()).collect();
         let bell =
@@ -45,6 +45,12 @@ impl fmt::Display for Understood<'_> {
         )?;
         let applied = if screen.apply_changes { "applied at once" } else { "shown first, and applied by a key" };
         writeln!(f, "    a change of this file while watching is {applied}")?;
+        if learning.enabled {
+            let kept = state_file.as_deref().unwrap_or("a file beside the configuration");
+            writeln!(f, "    sources: learned from steps; watch keeps them in {kept}")?;
+        } else {
+            writeln!(f, "    sources: as configured")?;
+        }
         writeln!(f, "    times shown in {}", time_zone.name())
     }
 }

@@ -3,8 +3,9 @@ use std::{
     time::Duration,
 };
 
-use crossterm::event::{Event, EventStream, MouseEventKind};
+use crossterm::event::{Event, EventStream, KeyCode, KeyModifiers, MouseEventKind};
 use futures::StreamExt;
+use rustix::process::{Signal, getpid, kill_process};
 use tokio::{
     signal::unix::{SignalKind, signal},
     sync::watch,
@@ -15,7 +16,7 @@ use super::{
     connection::{Order, Parcel},
     pace::{Pace, Why},
     state::App,
-    terminal::Screen,
+    terminal::{self, Screen},
     view::{self, Theme},
 };
 
@@ -38,7 +39,8 @@ pub async fn run(
     let mut interrupted = signal(SignalKind::interrupt())?;
     let mut terminated = signal(SignalKind::terminate())?;
     let mut hung_up = signal(SignalKind::hangup())?;
-    let mut continued = signal(SignalKind::from_raw(CONTINUE))?;
+    let mut suspended = signal(SignalKind::from_raw(Signal::TSTP.as_raw()))?;
+    let mut continued = signal(SignalKind::from_raw(Signal::CONT.as_raw()))?;
     let mut second = interval(Duration::from_secs(1));
     second.set_missed_tick_behavior(MissedTickBehavior::Skip);
     let mut screen = Screen::take()?;
@@ -59,6 +61,7 @@ pub async fn run(
                             app.refused();
                         }
                     }
+                    Answer::Suspend => suspend()?,
                 },
                 Some(Err(error)) => return Err(error),
                 None => break,
@@ -66,6 +69,7 @@ pub async fn run(
             _ = interrupted.recv() => break,
             _ = terminated.recv() => break,
             _ = hung_up.recv() => break,
+            _ = suspended.recv() => suspend()?,
             _ = continued.recv() => screen.retake()?,
             () = sleep_until(due.map_or_else(Instant::now, Instant::from_std)), if due.is_some() => {
                 app.clock = std::time::Instant::now();
@@ -102,20 +106,24 @@ pub async fn run(
     Ok(Ending::Left)
 }
 
-/// SIGCONT (POSIX leaves the number open; this is its value on Linux).
-#[cfg(target_os = "linux")]
-const CONTINUE: i32 = 18;
-#[cfg(not(target_os = "linux"))]
-const CONTINUE: i32 = 19;
+/// Gives the terminal back and stops until told to continue, which takes it anew.
+fn suspend() -> io::Result<()> {
+    terminal::give_back();
+    Ok(kill_process(getpid(), Signal::STOP)?)
+}
 
 enum Answer {
     Nothing,
     Drawing,
+    Suspend,
     Order(Order),
 }
 
 fn answer(app: &mut App, event: &Event) -> Answer {
     let order = match event {
+        Event::Key(key) if key.modifiers.contains(KeyModifiers::CONTROL) && key.code == KeyCode::Char('z') => {
+            return Answer::Suspend;
+        }
         Event::Key(key) => app.key(*key),
         Event::Mouse(mouse) if matches!(mouse.kind, MouseEventKind::Moved | MouseEventKind::Drag(_)) => {
             return Answer::Nothing;

@@ -10,7 +10,7 @@ use crossterm::{
     event::{DisableMouseCapture, EnableMouseCapture},
     execute,
     style::ResetColor,
-    terminal::{EnterAlternateScreen, LeaveAlternateScreen, disable_raw_mode, enable_raw_mode},
+    terminal::{Clear, ClearType, EnterAlternateScreen, LeaveAlternateScreen, disable_raw_mode, enable_raw_mode},
 };
 use ratatui::{Terminal, backend::CrosstermBackend};
 
@@ -39,7 +39,10 @@ impl Screen {
     /// Takes the terminal anew, after the process was stopped and goes on.
     pub fn retake(&mut self) -> io::Result<()> {
         enter()?;
-        self.terminal.clear()
+        execute!(stdout(), Clear(ClearType::All))?;
+        // A new one draws everything. Clearing the old one would ask the terminal where the cursor is, and wait.
+        self.terminal = Terminal::new(CrosstermBackend::new(stdout()))?;
+        Ok(())
     }
 }
 
@@ -55,7 +58,7 @@ fn enter() -> io::Result<()> {
 }
 
 /// Puts everything back; harmless when there is nothing to put back, and silent when the terminal is gone.
-fn give_back() {
+pub(super) fn give_back() {
     let _ = execute!(stdout(), DisableMouseCapture, ResetColor, Show, LeaveAlternateScreen);
     let _ = disable_raw_mode();
 }

@@ -20,6 +20,8 @@ const LOGGED: usize = 64;
 const HISTORY: usize = 288;
 const HISTORY_EVERY_S: f64 = 300.0;
 const DAY_S: f64 = 86_400.0;
+/// Frames that come again are no older than this; further back they are another run of events.
+const AGAIN_S: f64 = 2.0 * DAY_S;
 /// A side that moves does so by about this part of its voltage.
 const MOVE_PART: f64 = 0.01;
 /// Probabilities beforehand of neither, from, to and both having moved.
@@ -38,6 +40,8 @@ pub struct Learner {
     configured: Belief,
     belief: Belief,
     aged_s: Option<f64>,
+    /// What was recalled had been learned from frames up to here.
+    recalled_s: Option<f64>,
     estimate: Estimate,
     detector: Detector,
     watch: [Watch; 2],
@@ -55,6 +59,7 @@ impl Learner {
             configured,
             belief: configured,
             aged_s: None,
+            recalled_s: None,
             estimate: Estimate::configured(sources),
             detector: Detector::new(&settings),
             watch: [Watch::default(); 2],
@@ -106,6 +111,7 @@ impl Learner {
         self.both = memory.both;
         self.estimate.steps = memory.steps;
         self.aged_s = Some(seconds(memory.time));
+        self.recalled_s = self.aged_s;
         self.steps.clear();
         self.steps.extend(memory.recent.iter().rev().take(LOGGED).rev());
         self.refresh();
@@ -118,7 +124,7 @@ impl Learner {
 
     /// Takes one frame; returns a step once its after window is complete.
     pub fn observe(&mut self, seen: &Observation) -> Option<Step> {
-        if !self.settings.enabled || !seen.is_usable() {
+        if !self.settings.enabled || !seen.is_usable() || self.knows(seen.time) {
             return None;
         }
         let found = self.detector.take(seconds(seen.time), seen, &self.estimate.mean)?;
@@ -128,6 +134,11 @@ impl Learner {
         self.age(sudden.onset.after_s);
         let verdict = event.judge(&self.belief)?;
         Some(self.settle(&sudden.onset, &event, &verdict))
+    }
+
+    /// Whether a frame comes again that was learned from before a restart, as from the head of a file that is followed.
+    fn knows(&self, seen: DateTime<Utc>) -> bool {
+        self.recalled_s.is_some_and(|until_s| (0.0..AGAIN_S).contains(&(until_s - seconds(seen))))
     }
 
     fn event(&self, sudden: &Sudden) -> Option<Event> {

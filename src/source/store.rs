@@ -5,16 +5,17 @@ use std::{
     fs::{self, File},
     io::{self, Read, Write},
     path::{Path, PathBuf},
+    process,
 };
 
-use chrono::{DateTime, Utc};
+use chrono::{DateTime, Datelike, Utc};
 use serde::{Deserialize, Serialize};
 use thiserror::Error;
 
 use super::Step;
 
 /// No state file of sane size is larger.
-const LARGEST_BYTES: u64 = 16 << 20;
+const LARGEST_BYTES: u64 = 64 << 20;
 const VERSION: u32 = 1;
 
 /// What was learned of one corridor.
@@ -43,7 +44,7 @@ pub enum StoreError {
         source: io::Error,
     },
     /// The file is damaged.
-    #[error("{}: not a state file ({what}); it is ignored, and will be written anew", path.display())]
+    #[error("{}: not a state file ({what}); it is ignored, and learning starts again", path.display())]
     Damaged {
         /// Which file.
         path: PathBuf,
@@ -71,6 +72,10 @@ pub fn load(path: &Path) -> Result<BTreeMap<String, Memory>, StoreError> {
         Err(error) if error.kind() == io::ErrorKind::NotFound => return Ok(BTreeMap::new()),
         opened => opened.map_err(|source| StoreError::File { path: path.to_owned(), source })?,
     };
+    if !file.metadata().is_ok_and(|metadata| metadata.is_file()) {
+        let source = io::Error::new(io::ErrorKind::InvalidInput, "not a regular file");
+        return Err(StoreError::File { path: path.to_owned(), source });
+    }
     let mut bytes = Vec::new();
     file.take(LARGEST_BYTES)
         .read_to_end(&mut bytes)
@@ -80,13 +85,20 @@ pub fn load(path: &Path) -> Result<BTreeMap<String, Memory>, StoreError> {
     if state.version != VERSION {
         return Err(damaged(format!("version {} instead of {VERSION}", state.version)));
     }
+    // Years that a calendar can show in every time zone.
+    let sane = |time: DateTime<Utc>| (1..=9999).contains(&time.year());
+    let times = |memory: &Memory| memory.recent.iter().map(|step| step.time).chain([memory.time]).all(sane);
+    if !state.corridors.values().all(times) {
+        return Err(damaged("a time beyond any calendar".into()));
+    }
     Ok(state.corridors)
 }
 
 /// Writes what was learned, whole or not at all: beside the file first, then in its place.
 pub fn save(path: &Path, corridors: BTreeMap<String, Memory>) -> Result<(), StoreError> {
     let mut beside = path.as_os_str().to_owned();
-    beside.push(".new");
+    // Two desks may keep the same file: each writes beside it on its own.
+    beside.push(format!(".{}.new", process::id()));
     let write = || {
         let mut file = File::create(&beside)?;
         serde_json::to_writer(&mut file, &StateFile { version: VERSION, corridors })?;
@@ -94,5 +106,8 @@ pub fn save(path: &Path, corridors: BTreeMap<String, Memory>) -> Result<(), Stor
         file.sync_all()?;
         fs::rename(&beside, path)
     };
-    write().map_err(|source| StoreError::File { path: path.to_owned(), source })
+    write().map_err(|source| {
+        let _half_written = fs::remove_file(&beside);
+        StoreError::File { path: path.to_owned(), source }
+    })
 }

@@ -141,7 +141,7 @@ fn every_key_of_the_help_page_works() {
                     "Tab" => "<tab>",
                     "Shift-Tab" => "<back-tab>",
                     "Space" => "<space>",
-                    "Ctrl-C" => continue,
+                    "Ctrl-C" | "Ctrl-Z" => continue,
                     single => single,
                 };
                 // Somewhere, from among a few starting points, the key changes the screen or gives an order.

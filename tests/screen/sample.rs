@@ -5,13 +5,14 @@ use chrono::{DateTime, TimeDelta, Utc};
 use tautline::{
     desk::{
         Action, Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Intact,
-        IntactLimits, OutageLimits, OutageRecord, Reclose, SourceRecord, State,
+        IntactLimits, Learned, OutageLimits, OutageRecord, Reclose, SourceRecord, State,
     },
     grid::{
         Bank, Bus, Circuit, ConfiguredSource, Corridor, Fault, FaultKind, Grid, Line, Requirements, Side,
         SynchronismCheck,
     },
     margin::{OutagePicture, Picture, PowerAngle},
+    source::{Moved, SpreadPoint, Step},
 };
 
 const CIRCUITS: [&str; 3] = ["SV1", "SV2", "SV3"];
@@ -258,6 +259,34 @@ fn source(bus: &str, x_ohm: f64, basis: Basis, steps: u64) -> SourceRecord {
     }
 }
 
+/// An hour of learning, in which both sides moved and a circuit was switched.
+fn learned() -> Learned {
+    let step = |second, moved, de_kv, probability| Step {
+        time: time(second),
+        moved,
+        probability,
+        de_kv,
+        topology_changed: moved == Moved::Neither,
+        explained: moved != Moved::Both,
+        widened: false,
+    };
+    Learned {
+        steps: vec![
+            step(-60_000, Moved::From, [2.1, 0.1], 0.97),
+            step(1200, Moved::To, [0.0, -12.41], 0.994),
+            step(2400, Moved::Neither, [0.1, 0.0], 0.88),
+            step(3480, Moved::Both, [1.5, 2.26], 0.61),
+        ],
+        history: (0..12)
+            .map(|five| SpreadPoint {
+                time: time(300 * five),
+                x_ohm: [22.0, 14.0],
+                x_sd_ohm: [6.6 / (1.0 + 0.3 * five as f64), 4.2],
+            })
+            .collect(),
+    }
+}
+
 fn detail(transfer_mw: f64, picture: Picture) -> Detail {
     let bus = |name: &str, kv, deg| BusDetail { name: name.into(), kv, deg, load_mw: 800.0, load_mvar: 120.0 };
     let circuit = |name: &&str| CircuitDetail {
@@ -271,6 +300,6 @@ fn detail(transfer_mw: f64, picture: Picture) -> Detail {
         buses: vec![bus("Skarn", 408.02, 14.1), bus("Velm", 402.4, 0.0)],
         circuits: CIRCUITS.iter().map(circuit).collect(),
         picture,
-        learned: Arc::default(),
+        learned: Arc::new(learned()),
     }
 }

@@ -86,6 +86,11 @@ fn feed() -> FeedReport {
             standing: "reading, 7200 frames".into(),
             findings: vec!["3 malformed lines skipped".into()],
         }],
+        kept: Some(InputReport {
+            name: "grid.learned.json".into(),
+            standing: "written 06:58:20 UTC".into(),
+            findings: Vec::new(),
+        }),
         frames: 7200,
         arrived: Some(Instant::now()),
         ended: false,

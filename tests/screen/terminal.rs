@@ -1,95 +1,10 @@
 //! The program on a real (pseudo) terminal: it must give it back whatever happens.
 
-use std::{
-    fs::{self, File},
-    io::{Read, Write},
-    os::fd::OwnedFd,
-    path::PathBuf,
-    process::{Child, Command, ExitStatus},
-    sync::mpsc::{Receiver, channel},
-    thread,
-    time::{Duration, Instant},
-};
+use std::{fs, io::Write, path::PathBuf, process::Command};
 
-use rustix::{
-    fs::{Mode, OFlags},
-    process::{Pid, Signal, kill_process},
-    pty::{OpenptFlags, grantpt, openpt, ptsname, unlockpt},
-    termios::{LocalModes, Winsize, tcgetattr, tcsetwinsize},
-};
+use rustix::process::Signal;
 
-const PATIENCE: Duration = Duration::from_secs(30);
-
-/// A program on a terminal of 80×24.
-pub struct Stage {
-    pub child: Child,
-    pub keyboard: File,
-    terminal: OwnedFd,
-    output: Receiver<Vec<u8>>,
-    pub seen: String,
-}
-
-impl Stage {
-    pub fn new(mut command: Command) -> Self {
-        let master = openpt(OpenptFlags::RDWR | OpenptFlags::NOCTTY).unwrap();
-        grantpt(&master).unwrap();
-        unlockpt(&master).unwrap();
-        let name = ptsname(&master, Vec::new()).unwrap();
-        let terminal = rustix::fs::open(name, OFlags::RDWR | OFlags::NOCTTY, Mode::empty()).unwrap();
-        tcsetwinsize(&terminal, Winsize { ws_row: 24, ws_col: 80, ws_xpixel: 0, ws_ypixel: 0 }).unwrap();
-        let end = || terminal.try_clone().unwrap();
-        let child = command.stdin(end()).stdout(end()).stderr(end()).env("TERM", "xterm-256color").spawn().unwrap();
-
-        let keyboard = File::from(master);
-        let mut screen = keyboard.try_clone().unwrap();
-        let (sender, output) = channel();
-        thread::spawn(move || {
-            let mut bytes = [0; 4096];
-            while let Ok(count @ 1..) = screen.read(&mut bytes) {
-                if sender.send(bytes[..count].to_vec()).is_err() {
-                    break;
-                }
-            }
-        });
-        Self { child, keyboard, terminal, output, seen: String::new() }
-    }
-
-    fn is_raw(&self) -> bool {
-        !tcgetattr(&self.terminal).unwrap().local_modes.contains(LocalModes::ICANON)
-    }
-
-    /// Waits until the output contains a text.
-    pub fn wait_for(&mut self, text: &str) {
-        let start = Instant::now();
-        while !self.seen.contains(text) {
-            assert!(start.elapsed() < PATIENCE, "no “{text}” in {:?}", self.seen);
-            if let Ok(bytes) = self.output.recv_timeout(Duration::from_millis(100)) {
-                self.seen += &String::from_utf8_lossy(&bytes);
-            }
-        }
-    }
-
-    pub fn wait_for_end(&mut self) -> ExitStatus {
-        let start = Instant::now();
-        loop {
-            if let Some(status) = self.child.try_wait().unwrap() {
-                while let Ok(bytes) = self.output.recv_timeout(Duration::from_millis(200)) {
-                    self.seen += &String::from_utf8_lossy(&bytes);
-                }
-                return status;
-            }
-            assert!(start.elapsed() < PATIENCE, "it does not end");
-            thread::sleep(Duration::from_millis(10));
-        }
-    }
-
-    fn assert_given_back(&self) {
-        assert!(!self.is_raw());
-        for sequence in ["\u{1b}[?1049l", "\u{1b}[?25h", "\u{1b}[?1000l"] {
-            assert!(self.seen.contains(sequence), "{sequence:?} is missing at the end");
-        }
-    }
-}
+use crate::pty::Stage;
 
 fn files() -> (PathBuf, PathBuf) {
     let case = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("tests/cases/corridor-03");
@@ -122,7 +37,7 @@ fn keys_and_signals_give_the_terminal_back() {
     }
     for signal in [Signal::TERM, Signal::INT, Signal::HUP] {
         let mut stage = replay();
-        kill_process(Pid::from_child(&stage.child), signal).unwrap();
+        stage.signal(signal);
         assert!(stage.wait_for_end().success(), "{signal:?}");
         stage.assert_given_back();
     }
@@ -139,12 +54,34 @@ fn watching_a_file_shows_it_and_says_when_it_has_ended() {
         copy
     };
     let mut command = tautline();
-    command.arg("watch").arg("--config").arg(config).arg("--input").arg(frames);
+    command.arg("watch").arg("--no-state").arg("--config").arg(config).arg("--input").arg(frames);
     let mut stage = Stage::new(command);
     stage.wait_for("THE FEED HAS ENDED");
     stage.keyboard.write_all(b"q").unwrap();
     assert!(stage.wait_for_end().success());
     stage.assert_given_back();
+}
+
+#[test]
+fn it_can_be_suspended_and_brought_back() {
+    for suspend in ["\u{1a}", "signal"] {
+        let mut stage = replay();
+        stage.seen.clear();
+        if suspend == "signal" {
+            stage.signal(Signal::TSTP);
+        } else {
+            stage.keyboard.write_all(suspend.as_bytes()).unwrap();
+        }
+        stage.wait_for("\u{1b}[?1049l");
+        assert!(!stage.is_raw());
+        stage.seen.clear();
+        stage.signal(Signal::CONT);
+        stage.wait_for("headroom");
+        assert!(stage.is_raw());
+        stage.keyboard.write_all(b"q").unwrap();
+        assert!(stage.wait_for_end().success());
+        stage.assert_given_back();
+    }
 }
 
 #[test]

@@ -6,7 +6,7 @@ use std::{
     path::Path,
 };
 
-use crate::terminal::{Stage, tautline};
+use crate::{pty::Stage, terminal::tautline};
 
 const CONFIG: &str = r#"
 [grid]

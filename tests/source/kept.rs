@@ -71,3 +71,14 @@ fn a_damaged_file_is_named_and_nothing_more() {
         assert!(message.contains("state.json") && message.contains("ignored"), "{message}");
     }
 }
+
+#[test]
+fn frames_that_come_again_teach_nothing_new() {
+    let (simulator, learner) = learned();
+    let mut again = Learner::new(&simulator.configured, LearningSettings::default());
+    again.recall(&learner.memory().unwrap()).unwrap();
+    for seen in Simulator::new(Drill { hours: 2.5, ..Drill::day(7) }) {
+        assert!(again.observe(&seen).is_none());
+    }
+    assert_eq!(again.estimate().steps, learner.estimate().steps);
+}

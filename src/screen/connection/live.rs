@@ -6,11 +6,11 @@ use tokio::{
     time::{Interval, MissedTickBehavior, interval},
 };
 
-use super::{Duty, FeedReport, Order, Origin, Parcel, report};
+use super::{Duty, FeedReport, Keeper, Order, Origin, Parcel, report};
 use crate::{
     desk::Desk,
     feed::{Feed, Frame, Holder},
-    screen::state::Chronicle,
+    screen::state::{Chronicle, Event},
 };
 
 /// Frames taken in one go at most.
@@ -28,6 +28,8 @@ pub struct Live {
     pub holder: Holder,
     /// The alarms.
     pub duty: Duty,
+    /// Keeps what is learned.
+    pub keeper: Option<Keeper>,
     /// Where what came of it goes.
     pub parcels: watch::Sender<Option<Parcel>>,
     /// What the operator asks for.
@@ -39,6 +41,8 @@ pub struct Live {
 struct Sofar {
     chronicle: Chronicle,
     feed: FeedReport,
+    /// What was learned from a feed that has ended is kept.
+    kept: bool,
 }
 
 /// What woke it up.
@@ -50,8 +54,8 @@ enum Woken {
 }
 
 impl Live {
-    /// Watches until the screen is gone.
-    pub async fn run(mut self) {
+    /// Watches until the screen is gone; returns why what was learned could not be kept.
+    pub async fn run(mut self) -> Option<String> {
         let mut second = interval(LOOK_AGAIN);
         second.set_missed_tick_behavior(MissedTickBehavior::Skip);
         let mut sofar = Sofar::default();
@@ -64,10 +68,12 @@ impl Live {
                 Woken::Frames(Some(frames)) => self.take(&mut sofar, &frames),
                 Woken::Time => self.let_time_pass(&sofar),
             }
+            self.keep(&mut sofar);
             sofar.feed.inputs = report::inputs(self.feed.monitor());
             self.send(&sofar);
         }
         self.duty.end();
+        self.keeper?.save(&self.desk).map(Into::into)
     }
 
     /// Orders first: a flood of frames must not keep the operator waiting.
@@ -103,6 +109,23 @@ impl Live {
             Some(now) => self.duty.elapse(now),
             None => self.duty.write(Vec::new()),
         }
+    }
+
+    /// Keeps what was learned, and passes on what there is to say of it once there is a time to say it at.
+    fn keep(&mut self, sofar: &mut Sofar) {
+        let Some(keeper) = &mut self.keeper else { return };
+        if sofar.feed.ended && !sofar.kept {
+            sofar.kept = true;
+            keeper.save(&self.desk);
+        } else {
+            keeper.look(&self.desk);
+        }
+        if let Some(time) = sofar.chronicle.time() {
+            for text in keeper.take_news() {
+                sofar.chronicle.note(Event { time, corridor: None, state: None, text });
+            }
+        }
+        sofar.feed.kept = Some(keeper.report());
     }
 
     fn send(&self, sofar: &Sofar) {

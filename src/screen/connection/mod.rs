@@ -5,6 +5,7 @@
 
 mod alarms;
 mod duty;
+mod keeper;
 mod live;
 mod parcel;
 mod player;
@@ -14,6 +15,7 @@ mod report;
 
 pub use alarms::{AlarmKey, AlarmOrder, AlarmReport, Alarms, LOG_KEPT, Seen, Wish};
 pub use duty::Duty;
+pub use keeper::Keeper;
 pub use live::Live;
 pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Seeking};
 pub use player::{Goal, Place, Player};

@@ -32,12 +32,22 @@ pub enum Origin {
 pub struct FeedReport {
     /// Every input.
     pub inputs: Vec<InputReport>,
+    /// The file that keeps what is learned, where there is one.
+    pub kept: Option<InputReport>,
     /// Frames taken so far.
     pub frames: u64,
     /// When the last frame came, by this computer's clock.
     pub arrived: Option<Instant>,
     /// Nothing more will come.
     pub ended: bool,
+}
+
+impl FeedReport {
+    /// Every input and the file that keeps what is learned, each with what it is.
+    pub fn reports(&self) -> impl Iterator<Item = (&'static str, &InputReport)> {
+        let inputs = self.inputs.iter().map(|input| ("input", input));
+        inputs.chain(self.kept.iter().map(|kept| ("what is learned, in", kept)))
+    }
 }
 
 /// How one input does, in words.

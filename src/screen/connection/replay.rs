@@ -241,7 +241,7 @@ impl Replay {
             findings: Vec::new(),
         });
         let inputs = trouble.chain(report::inputs(self.player.monitor())).collect();
-        let feed = FeedReport { inputs, frames: here.taken as u64, arrived: None, ended: false };
+        let feed = FeedReport { inputs, frames: here.taken as u64, ..FeedReport::default() };
         let chronicle = here.chronicle.clone();
         let (answered, refusal) = self.answer.clone();
         let alarms = AlarmReport { alarms: here.alarms.clone(), answered, refusal, ..AlarmReport::default() };

@@ -2,7 +2,10 @@ use std::{collections::VecDeque, sync::Arc};
 
 use chrono::{DateTime, Utc};
 
-use super::{Event, History, Strip, severity, transitions};
+use super::{
+    Event, History, Strip, Teller,
+    event::{reason, severity, word},
+};
 use crate::desk::{Assessment, State};
 
 /// Events kept; older ones are forgotten.
@@ -28,31 +31,34 @@ pub struct Track {
     pub history: History,
     /// Its states so far.
     pub strip: Strip,
+    teller: Teller,
 }
 
 impl Chronicle {
     /// Takes in all corridors at one frame.
     pub fn take(&mut self, assessments: Vec<Assessment>) {
         for (index, assessment) in assessments.into_iter().enumerate() {
-            let assessment = Arc::new(assessment);
-            let before = self.tracks.get(index).map(|track| track.latest.clone());
-            for event in transitions(before.as_deref(), &assessment) {
-                self.note(event);
-            }
-            match self.tracks.get_mut(index) {
-                Some(track) => Arc::make_mut(track).take(assessment),
-                None => self.tracks.push(Arc::new(Track::new(assessment))),
+            if index == self.tracks.len() {
+                if assessment.state != State::Ample {
+                    self.note(first(&assessment));
+                }
+                self.tracks.push(Arc::new(Track::new(assessment)));
+            } else {
+                for event in Arc::make_mut(&mut self.tracks[index]).take(Arc::new(assessment)) {
+                    self.note(event);
+                }
             }
         }
     }
 
-    /// Adds to the events.
+    /// Adds to the events, by their time.
     pub fn note(&mut self, event: Event) {
         let events = Arc::make_mut(&mut self.events);
         if events.len() == EVENTS_KEPT {
             events.pop_front();
         }
-        events.push_back(event);
+        let later = events.iter().rev().take_while(|other| other.time > event.time).count();
+        events.insert(events.len() - later, event);
     }
 
     /// Time of the last frame.
@@ -67,24 +73,38 @@ impl Chronicle {
 }
 
 impl Track {
-    fn new(assessment: Arc<Assessment>) -> Self {
+    fn new(assessment: Assessment) -> Self {
+        let assessment = Arc::new(assessment);
         let mut track = Self {
             since: assessment.time,
             history: History::default(),
             strip: Strip::default(),
+            teller: Teller::new(&assessment),
             latest: assessment.clone(),
         };
         track.take(assessment);
         track
     }
 
-    fn take(&mut self, assessment: Arc<Assessment>) {
+    /// Takes the next frame; returns what it is worth telling.
+    fn take(&mut self, assessment: Arc<Assessment>) -> Vec<Event> {
+        let events = self.teller.take(&assessment);
         if self.latest.state != assessment.state {
             self.since = assessment.time;
         }
         self.history.take(assessment.time, assessment.headroom_mw);
         self.strip.take(assessment.time, assessment.state);
         self.latest = assessment;
+        events
+    }
+}
+
+fn first(assessment: &Assessment) -> Event {
+    Event {
+        time: assessment.time,
+        corridor: Some(assessment.corridor.clone()),
+        state: Some(assessment.state),
+        text: format!("{} at the first frame{}", word(assessment.state), reason(assessment)),
     }
 }
 
@@ -96,12 +116,12 @@ mod tests {
     #[test]
     fn states_are_kept_with_their_beginning_and_told_once() {
         let mut chronicle = Chronicle::default();
-        for (second, headroom_mw) in [(0, 212.0), (2, 80.0), (4, 70.0), (6, -3.0)] {
+        for (second, headroom_mw) in [(0, 212.0), (20, 80.0), (40, 70.0), (60, -3.0), (66, -4.0)] {
             chronicle.take(vec![sample::at(second, headroom_mw)]);
         }
         let track = &chronicle.tracks[0];
         assert_eq!(track.latest.state, State::Spent);
-        assert_eq!(track.since, sample::time(6));
+        assert_eq!(track.since, sample::time(60));
         let told: Vec<_> = chronicle.events.iter().map(|event| event.text.as_str()).collect();
         assert_eq!(told.len(), 2, "{told:?}");
         assert!(told[0].starts_with("ample → thin"), "{told:?}");
@@ -111,10 +131,11 @@ mod tests {
     #[test]
     fn events_are_bounded() {
         let mut chronicle = Chronicle::default();
-        for second in 0..2 * i64::try_from(EVENTS_KEPT).unwrap() {
-            chronicle.take(vec![sample::at(second, if second % 2 == 0 { 212.0 } else { -3.0 })]);
-        }
+        let event = |second| Event { time: sample::time(second), corridor: None, state: None, text: "new".into() };
+        (0..2 * i64::try_from(EVENTS_KEPT).unwrap()).for_each(|second| chronicle.note(event(second)));
+        chronicle.note(event(1990));
         assert_eq!(chronicle.events.len(), EVENTS_KEPT);
+        assert!(chronicle.events.iter().is_sorted_by_key(|event| event.time));
         assert_eq!(chronicle.events.back().unwrap().time, sample::time(1999));
     }
 }

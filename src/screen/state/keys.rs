@@ -28,6 +28,7 @@ pub const KEYS: [(&str, &[(&str, &str)]); 4] = [
             ("m", "messages"),
             ("?", "this help"),
             ("q  Ctrl-C", "quit"),
+            ("Ctrl-Z", "suspend; `fg` brings it back"),
         ],
     ),
     (
@@ -198,7 +199,8 @@ impl App {
         }
     }
 
-    fn walks_outages(&self) -> bool {
+    /// Whether the arrows go through the outages, rather than through lines.
+    pub fn walks_outages(&self) -> bool {
         let page = self.panel.page(self.size);
         page.contains(&Panel::Outages) || page.contains(&Panel::Curves)
     }

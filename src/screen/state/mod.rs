@@ -3,11 +3,13 @@
 mod alarms;
 mod chronicle;
 mod event;
+mod flutter;
 mod history;
 mod instant;
 mod keys;
 mod panel;
 mod pointer;
+mod teller;
 
 use std::{sync::Arc, time::Instant};
 
@@ -17,12 +19,13 @@ use ratatui::layout::Size;
 
 pub use alarms::{AlarmPage, Prompt};
 pub use chronicle::{Chronicle, EVENTS_KEPT, Track};
-pub use event::{Event, criterion, severity, transitions, word};
+pub use event::{Event, criterion, severity, word};
 pub use history::{History, Strip};
 pub use instant::parse_time;
 pub use keys::KEYS;
 pub use panel::Panel;
 pub use pointer::{Drawn, Target};
+pub use teller::Teller;
 
 use super::connection::{Origin, Parcel, Playback};
 use crate::{

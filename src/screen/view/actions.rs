@@ -5,6 +5,7 @@ use ratatui::text::{Line, Span};
 use super::{
     corridor::{Subject, heading, paragraph},
     figures::{self, deg, headroom, number},
+    row::refusal,
     text,
 };
 use crate::desk::Reclose;
@@ -20,10 +21,19 @@ pub fn lines(subject: &Subject, width: usize) -> Vec<Line<'static>> {
         }
         Some(now) => {
             lines.push(heading("headroom after a single action, MW", theme));
-            lines.push(row("as it stands", &headroom(Some(now)), "", width));
+            let spread =
+                assessment.headroom_sd_mw.map_or(String::new(), |sd| format!("±{}", figures::mw(Some(sd.ceil()))));
+            lines.push(row("as it stands", &headroom(Some(now)), &spread, width));
             for action in &assessment.actions {
-                let gain = action.headroom_mw.map_or(String::new(), |then| format!("({})", headroom(Some(then - now))));
+                let gain = action.headroom_mw.map_or(String::new(), |then| match headroom(Some(then - now)) {
+                    gain if then > now => format!("{gain} more"),
+                    gain => gain,
+                });
                 lines.push(row(&action.action, &headroom(action.headroom_mw), &gain, width));
+                if let Some(why) = refusal(assessment, subject.app.corridor(), &action.action) {
+                    let words = text::cut(&format!("not now: {why}"), width.saturating_sub(5));
+                    lines.push(Line::from(vec![Span::styled(" ! ", theme.caution()), Span::raw(format!("  {words}"))]));
+                }
             }
             if assessment.actions.is_empty() {
                 lines.extend(paragraph("every circuit is closed and every bank inserted", width));
@@ -56,8 +66,8 @@ pub fn lines(subject: &Subject, width: usize) -> Vec<Line<'static>> {
 }
 
 fn row(what: &str, value: &str, gain: &str, width: usize) -> Line<'static> {
-    let name = width.saturating_sub(18).min(40);
-    Line::raw(format!("   {} {} {}", text::left(what, name), text::right(value, 6), text::left(gain, 8)))
+    let name = width.saturating_sub(24).min(40);
+    Line::raw(format!("   {} {} {}", text::left(what, name), text::right(value, 6), text::left(gain, 12)))
 }
 
 fn reclose_words(reclose: &Reclose, max_angle_deg: f64, max_voltage_pct: f64) -> String {

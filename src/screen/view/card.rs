@@ -44,7 +44,9 @@ pub fn draw(frame: &mut Frame, area: Rect, track: &Track, chosen: bool, app: &Ap
     };
     let strip = trend::strip(&track.history, width.saturating_sub(58));
     let strip_name = if strip.trim().is_empty() { "" } else { "  headroom, minute by minute" };
-    let best = match best_action(assessment) {
+    let corridor = app.grid.corridors.iter().find(|corridor| corridor.name == assessment.corridor);
+    let best = match best_action(assessment, corridor, width.saturating_sub(6)) {
+        best if best.is_empty() && assessment.headroom_mw.is_none() => String::new(),
         best if best.is_empty() => "no single action is needed or at hand".into(),
         best => format!("best: {best}"),
     };

@@ -86,14 +86,15 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
 fn verdict_line(subject: &Subject, width: usize) -> Line<'static> {
     let assessment = &subject.track.latest;
     let theme = subject.theme;
-    let best = best_action(assessment);
-    let spans = vec![
+    let mut spans = vec![
         Span::styled(" headroom ", theme.quiet()),
         Span::styled(format!("{} MW", headroom(assessment)), theme.strong()),
         Span::raw(format!(" ({})", set_by(assessment, 26))),
         Span::raw(format!("  {}", trend::words(subject.track))),
-        Span::raw(if best.is_empty() { String::new() } else { format!("  {best}") }),
     ];
+    let used: usize = spans.iter().map(Span::width).sum();
+    let best = best_action(assessment, subject.app.corridor(), width.saturating_sub(used + 2));
+    spans.push(Span::raw(format!("  {best}")));
     text::spread(spans, Vec::new(), width)
 }
 

@@ -37,9 +37,9 @@ pub fn lines(subject: &Subject, width: usize) -> Vec<Line<'static>> {
     let time = figures::clock(assessment.time, subject.app.zone);
     lines.push(heading(&format!("feed: last frame {time}, {age} old"), theme));
     if let Some(parcel) = &subject.app.parcel {
-        for input in &parcel.feed.inputs {
-            lines.extend(paragraph(&format!("{}: {}", input.name, input.standing), width));
-            for finding in &input.findings {
+        for (what, report) in parcel.feed.reports() {
+            lines.extend(paragraph(&format!("{what} {}: {}", report.name, report.standing), width));
+            for finding in &report.findings {
                 lines.extend(paragraph(&format!("! {finding}"), width));
             }
         }

@@ -45,7 +45,7 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
         Page::Corridor => &[
             ("?", "help"),
             ("Esc", "all corridors"),
-            ("↑↓", "outage"),
+            ("↑↓", if app.walks_outages() { "outage" } else { "scroll" }),
             ("Tab", "next part"),
             ("a", "alarms"),
             ("[ ]", "corridor"),

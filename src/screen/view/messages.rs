@@ -3,7 +3,7 @@ use ratatui::{
     text::{Line, Span},
 };
 
-use super::{Theme, text};
+use super::{Theme, figures, text};
 use crate::screen::state::{App, EVENTS_KEPT};
 
 /// What happened, newest first.
@@ -11,10 +11,14 @@ pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
     let width = usize::from(area.width);
     let mut lines = Vec::new();
     if let Some(parcel) = &app.parcel {
-        for input in &parcel.feed.inputs {
-            lines.push(Line::raw(text::cut(&format!(" input {}: {}", input.name, input.standing), width)));
-            for finding in &input.findings {
-                lines.push(Line::raw(text::cut(&format!("   ! {finding}"), width)));
+        for (what, report) in parcel.feed.reports() {
+            lines.push(Line::raw(text::cut(&format!(" {what} {}: {}", report.name, report.standing), width)));
+            for finding in &report.findings {
+                lines.extend(
+                    text::wrap(&format!("! {finding}"), width.saturating_sub(4), 2)
+                        .into_iter()
+                        .map(|line| Line::raw(format!("   {line}"))),
+                );
             }
         }
     }
@@ -36,7 +40,7 @@ pub fn events(app: &App, theme: Theme, width: usize) -> impl Iterator<Item = Lin
     events.map(move |event| {
         let time = event.time.with_timezone(&app.zone).format(" %-d %b %H:%M:%S").to_string();
         let mark = event.state.map_or(Span::raw(" "), |state| Span::styled(theme.mark(state), theme.badge(state)));
-        let corridor = text::left(event.corridor.as_deref().unwrap_or("feed"), name_width);
+        let corridor = text::left(event.corridor.as_deref().unwrap_or(figures::NONE), name_width);
         Line::from(vec![
             Span::styled(text::left(&time, 17), theme.quiet()),
             mark,

@@ -62,7 +62,8 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
         let chosen = index == app.selected;
         match app.track(index) {
             Some(track) if cards => card::draw(frame, at, track, chosen, app, theme),
-            Some(track) => frame.render_widget(Paragraph::new(columns.lines(track, chosen, theme)), at),
+            Some(track) => frame
+                .render_widget(Paragraph::new(columns.lines(track, app.grid.corridors.get(index), chosen, theme)), at),
             None => {
                 let name = &app.grid.corridors[index].name;
                 frame.render_widget(columns.waiting(name, chosen, theme), at);
@@ -97,9 +98,9 @@ fn waiting(frame: &mut Frame, area: Rect, app: &App) -> Drawn {
         format!("Corridors in the configuration: {}.", app.grid.corridors.len()),
     ];
     let feed = app.parcel.as_ref().map(|parcel| &parcel.feed);
-    for input in feed.iter().flat_map(|feed| &feed.inputs) {
-        lines.push(format!("  {}: {}", text::clean(&input.name), input.standing));
-        lines.extend(input.findings.iter().map(|finding| format!("    {}", text::clean(finding))));
+    for (what, report) in feed.iter().flat_map(|feed| feed.reports()) {
+        lines.push(format!("  {what} {}: {}", text::clean(&report.name), report.standing));
+        lines.extend(report.findings.iter().map(|finding| format!("    {}", text::clean(finding))));
     }
     lines.push(String::new());
     lines.extend(text::wrap(

@@ -1,6 +1,7 @@
 //! A corridor in one, two or four lines of the overview.
 
 use ratatui::text::{Line, Span};
+use unicode_width::UnicodeWidthStr;
 
 use super::{
     Theme, figures,
@@ -9,7 +10,8 @@ use super::{
     trend,
 };
 use crate::{
-    desk::{Assessment, State},
+    desk::{Action, Assessment, State},
+    grid::Corridor,
     screen::state::{Track, criterion, worst_outage},
 };
 
@@ -49,7 +51,7 @@ impl Form {
 const WORD: usize = 6;
 const HEADROOM: usize = 12;
 const TRANSFER: usize = 6;
-const TRUST: usize = 10;
+const TRUST: usize = 14;
 /// Cursor, mark and a space.
 const INDENT: usize = 3;
 
@@ -83,13 +85,14 @@ impl Columns {
         let mut lower = ruler::scale(self.ruler, theme);
         if self.form != Form::Tall {
             let gap = self.ruler.saturating_sub(lower.width()) + 1;
-            lower.push_span(" ".repeat(gap) + &left("best single action", self.action) + " " + &right("data", TRUST));
+            lower
+                .push_span(" ".repeat(gap) + &left("headroom after action", self.action) + " " + &right("data", TRUST));
         }
         self.joined(Line::raw(upper), lower).into_iter().map(|line| line.style(theme.quiet())).collect()
     }
 
     /// A corridor that has been assessed.
-    pub fn lines(self, track: &Track, chosen: bool, theme: Theme) -> Vec<Line<'static>> {
+    pub fn lines(self, track: &Track, corridor: Option<&Corridor>, chosen: bool, theme: Theme) -> Vec<Line<'static>> {
         let assessment = &track.latest;
         let state = assessment.state;
         let name_style = if chosen { theme.strong() } else { theme.badge(State::Ample) };
@@ -115,17 +118,19 @@ impl Columns {
         };
         let (trust, trusted) = trust(assessment);
         let trust = Span::styled(trust, if trusted { theme.quiet() } else { theme.caution() });
-        let best = best_action(assessment);
         if self.form == Form::Tall {
-            let best = if best.is_empty() { best } else { format!("best: {best}") };
             let exporter = assessment
                 .exporter
                 .as_deref()
                 .map_or(String::new(), |bus| format!("{} exports   ", text::cut(bus, 20)));
             let right = vec![Span::styled(exporter, theme.quiet()), trust];
+            let used: usize = right.iter().map(Span::width).sum();
+            let best = best_action(assessment, corridor, self.ruler.saturating_sub(used + 8));
+            let best = if best.is_empty() { best } else { format!("best: {best}") };
             let last = text::spread(vec![" ".repeat(INDENT).into(), best.into()], right, self.ruler + INDENT);
             return self.joined(upper, lower).into_iter().chain([last, Line::default()]).collect();
         }
+        let best = best_action(assessment, corridor, self.action);
         lower.push_span(format!(" {} ", left(&best, self.action)));
         lower.push_span(Span::raw(" ".repeat(TRUST.saturating_sub(trust.width()))));
         lower.push_span(trust);
@@ -179,19 +184,53 @@ pub fn set_by(assessment: &Assessment, width: usize) -> String {
     }
 }
 
-/// The action that brings the most, or what must come off.
-pub fn best_action(assessment: &Assessment) -> String {
-    let best = assessment
-        .actions
-        .iter()
-        .filter(|action| action.headroom_mw.is_some())
-        .max_by(|one, other| one.headroom_mw.unwrap_or(f64::MIN).total_cmp(&other.headroom_mw.unwrap_or(f64::MIN)));
-    match (best, assessment.headroom_mw) {
-        (Some(best), Some(now)) if best.headroom_mw.is_some_and(|then| then > now.max(0.0)) => {
-            format!("{} → {} MW", text::clean(&best.action), figures::headroom(best.headroom_mw))
+/// The action at hand that brings the most, else one that must wait, else what must come off; as it fits.
+pub fn best_action(assessment: &Assessment, corridor: Option<&Corridor>, width: usize) -> String {
+    let Some(now) = assessment.headroom_mw else { return String::new() };
+    let refusal = |action: &Action| refusal(assessment, corridor, &action.action);
+    let helpful = |action: &&Action| action.headroom_mw.is_some_and(|then| then > now.max(0.0));
+    let by_headroom = |one: &&Action, other: &&Action| {
+        let then = |action: &Action| action.headroom_mw.unwrap_or(f64::MIN);
+        refusal(other).is_some().cmp(&refusal(one).is_some()).then(then(one).total_cmp(&then(other)))
+    };
+    let wordings = match assessment.actions.iter().filter(helpful).max_by(by_headroom) {
+        Some(best) => {
+            let (action, then) = (text::clean(&best.action), figures::headroom(best.headroom_mw));
+            match refusal(best) {
+                None => vec![format!("{action}: headroom {then} MW"), format!("{action}: {then} MW")],
+                Some(why) => vec![
+                    format!("{action}: headroom {then} MW, but not now: {why}"),
+                    format!("{action}: {then} MW, not now: {why}"),
+                    format!("{action} not now: {why}"),
+                    format!("not now: {action}"),
+                ],
+            }
         }
-        (_, Some(now)) if now < 0.0 => format!("take off {} MW", figures::mw(Some(-now.floor()))),
-        _ => String::new(),
+        None if now < 0.0 => vec![format!("take off {} MW", figures::mw(Some(-now.floor())))],
+        None => Vec::new(),
+    };
+    let fitting = wordings.iter().find(|words| words.width() <= width).or(wordings.last());
+    text::cut(fitting.map_or("", String::as_str), width)
+}
+
+/// Why an action must wait, where it closes a circuit that the synchronism check refuses.
+pub fn refusal(assessment: &Assessment, corridor: Option<&Corridor>, action: &str) -> Option<String> {
+    let circuit = action.strip_prefix("close ")?;
+    let reclose = assessment.reclose.iter().find(|reclose| &*reclose.circuit == circuit)?;
+    let check = corridor.map(|corridor| corridor.reclose).unwrap_or_default();
+    match reclose.allowed {
+        Some(true) => None,
+        None => Some("angle unknown".into()),
+        Some(false) if reclose.angle_deg.is_some_and(|angle| angle <= check.max_angle_deg) => Some(format!(
+            "voltage differs {} %, check {} %",
+            figures::number(reclose.voltage_pct, 1),
+            figures::number(Some(check.max_voltage_pct), 0)
+        )),
+        Some(false) => Some(format!(
+            "angle {}°, check {}",
+            figures::number(reclose.angle_deg, 1),
+            figures::deg(Some(check.max_angle_deg))
+        )),
     }
 }
 
@@ -205,6 +244,8 @@ pub fn trust(assessment: &Assessment) -> (String, bool) {
         (count(fit.suspects.len(), "suspect", "suspects"), false)
     } else if fit.chi2.zip(fit.limit).is_some_and(|(chi2, limit)| chi2 > limit) {
         ("misfit".into(), false)
+    } else if !fit.assumed.is_empty() {
+        (count(fit.assumed.len(), "load assumed", "loads assumed"), true)
     } else {
         ("data ok".into(), true)
     }

@@ -36,20 +36,25 @@ pub fn words(track: &Track) -> String {
 
 /// The last minutes as a strip of bars from zero up, newest at the right; `✕` at or below zero, blank where unknown.
 pub fn strip(history: &History, width: usize) -> String {
+    bars(history.minutes().skip(history.minutes().len().saturating_sub(width)))
+}
+
+/// A bar for each value, from zero up to the highest; `✕` at or below zero, blank where unknown.
+pub fn bars(values: impl Iterator<Item = Option<f64>>) -> String {
     const BARS: [char; 8] = ['▁', '▂', '▃', '▄', '▅', '▆', '▇', '█'];
-    let minutes: Vec<_> = history.minutes().skip(history.minutes().len().saturating_sub(width)).collect();
-    let highest = minutes.iter().copied().flatten().fold(1.0, f64::max);
-    let bar = |headroom: f64| {
+    let values: Vec<_> = values.collect();
+    let highest = values.iter().copied().flatten().fold(f64::MIN_POSITIVE, f64::max);
+    let bar = |value: f64| {
         #[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "0 to 7")]
-        let level = (headroom / highest * 7.0).round().clamp(0.0, 7.0) as usize;
+        let level = (value / highest * 7.0).round().clamp(0.0, 7.0) as usize;
         BARS[level]
     };
-    minutes
+    values
         .into_iter()
-        .map(|minute| match minute {
+        .map(|value| match value {
             None => ' ',
-            Some(headroom) if headroom <= 0.0 => '✕',
-            Some(headroom) => bar(headroom),
+            Some(value) if value <= 0.0 => '✕',
+            Some(value) => bar(value),
         })
         .collect()
 }

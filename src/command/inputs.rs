@@ -25,9 +25,7 @@ pub(super) fn chosen(named: &[Input], config: &Config) -> Result<Vec<Input>, Fai
 
 /// How long a value stands.
 pub(super) fn max_age(config: &Config) -> TimeDelta {
-    #[allow(clippy::cast_possible_truncation, reason = "saturates")]
-    let milliseconds = (config.feed.max_age_s * 1000.0) as i64;
-    TimeDelta::try_milliseconds(milliseconds).unwrap_or(TimeDelta::MAX)
+    config.feed.max_age()
 }
 
 /// Keeps values as long as the configuration says.

@@ -15,7 +15,7 @@ use crate::{
     config::Config,
     desk::Desk,
     feed::{Channels, Feed, Input, Patience},
-    screen::connection::{Duty, Keeper, Live},
+    screen::connection::{Duty, Keeper, Live, Revision},
 };
 
 /// Options of `watch`.
@@ -59,7 +59,10 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let duty = Duty::begin(&config, config.journal.path(&options.config), env::var("USER").ok())?;
     let (sender, parcels) = watch::channel(None);
     let (orders, taken) = mpsc::channel(stage::ORDERS_WAITING);
-    let live = Live { feed, desk, holder, duty, keeper, parcels: sender, orders: taken };
+    let sources = options.sources;
+    let adjust = move |config: &mut Config| Sources::choose(sources, config);
+    let revision = Revision::new(&options.config, config.clone(), adjust);
+    let live = Live { feed, desk, holder, channels, revision, duty, keeper, parcels: sender, orders: taken };
     let handle = runtime.handle().clone();
     let connection = thread::spawn(move || handle.block_on(live.run()));
     let ending = stage::show(&runtime, &config, parcels, move |order| orders.try_send(order).is_ok());

@@ -20,6 +20,7 @@ pub(crate) mod wording;
 
 use std::{collections::BTreeMap, path::Path};
 
+use chrono::TimeDelta;
 use chrono_tz::{TZ_VARIANTS, Tz};
 
 pub use error::{ConfigError, ConfigErrors};
@@ -94,6 +95,15 @@ pub struct FeedSettings {
 impl Default for FeedSettings {
     fn default() -> Self {
         Self { inputs: Vec::new(), max_age_s: 10.0, hold_s: 0.2 }
+    }
+}
+
+impl FeedSettings {
+    /// How long a value stands.
+    pub fn max_age(&self) -> TimeDelta {
+        #[allow(clippy::cast_possible_truncation, reason = "saturates")]
+        let milliseconds = (self.max_age_s * 1000.0) as i64;
+        TimeDelta::try_milliseconds(milliseconds).unwrap_or(TimeDelta::MAX)
     }
 }
 

@@ -14,6 +14,7 @@ use super::{
     merge::{Lane, Merger},
     opening::Opening,
     stream::Outlet,
+    switch::Switch,
 };
 
 /// How a feed treats its inputs.
@@ -49,6 +50,7 @@ pub struct Feed {
     /// Lanes of clients that connect; `None` once there cannot be any more.
     new_lanes: Option<mpsc::Receiver<Lane<Inlet>>>,
     merger: Merger,
+    switch: Switch,
     hold: Duration,
     monitor: Monitor,
     /// Stops the inputs when it is dropped.
@@ -75,7 +77,8 @@ impl Feed {
     /// Opens all inputs and starts to read them; to be called inside a tokio runtime.
     pub async fn open(inputs: &[Input], channels: &Arc<Channels>, patience: Patience) -> Result<Self, OpenError> {
         let (lane_sender, new_lanes) = mpsc::channel(1);
-        let mut opening = Opening::new(channels, patience.once, lane_sender);
+        let switch = Switch::new(channels);
+        let mut opening = Opening::new(channels, &switch, patience.once, lane_sender);
         let any_live = inputs.iter().any(Input::is_live);
         for input in inputs {
             let is_live = input.is_live() || (*input == Input::Stdin && any_live);
@@ -85,10 +88,18 @@ impl Feed {
             lanes: opening.lanes,
             new_lanes: Some(new_lanes),
             merger: Merger::new(channels),
+            switch,
             hold: patience.hold,
             monitor: Monitor(opening.gauges.into()),
             _tasks: opening.tasks,
         })
+    }
+
+    /// Reads what follows with other channels, which came from these by [`Channels::extended`]. No frame is lost or
+    /// doubled: what was read before is as it was.
+    pub fn rewire(&mut self, channels: &Arc<Channels>) {
+        self.merger.rewire(channels);
+        self.switch.set(channels);
     }
 
     /// How the inputs are doing.

@@ -62,10 +62,11 @@ fn or_none(value: Option<impl Display>) -> String {
 }
 
 fn of_corridor(corridor: &Corridor, say: &mut impl FnMut(String, &'static str, String)) {
-    let Corridor { name, buses, sides, outages, fault, require, reclose, thin_mw, .. } = corridor;
+    let Corridor { name, buses, sides, outages, fault, require, reclose, thin_mw, state_spreads, .. } = corridor;
     let mut here = |what, value| say(format!("{name}"), what, value);
     here("terminals", format!("{} and {}", buses[FROM].name, buses[TO].name));
     here("thin threshold, MW", thin_mw.to_string());
+    here("state judged below the headroom by, spreads", state_spreads.to_string());
     here("required angle margin, °", require.angle_margin_deg.to_string());
     here("required area margin", require.area_margin.to_string());
     here("required intact angle margin, °", require.intact_angle_margin_deg.to_string());
@@ -98,7 +99,9 @@ fn of_corridor(corridor: &Corridor, say: &mut impl FnMut(String, &'static str, S
 }
 
 fn kind_of(fault: &Fault) -> String {
-    let impedances = |z_ohm: &[Complex<f64>]| z_ohm.iter().map(|z| format!("{} + j{} ohm", z.re, z.im)).collect::<Vec<_>>().join(", ");
+    let impedances = |z_ohm: &[Complex<f64>]| {
+        z_ohm.iter().map(|z| format!("{} + j{} ohm", z.re, z.im)).collect::<Vec<_>>().join(", ")
+    };
     match fault.kind {
         FaultKind::ThreePhase => "three-phase".into(),
         FaultKind::PhaseEarth { z2, z0 } => format!("phase-earth, {}", impedances(&[z2, z0])),
@@ -112,10 +115,13 @@ fn of_circuit(corridor: &Corridor, circuit: &Circuit, say: &mut impl FnMut(Strin
     let mut here = |what, value| say(thing.clone(), what, value);
     let [one, other] = circuit.between.map(|bus| &corridor.buses[bus].name);
     here("between", format!("{one} and {other}"));
-    here("length, km", match circuit.line {
-        Line::PerKm { length_km, .. } => length_km.to_string(),
-        Line::Totals { .. } => "none".into(),
-    });
+    here(
+        "length, km",
+        match circuit.line {
+            Line::PerKm { length_km, .. } => length_km.to_string(),
+            Line::Totals { .. } => "none".into(),
+        },
+    );
     let totals = circuit.line.totals();
     here("R, ohm", totals.r_ohm.to_string());
     here("X, ohm", totals.x_ohm.to_string());
@@ -146,7 +152,8 @@ fn of_alarm(corridor: &str, alarm: &Definition, say: &mut impl FnMut(String, &'s
 }
 
 fn of_settings(config: &Config, say: &mut impl FnMut(String, &'static str, String)) {
-    let Config { grid, time_zone, measurement, feed, channel_names, learning, journal, screen, state_file, .. } = config;
+    let Config { grid, time_zone, measurement, feed, channel_names, learning, journal, screen, state_file, .. } =
+        config;
     say("grid".into(), "frequency, Hz", grid.frequency_hz.to_string());
     say("grid".into(), "time zone", time_zone.name().into());
     say("measurement".into(), "kV σ, %", measurement.kv_sigma_pct.to_string());
@@ -171,4 +178,34 @@ fn of_settings(config: &Config, say: &mut impl FnMut(String, &'static str, Strin
     let bell: Vec<_> = screen.bell.iter().map(|priority| priority.word()).collect();
     say("screen".into(), "bell", bell.join(", "));
     say("screen".into(), "changes are applied at once", screen.apply_changes.to_string());
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const VALID: &str = include_str!("../../tests/config/valid.toml");
+
+    fn told(change: impl Fn(&str) -> String) -> Vec<String> {
+        let [before, after] = [VALID.to_owned(), change(VALID)].map(|text| Config::parse(&text, "test.toml").unwrap());
+        lines(&before, &after)
+    }
+
+    #[test]
+    fn the_same_in_other_words_is_no_change() {
+        assert_eq!(told(|text| format!("# another remark\n{text}")), Vec::<String>::new());
+    }
+
+    #[test]
+    fn each_difference_is_told_by_its_meaning() {
+        let alarm = "[[alarm]]\nname = \"busy\"\non = \"headroom_mw\"\nsetpoint = 300\n";
+        let other = alarm.replace("300", "350");
+        let new = told(|text| format!("{text}\n{alarm}"));
+        assert!(new.iter().all(|line| line.ends_with(", alarm busy: new")) && !new.is_empty(), "{new:?}");
+        let [one, another] = [alarm, &other].map(|alarm| Config::parse(&format!("{VALID}\n{alarm}"), "t").unwrap());
+        let changed = lines(&one, &another);
+        assert!(changed.iter().any(|line| line == "Skarn-Velm, alarm busy: setpoint 300 MW → 350 MW"), "{changed:?}");
+        let gone = lines(&one, &Config::parse(VALID, "t").unwrap());
+        assert!(gone.iter().all(|line| line.ends_with(", alarm busy: gone")) && gone.len() == new.len(), "{gone:?}");
+    }
 }

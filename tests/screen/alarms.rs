@@ -8,7 +8,7 @@ use tautline::{
     alarm::{Action, State},
     journal::Status,
     screen::{
-        connection::{AlarmKey, Order, Origin, Wish},
+        connection::{AlarmKey, Change, Order, Origin, Wish},
         state::{App, Page},
     },
 };
@@ -226,6 +226,22 @@ fn drawings() {
     snapshot("alarms-none", opened(live(vec![sample::ample()]), "a"));
     let many = (0..500).map(|place| sample::carrying(&format!("Corridor {place:03}"), 2290.0));
     snapshot("alarms-many", opened(live(many.collect()), "a <page-down> j"));
+}
+
+#[test]
+fn a_change_is_shown_and_applied_as_shown() {
+    for (is_sound, lines, ordered) in [
+        (true, vec!["Skarn-Velm: thin threshold, MW 100 → 150".to_owned()], vec![Order::Apply(7)]),
+        (false, vec!["1 error in grid.toml".to_owned(), "grid.toml:4: thin_mw: must be a number".to_owned()], vec![]),
+    ] {
+        let mut app = live(corridors());
+        let mut parcel = app.parcel.clone().unwrap();
+        parcel.scene.change = Some(Arc::new(Change { number: 7, is_sound, lines }));
+        app.receive(parcel);
+        let mut app = opened(app, "c");
+        assert_eq!(press(&mut app, "<enter>"), ordered);
+        snapshot(if is_sound { "change" } else { "change-refused" }, opened(app, if is_sound { "c" } else { "j" }));
+    }
 }
 
 #[test]

@@ -2,7 +2,7 @@
 
 use ratatui::style::{Color, Modifier};
 use tautline::screen::{
-    connection::{AlarmReport, FeedReport, Order, Origin, Parcel},
+    connection::{AlarmReport, FeedReport, Order, Origin, Parcel, Scene},
     state::{App, Chronicle},
 };
 
@@ -134,6 +134,7 @@ fn nothing_to_show_is_explained() {
     ended.receive(Parcel {
         chronicle: Chronicle::default(),
         alarms: AlarmReport::default(),
+        scene: Scene::default(),
         feed,
         origin: Origin::Live,
     });

@@ -10,7 +10,7 @@ use tautline::{
     alarm::{Board, CorridorBoard, Definition, Kind, built_in},
     desk::Assessment,
     screen::{
-        connection::{AlarmReport, Alarms, FeedReport, InputReport, Order, Origin, Parcel, Playback},
+        connection::{AlarmReport, Alarms, FeedReport, InputReport, Order, Origin, Parcel, Playback, Scene},
         state::{App, Chronicle, Strip},
         view::{self, Theme},
     },
@@ -25,7 +25,7 @@ pub fn live(assessments: Vec<Assessment>) -> App {
     let mut app = App::new(sample::grid(&names), Tz::UTC, TimeDelta::seconds(10));
     let (chronicle, alarms) = played(&app, &assessments);
     let alarms = AlarmReport { alarms, ..AlarmReport::default() };
-    app.receive(Parcel { chronicle, alarms, feed: feed(), origin: Origin::Live });
+    app.receive(Parcel { chronicle, alarms, scene: Scene::default(), feed: feed(), origin: Origin::Live });
     app.clock = Instant::now();
     app
 }

@@ -85,3 +85,38 @@ fn an_acknowledgement_outlives_a_kill() {
         assert_eq!(told.lines().filter(|line| line.contains(words)).count(), times, "{words} in\n{told}");
     }
 }
+
+#[test]
+fn a_changed_configuration_is_applied_and_a_broken_one_refused() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("day.toml");
+    fs::write(&path, CONFIG).unwrap();
+    let (mut stage, mut feed) = watch(folder.path());
+    feed.write_all(frame(0).as_bytes()).unwrap();
+    stage.wait_for("URGENT");
+    stage.press("a");
+    stage.press("y");
+    stage.wait_for_redrawn("no unacknowledged alarms");
+
+    fs::write(&path, CONFIG.replace("on_delay_s = 0", "on_delay_s = zero")).unwrap();
+    stage.wait_for_redrawn("is refused, what was in force stays");
+    stage.press("c");
+    stage.wait_for_redrawn("on_delay_s");
+
+    fs::write(&path, CONFIG.replace("setpoint = 100000", "setpoint = 90000").replace("thin_mw = 100", "thin_mw = 90"))
+        .unwrap();
+    stage.wait_for_redrawn("100000 MW → 90000 MW");
+    stage.press("\r");
+    feed.write_all(frame(1).as_bytes()).unwrap();
+    stage.press("a");
+    stage.wait_for_redrawn("≤ 90000");
+    stage.wait_for_redrawn("no unacknowledged alarms");
+    stage.press("q");
+    assert!(stage.wait_for_end().success());
+    let told = journal(folder.path());
+    let changes: Vec<_> = told.lines().filter(|line| line.contains("configuration")).collect();
+    assert_eq!(changes.len(), 1, "{told}");
+    for words in ["setpoint 100000 MW → 90000 MW", "thin threshold, MW 100 → 90", "by nilsen"] {
+        assert!(changes[0].contains(words), "{words} in {told}");
+    }
+}

@@ -7,6 +7,7 @@ use chrono::{DateTime, TimeDelta, Utc};
 
 use crate::{
     alarm::{Action, Alarm, AlarmId, Board, Priority, Refusal, Transition},
+    config::Config,
     desk::Assessment,
     journal::{Entry, Status},
 };
@@ -173,6 +174,12 @@ impl Alarms {
         let entries: Vec<_> = done.iter().map(|transition| signed(Entry::transition(transition))).collect();
         self.keep(&entries);
         Ok(entries)
+    }
+
+    /// Goes on under another configuration.
+    pub fn reconfigure(&mut self, config: &Config, time: DateTime<Utc>) -> Vec<Entry> {
+        let transitions = Arc::make_mut(&mut self.board).reconfigure(config, time);
+        self.tell(&transitions)
     }
 
     /// One alarm; `None` once it is defined no longer.

@@ -100,6 +100,16 @@ impl Duty {
         }
     }
 
+    /// Goes on under another configuration; what it changes is written down in the operator's name.
+    pub fn reconfigure(&mut self, config: &Config, changes: &[String]) {
+        let time = self.report.alarms.now.unwrap_or_else(Utc::now);
+        let what = Entry::configuration(time, &changes.join("; "));
+        let what = if let Some(by) = &self.by { what.by(by) } else { what };
+        let mut entries = self.report.alarms.reconfigure(config, time);
+        entries.insert(0, what);
+        self.write(entries);
+    }
+
     /// What a screen shows of it.
     pub fn report(&self) -> &AlarmReport {
         &self.report

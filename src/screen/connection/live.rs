@@ -1,15 +1,18 @@
-use std::time::{Duration, Instant};
+use std::{
+    sync::Arc,
+    time::{Duration, Instant},
+};
 
-use chrono::TimeDelta;
+use chrono::{TimeDelta, Utc};
 use tokio::{
     sync::{mpsc, watch},
     time::{Interval, MissedTickBehavior, interval},
 };
 
-use super::{Duty, FeedReport, Keeper, Order, Origin, Parcel, report};
+use super::{Duty, FeedReport, Keeper, Order, Origin, Parcel, Revision, Scene, Setting, report};
 use crate::{
     desk::Desk,
-    feed::{Feed, Frame, Holder},
+    feed::{Channels, Feed, Frame, Holder},
     screen::state::{Chronicle, Event},
 };
 
@@ -26,6 +29,10 @@ pub struct Live {
     pub desk: Desk,
     /// What holds values between them.
     pub holder: Holder,
+    /// What they read.
+    pub channels: Arc<Channels>,
+    /// What is in force, and the file it came from.
+    pub revision: Revision,
     /// The alarms.
     pub duty: Duty,
     /// Keeps what is learned.
@@ -41,8 +48,17 @@ pub struct Live {
 struct Sofar {
     chronicle: Chronicle,
     feed: FeedReport,
+    setting: Option<Arc<Setting>>,
     /// What was learned from a feed that has ended is kept.
     kept: bool,
+}
+
+impl Sofar {
+    /// Adds to the messages.
+    fn tell(&mut self, text: String) {
+        let time = self.chronicle.time().unwrap_or_else(Utc::now);
+        self.chronicle.note(Event { time, corridor: None, state: None, text });
+    }
 }
 
 /// What woke it up.
@@ -63,10 +79,14 @@ impl Live {
             match self.wait(&mut second, sofar.feed.ended).await {
                 Woken::Left => break,
                 Woken::Order(Order::Alarm(order)) => self.duty.obey(&order),
+                Woken::Order(Order::Apply(number)) => self.apply(number, &mut sofar),
                 Woken::Order(_) => {}
                 Woken::Frames(None) => sofar.feed.ended = true,
                 Woken::Frames(Some(frames)) => self.take(&mut sofar, &frames),
-                Woken::Time => self.let_time_pass(&sofar),
+                Woken::Time => {
+                    self.let_time_pass(&sofar);
+                    self.look(&mut sofar);
+                }
             }
             self.keep(&mut sofar);
             sofar.feed.inputs = report::inputs(self.feed.monitor());
@@ -111,6 +131,45 @@ impl Live {
         }
     }
 
+    /// Looks at the configuration file.
+    fn look(&mut self, sofar: &mut Sofar) {
+        if !self.revision.look() {
+            return;
+        }
+        let Some(change) = self.revision.change().cloned() else { return };
+        if change.is_sound && self.revision.running().screen.apply_changes {
+            self.apply(change.number, sofar);
+        } else if !change.is_sound {
+            let text = format!("the changed configuration file is refused: {}", change.lines.join(" "));
+            sofar.tell(text);
+        }
+    }
+
+    /// Takes a change into force, whole: between two frames, of which none is lost.
+    fn apply(&mut self, number: u64, sofar: &mut Sofar) {
+        let Some(change) = self.revision.change().cloned() else { return };
+        let Some(before) = self.revision.apply(number) else { return };
+        let config = self.revision.running();
+        let max_age = config.feed.max_age();
+        self.channels = Arc::new(self.channels.extended(config));
+        self.feed.rewire(&self.channels);
+        self.holder.rewire(&self.channels, max_age);
+        let desk = std::mem::replace(&mut self.desk, Desk { corridors: Vec::new() });
+        self.desk = desk.reconfigured(&before, config, &self.channels);
+        if let Some(snapshot) = self.holder.snapshot() {
+            // A look ahead that leaves no trace: the frame itself was taken already.
+            sofar.chronicle.reconfigure(self.desk.clone().assess(&snapshot));
+        }
+        self.duty.reconfigure(config, &change.lines);
+        sofar.setting = Some(Arc::new(Setting {
+            grid: Arc::new(config.grid.clone()),
+            zone: config.time_zone,
+            max_age,
+            screen: config.screen.clone(),
+        }));
+        sofar.tell(format!("the configuration has changed: {}", change.lines.join("; ")));
+    }
+
     /// Keeps what was learned, and passes on what there is to say of it once there is a time to say it at.
     fn keep(&mut self, sofar: &mut Sofar) {
         let Some(keeper) = &mut self.keeper else { return };
@@ -133,6 +192,7 @@ impl Live {
             chronicle: sofar.chronicle.clone(),
             alarms: self.duty.report().clone(),
             feed: sofar.feed.clone(),
+            scene: Scene { setting: sofar.setting.clone(), change: self.revision.change().cloned() },
             origin: Origin::Live,
         };
         self.parcels.send_replace(Some(parcel));

@@ -12,12 +12,14 @@ mod player;
 mod recording;
 mod replay;
 mod report;
+mod revision;
 
 pub use alarms::{AlarmKey, AlarmOrder, AlarmReport, Alarms, LOG_KEPT, Seen, Wish};
 pub use duty::Duty;
 pub use keeper::Keeper;
 pub use live::Live;
-pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Seeking};
+pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Scene, Seeking, Setting};
 pub use player::{Goal, Place, Player};
 pub use recording::{Extent, Recording};
 pub use replay::Replay;
+pub use revision::{Change, Revision};

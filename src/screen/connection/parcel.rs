@@ -1,9 +1,14 @@
 use std::{sync::Arc, time::Instant};
 
 use chrono::{DateTime, TimeDelta, Utc};
+use chrono_tz::Tz;
 
-use super::{AlarmOrder, AlarmReport};
-use crate::screen::state::{Chronicle, Strip};
+use super::{AlarmOrder, AlarmReport, Change};
+use crate::{
+    config::ScreenSettings,
+    grid::Grid,
+    screen::state::{Chronicle, Strip},
+};
 
 /// Everything a screen shows, as it stands.
 #[derive(Debug, Clone)]
@@ -12,10 +17,34 @@ pub struct Parcel {
     pub chronicle: Chronicle,
     /// Their alarms.
     pub alarms: AlarmReport,
+    /// What is watched, and what a changed file would change of it.
+    pub scene: Scene,
     /// How the feed does.
     pub feed: FeedReport,
     /// Live or recorded.
     pub origin: Origin,
+}
+
+/// What is watched, where that can change meanwhile.
+#[derive(Debug, Clone, Default)]
+pub struct Scene {
+    /// What has come into force since the start.
+    pub setting: Option<Arc<Setting>>,
+    /// What a changed configuration file would bring.
+    pub change: Option<Arc<Change>>,
+}
+
+/// What a screen needs to know of a configuration.
+#[derive(Debug)]
+pub struct Setting {
+    /// What is watched.
+    pub grid: Arc<Grid>,
+    /// Zone for display.
+    pub zone: Tz,
+    /// How long a value stands.
+    pub max_age: TimeDelta,
+    /// How to call for attention.
+    pub screen: ScreenSettings,
 }
 
 /// Where the frames come from.
@@ -110,6 +139,8 @@ pub enum Order {
     Seek(DateTime<Utc>),
     /// Stop seeking where we are.
     Cancel,
+    /// Apply the change of this number, live.
+    Apply(u64),
     /// Something with alarms, also live.
     Alarm(AlarmOrder),
 }

@@ -11,7 +11,7 @@ use tokio::sync::watch;
 
 use super::{
     AlarmOrder, AlarmReport, Extent, FeedReport, Goal, InputReport, Order, Origin, Parcel, Playback, Player, Recording,
-    SPEEDS, Seeking, report,
+    SPEEDS, Scene, Seeking, report,
 };
 use crate::feed::Channels;
 
@@ -177,6 +177,8 @@ impl Replay {
                 self.seeking = None;
                 self.set_clock();
             }
+            // A recording is played as it was configured.
+            Order::Apply(_) => {}
             Order::Alarm(AlarmOrder { number, wish }) => {
                 self.answer = (number, self.player.obey(&wish).err().map(|refusal| refusal.to_string()));
             }
@@ -245,7 +247,13 @@ impl Replay {
         let chronicle = here.chronicle.clone();
         let (answered, refusal) = self.answer.clone();
         let alarms = AlarmReport { alarms: here.alarms.clone(), answered, refusal, ..AlarmReport::default() };
-        self.parcels.send_replace(Some(Parcel { chronicle, alarms, feed, origin: Origin::Replay(playback) }));
+        self.parcels.send_replace(Some(Parcel {
+            chronicle,
+            alarms,
+            scene: Scene::default(),
+            feed,
+            origin: Origin::Replay(playback),
+        }));
     }
 }
 

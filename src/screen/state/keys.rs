@@ -26,6 +26,7 @@ pub const KEYS: [(&str, &[(&str, &str)]); 4] = [
             ("/", "overview: show only names that contain, or a state that begins with, what you type"),
             ("a", "alarms"),
             ("m", "messages"),
+            ("c", "what a changed configuration file would change; Enter there applies it"),
             ("?", "this help"),
             ("q  Ctrl-C", "quit"),
             ("Ctrl-Z", "suspend; `fg` brings it back"),
@@ -99,6 +100,8 @@ impl App {
             KeyCode::Char('?') => self.toggle(Page::Help),
             KeyCode::Char('a') => self.toggle(Page::Alarms),
             KeyCode::Char('m') => self.toggle(Page::Messages),
+            KeyCode::Char('c') => self.toggle(Page::Change),
+            KeyCode::Enter if self.page == Page::Change => return self.apply(),
             KeyCode::Up | KeyCode::Char('k') => self.go(-1),
             KeyCode::Down | KeyCode::Char('j') => self.go(1),
             KeyCode::PageUp => self.go(-self.screenful()),
@@ -237,6 +240,13 @@ impl App {
         isize::try_from(self.drawn.rows_shown.max(1)).unwrap_or(1)
     }
 
+    /// Applies what is shown, if it can be applied.
+    fn apply(&mut self) -> Option<Order> {
+        let number = self.change().filter(|change| change.is_sound).map(|change| change.number)?;
+        self.back(true);
+        Some(Order::Apply(number))
+    }
+
     pub(super) fn show(&mut self, panel: Panel) {
         self.panel = panel;
         self.scroll = 0;
@@ -269,7 +279,7 @@ impl App {
             Page::Overview if drop_filter => self.filter.clear(),
             Page::Overview => {}
             Page::Corridor => self.page = Page::Overview,
-            Page::Alarms | Page::Messages | Page::Help => self.page = self.under,
+            Page::Alarms | Page::Change | Page::Messages | Page::Help => self.page = self.under,
         }
     }
 

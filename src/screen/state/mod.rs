@@ -27,7 +27,7 @@ pub use panel::Panel;
 pub use pointer::{Drawn, Target};
 pub use teller::Teller;
 
-use super::connection::{Origin, Parcel, Playback};
+use super::connection::{Change, Origin, Parcel, Playback, Setting};
 use crate::{
     config::ScreenSettings,
     desk::{Assessment, OutageRecord},
@@ -90,6 +90,8 @@ pub enum Page {
     Corridor,
     /// What calls for the operator.
     Alarms,
+    /// What a changed configuration file would bring.
+    Change,
     /// What happened.
     Messages,
     /// Keys, numbers, caution.
@@ -149,7 +151,26 @@ impl App {
     /// Takes in what the connection sent.
     pub fn receive(&mut self, parcel: Parcel) {
         self.receive_alarms(&parcel.alarms);
+        self.receive_setting(parcel.scene.setting.as_ref());
         self.parcel = Some(parcel);
+    }
+
+    /// Takes another configuration in; the cursor stays on its corridor.
+    fn receive_setting(&mut self, setting: Option<&Arc<Setting>>) {
+        let Some(setting) = setting.filter(|setting| !Arc::ptr_eq(&setting.grid, &self.grid)) else { return };
+        let here = self.corridor().map(|corridor| corridor.name.clone());
+        (self.grid, self.zone, self.max_age) = (setting.grid.clone(), setting.zone, setting.max_age);
+        self.settings = setting.screen.clone();
+        let place = self.grid.corridors.iter().position(|corridor| Some(&corridor.name) == here.as_ref());
+        self.selected = place.unwrap_or(0);
+        if place.is_none() {
+            self.outage = None;
+        }
+    }
+
+    /// What a changed configuration file would bring.
+    pub fn change(&self) -> Option<&Change> {
+        self.parcel.as_ref()?.scene.change.as_deref()
     }
 
     /// The corridors of the overview, by their place in the configuration.

@@ -66,6 +66,7 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
             ("Esc", "back"),
             ("?", "help"),
         ],
+        Page::Change => &[("Enter", "apply it"), ("Esc", "back"), ("↑↓", "scroll"), ("q", "quit")],
         Page::Messages | Page::Help => &[("Esc", "back"), ("↑↓", "scroll"), ("q", "quit")],
     };
     let replay: &[(&str, &str)] = match app.playback() {

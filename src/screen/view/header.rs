@@ -13,6 +13,7 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
         Page::Overview => "all corridors",
         Page::Corridor => "corridor",
         Page::Alarms => "alarms",
+        Page::Change => "configuration",
         Page::Messages => "messages",
         Page::Help => "help",
     };

@@ -5,6 +5,7 @@ mod alarm_line;
 mod alarms;
 mod banner;
 mod card;
+mod change;
 mod corridor;
 mod curves;
 mod data;
@@ -68,6 +69,7 @@ pub fn draw(frame: &mut Frame, app: &App, theme: Theme) -> Drawn {
         Page::Overview => overview::draw(frame, body, app, theme),
         Page::Corridor => corridor::draw(frame, body, app, theme),
         Page::Alarms => alarms::draw(frame, body, app, theme),
+        Page::Change => scrolled(frame, body, app.scroll, change::lines(app, theme, usize::from(body.width))),
         Page::Messages => scrolled(frame, body, app.scroll, messages::lines(app, theme, body)),
         Page::Help => scrolled(frame, body, app.scroll, help::lines(theme, usize::from(body.width))),
     };

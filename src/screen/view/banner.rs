@@ -18,7 +18,12 @@ fn words(app: &App) -> Option<(String, bool)> {
     if let Some(notice) = &app.notice {
         return Some((notice.clone(), true));
     }
-    troubled(app).or_else(|| changed(app))
+    troubled(app).or_else(|| unwritten(app)).or_else(|| changed(app))
+}
+
+fn unwritten(app: &App) -> Option<(String, bool)> {
+    let trouble = app.alarm_report()?.journal.as_ref()?.trouble.as_ref()?;
+    Some((format!("What alarms do is kept in memory until the journal can be written again: {trouble}"), true))
 }
 
 fn changed(app: &App) -> Option<(String, bool)> {

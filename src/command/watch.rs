@@ -2,6 +2,7 @@
 
 use std::{
     env, fs,
+    io::{Write, stderr},
     path::{Path, PathBuf},
     sync::Arc,
     thread,
@@ -53,9 +54,7 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let runtime = stage::runtime()?;
     let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::default()))?;
     let keeper = state_file.map(|path| Keeper::open(path, &mut desk));
-    for finding in keeper.iter().flat_map(Keeper::findings) {
-        eprintln!("tautline: {finding}");
-    }
+    keeper.iter().flat_map(Keeper::findings).for_each(say);
     let duty = Duty::begin(&config, config.journal.path(&options.config), env::var("USER").ok())?;
     let (sender, parcels) = watch::channel(None);
     let (orders, taken) = mpsc::channel(stage::ORDERS_WAITING);
@@ -72,9 +71,14 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     runtime.shutdown_background();
     ending?;
     if let Some(trouble) = kept.map_err(|_| stage::fault())? {
-        eprintln!("tautline: {trouble}");
+        say(&trouble);
     }
     Ok(())
+}
+
+/// A word on standard error, which may be gone with the terminal.
+fn say(what: &str) {
+    let _ = writeln!(stderr(), "tautline: {what}");
 }
 
 impl Options {

@@ -106,7 +106,11 @@ impl Journal {
                     self.backlog.clear();
                     self.status = Status::default();
                 }
-                Err(error) => self.status.trouble = Some(error.to_string()),
+                Err(error) => {
+                    // Opened while the file could not be written, it would stay so.
+                    self.database = None;
+                    self.status.trouble = Some(error.to_string());
+                }
             }
         }
         self.status.waiting = self.backlog.len();

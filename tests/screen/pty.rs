@@ -12,7 +12,7 @@ use std::{
 
 use rustix::{
     fs::{Mode, OFlags},
-    process::{Pid, Signal, kill_process},
+    process::{Pid, Signal, WaitOptions, kill_process, waitpid},
     pty::{OpenptFlags, grantpt, openpt, ptsname, unlockpt},
     termios::{LocalModes, Winsize, tcgetattr, tcsetwinsize},
 };
@@ -94,6 +94,17 @@ impl Stage {
                     break;
                 }
             }
+        }
+    }
+
+    #[allow(dead_code, reason = "shared by tests of which not all need it")]
+    pub fn wait_for_stop(&self) {
+        let start = Instant::now();
+        let options = WaitOptions::UNTRACED | WaitOptions::NOHANG;
+        while !waitpid(Some(Pid::from_child(&self.child)), options).unwrap().is_some_and(|(_, status)| status.stopped())
+        {
+            assert!(start.elapsed() < PATIENCE, "it does not stop");
+            thread::sleep(Duration::from_millis(10));
         }
     }
 

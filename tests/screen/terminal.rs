@@ -72,7 +72,7 @@ fn it_can_be_suspended_and_brought_back() {
         } else {
             stage.keyboard.write_all(suspend.as_bytes()).unwrap();
         }
-        stage.wait_for("\u{1b}[?1049l");
+        stage.wait_for_stop();
         assert!(!stage.is_raw());
         stage.seen.clear();
         stage.signal(Signal::CONT);

@@ -74,9 +74,12 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
                     Panel::Network => network::lines(&subject, width),
                     _ => data::lines(&subject, width),
                 };
-                let scroll = if panels.len() == 1 { app.scroll } else { 0 };
-                let long = super::scrolled(frame, inner, scroll, lines);
-                (drawn.scroll_max, drawn.rows_shown) = (drawn.scroll_max.max(long.scroll_max), long.rows_shown);
+                // The first panel of a page has the keys.
+                let scrolls = panel == panels[0];
+                let long = super::scrolled(frame, inner, if scrolls { app.scroll } else { 0 }, lines);
+                if scrolls {
+                    (drawn.scroll_max, drawn.rows_shown) = (long.scroll_max, long.rows_shown);
+                }
             }
         }
     }

@@ -26,8 +26,9 @@ pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
         format!(" Changes of state, of data and of switches, newest first; the last {EVENTS_KEPT} are kept."),
         theme.quiet(),
     ));
+    let above = lines.len();
     lines.extend(events(app, theme, width));
-    if lines.len() == 1 {
+    if lines.len() == above {
         lines.push(Line::raw(" Nothing yet."));
     }
     lines

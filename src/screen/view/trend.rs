@@ -25,7 +25,7 @@ pub fn words(track: &Track) -> String {
         return figures::NONE.into();
     };
     match track.history.gained_mw(SPAN_MIN) {
-        None => "→ too early to say".into(),
+        None => "→ not known yet".into(),
         Some(gained) if gained.abs() < STEADY * (headroom + transfer).abs() => "→ steady".into(),
         Some(gained) => {
             let arrow = if gained > 0.0 { '↗' } else { '↘' };

@@ -75,6 +75,13 @@ fn bundled_configurations_are_read() {
 }
 
 #[test]
+fn live_inputs_have_their_patience() {
+    let text = VALID.replace("max_age_s = 4", "max_age_s = 4\nhold_s = 0.5\nmax_ahead_s = 900");
+    let feed = Config::parse(&text, "valid.toml").unwrap_or_else(|errors| panic!("{errors}")).feed;
+    assert_eq!((feed.hold_s, feed.max_ahead_s), (0.5, 900.0));
+}
+
+#[test]
 fn every_key_is_read() {
     let config = Config::parse(VALID, "valid.toml").unwrap_or_else(|errors| panic!("{errors}"));
     assert_eq!((config.grid.frequency_hz, config.time_zone), (50.0, chrono_tz::Europe::Oslo));
@@ -84,7 +91,12 @@ fn every_key_is_read() {
     );
     assert_eq!(
         config.feed,
-        FeedSettings { inputs: vec!["tcp://127.0.0.1:7001".to_owned()], max_age_s: 4.0, hold_s: 0.2 }
+        FeedSettings {
+            inputs: vec!["tcp://127.0.0.1:7001".to_owned()],
+            max_age_s: 4.0,
+            hold_s: 0.2,
+            max_ahead_s: 3600.0
+        }
     );
     let names = [("SV1.from.mw", "RTU7/P"), ("Skarn.kv", "RTU7/U")].map(|(a, b)| (a.to_owned(), b.to_owned()));
     assert_eq!(config.channel_names, names.into());

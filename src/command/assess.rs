@@ -5,7 +5,6 @@ use std::{
     num::NonZeroUsize,
     path::PathBuf,
     sync::Arc,
-    time::Duration,
 };
 
 use clap::{Args, ValueEnum};
@@ -94,7 +93,7 @@ fn is_broken_pipe(failure: &(dyn std::error::Error + 'static)) -> bool {
 
 async fn assess(options: &Options, config: &Config, inputs: &[Input]) -> Result<(), Failure> {
     let channels = Arc::new(Channels::new(config));
-    let patience = Patience { hold: Duration::try_from_secs_f64(config.feed.hold_s)?, once: options.once };
+    let patience = Patience { once: options.once, ..Patience::new(&config.feed) };
     let mut feed = Feed::open(inputs, &channels, patience).await?;
     let mut bench = Bench::new(options, config, &channels)?;
     let mut out = BufWriter::with_capacity(1 << 16, io::stdout().lock());

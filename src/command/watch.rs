@@ -52,7 +52,7 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let (mut desk, holder) = (Desk::detailed(&config, &channels), inputs::holder(&config, &channels));
 
     let runtime = stage::runtime()?;
-    let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::default()))?;
+    let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::new(&config.feed)))?;
     let keeper = state_file.map(|path| Keeper::open(path, &mut desk));
     keeper.iter().flat_map(Keeper::findings).for_each(say);
     let duty = Duty::begin(&config, config.journal.path(&options.config), env::var("USER").ok())?;

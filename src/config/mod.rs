@@ -18,7 +18,7 @@ mod screen;
 pub(crate) mod section;
 pub(crate) mod wording;
 
-use std::{collections::BTreeMap, path::Path};
+use std::{collections::BTreeMap, path::Path, time::Duration};
 
 use chrono::TimeDelta;
 use chrono_tz::{TZ_VARIANTS, Tz};
@@ -90,20 +90,31 @@ pub struct FeedSettings {
     pub max_age_s: f64,
     /// How long live inputs wait for one another's frames, s (`hold_s`).
     pub hold_s: f64,
+    /// How far ahead of the clock and of the frame before it a frame of live inputs may be, s (`max_ahead_s`).
+    pub max_ahead_s: f64,
+}
+
+/// A time in seconds; the longest there is where it does not fit.
+fn seconds(seconds: f64) -> TimeDelta {
+    let time = Duration::try_from_secs_f64(seconds).ok().and_then(|time| TimeDelta::from_std(time).ok());
+    time.unwrap_or(TimeDelta::MAX)
+}
+
+impl FeedSettings {
+    /// [`Self::max_age_s`].
+    pub fn max_age(&self) -> TimeDelta {
+        seconds(self.max_age_s)
+    }
+
+    /// [`Self::max_ahead_s`].
+    pub fn max_ahead(&self) -> TimeDelta {
+        seconds(self.max_ahead_s)
+    }
 }
 
 impl Default for FeedSettings {
     fn default() -> Self {
-        Self { inputs: Vec::new(), max_age_s: 10.0, hold_s: 0.2 }
-    }
-}
-
-impl FeedSettings {
-    /// How long a value stands.
-    pub fn max_age(&self) -> TimeDelta {
-        #[allow(clippy::cast_possible_truncation, reason = "saturates")]
-        let milliseconds = (self.max_age_s * 1000.0) as i64;
-        TimeDelta::try_milliseconds(milliseconds).unwrap_or(TimeDelta::MAX)
+        Self { inputs: Vec::new(), max_age_s: 10.0, hold_s: 0.2, max_ahead_s: 3600.0 }
     }
 }
 
@@ -208,6 +219,7 @@ fn feed(mut section: Section<'_>) -> FeedSettings {
         inputs: inputs.map_or(default.inputs, |inputs| inputs.into_iter().map(|input| input.text).collect()),
         max_age_s: section.number("max_age_s", POSITIVE.up_to(DAY_S)).unwrap_or(default.max_age_s),
         hold_s: section.number("hold_s", NOT_NEGATIVE.up_to(DAY_S)).unwrap_or(default.hold_s),
+        max_ahead_s: section.number("max_ahead_s", POSITIVE).unwrap_or(default.max_ahead_s),
     }
 }
 

@@ -69,6 +69,25 @@ impl CorridorDesk {
 
     /// This corridor at a snapshot.
     pub fn assess(&mut self, snapshot: &Snapshot) -> Assessment {
+        let fit = self.fit(snapshot);
+        match &fit.standing {
+            Standing::Joined(state) => self.joined(snapshot, &fit, state),
+            Standing::Parted { state, angle_known } => self.parted(snapshot, &fit, state, *angle_known),
+            Standing::Blind => self.blank(snapshot, &fit),
+        }
+    }
+
+    /// Learns from a snapshot without judging it: far cheaper where nobody looks at every frame.
+    pub fn follow(&mut self, snapshot: &Snapshot) {
+        let fit = self.fit(snapshot);
+        if let Standing::Joined(state) = &fit.standing {
+            let present = Present { topology: &fit.topology, voltage: &state.voltage, load: &state.load };
+            let seated = self.engine.seat(&self.corridor, &present);
+            self.learn(snapshot, &fit, state, &seated);
+        }
+    }
+
+    fn fit(&mut self, snapshot: &Snapshot) -> Fit {
         let fit = self.fitter.fit(snapshot);
         if self.topology.as_ref() != Some(&fit.topology) {
             // A trend does not reach across a switching.
@@ -76,11 +95,7 @@ impl CorridorDesk {
             self.switchings += 1;
             self.topology = Some(fit.topology.clone());
         }
-        match &fit.standing {
-            Standing::Joined(state) => self.joined(snapshot, &fit, state),
-            Standing::Parted { state, angle_known } => self.parted(snapshot, &fit, state, *angle_known),
-            Standing::Blind => self.blank(snapshot, &fit),
-        }
+        fit
     }
 
     fn joined(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState) -> Assessment {

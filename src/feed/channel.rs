@@ -91,7 +91,7 @@ impl Point {
     /// - degrees: ten turns either way;
     /// - MW and Mvar of a circuit: ten times U²/X, the peak of its own power-angle curve at nominal voltage;
     /// - a load: ten times the sum of U²/X over all that meets at its bus, the source of a side included;
-    /// - stored energy: above 0.
+    /// - stored energy: a millisecond of the U²/X of a circuit at its bus, and more.
     pub fn plausible(self, corridor: &Corridor) -> RangeInclusive<f64> {
         let nominal_kv = |bus: BusIndex| corridor.buses[bus].nominal_kv;
         let up_to = |limit: f64| -limit.min(f64::MAX)..=limit.min(f64::MAX);
@@ -109,7 +109,11 @@ impl Point {
                 let sum: f64 = circuits.map(|circuit| peak_mw(bus, circuit.line.totals().x_ohm)).sum();
                 up_to(ABSURD_POWER * (sum + peak_mw(bus, source_x_ohm)))
             }
-            Self::StoredEnergy(_) => f64::MIN_POSITIVE..=f64::MAX,
+            Self::StoredEnergy(bus) => {
+                let circuits = corridor.circuits.iter().filter(|circuit| circuit.between.contains(&bus));
+                let peaks = circuits.map(|circuit| peak_mw(bus, circuit.line.totals().x_ohm));
+                (1e-3 * peaks.fold(f64::MAX, f64::min)).max(f64::MIN_POSITIVE)..=f64::MAX
+            }
             Self::Closed(_) | Self::Inserted(_) => 0.0..=1.0,
         }
     }

@@ -6,6 +6,7 @@ use std::{
     time::{Duration, Instant},
 };
 
+use chrono::{DateTime, TimeDelta, Utc};
 use thiserror::Error;
 use tokio::{sync::mpsc, task::JoinSet, time::timeout_at};
 
@@ -16,19 +17,34 @@ use super::{
     stream::Outlet,
     switch::Switch,
 };
+use crate::config::FeedSettings;
 
 /// How a feed treats its inputs.
 #[derive(Debug, Clone, Copy)]
 pub struct Patience {
     /// How long a frame waits for live inputs that may bring an earlier one, or more for the same time.
     pub hold: Duration,
+    /// How far a frame of live inputs may be ahead of both the clock and the frame before it: one absurd time stamp would
+    /// make all that follow look old.
+    pub max_ahead: TimeDelta,
     /// Ends live inputs when they end for the first time, instead of connecting again.
     pub once: bool,
 }
 
+impl Patience {
+    /// As a configuration says.
+    pub fn new(settings: &FeedSettings) -> Self {
+        Self {
+            hold: Duration::try_from_secs_f64(settings.hold_s).unwrap_or(Duration::MAX),
+            max_ahead: settings.max_ahead(),
+            once: false,
+        }
+    }
+}
+
 impl Default for Patience {
     fn default() -> Self {
-        Self { hold: Duration::from_millis(200), once: false }
+        Self::new(&FeedSettings::default())
     }
 }
 
@@ -51,7 +67,8 @@ pub struct Feed {
     new_lanes: Option<mpsc::Receiver<Lane<Inlet>>>,
     merger: Merger,
     switch: Switch,
-    hold: Duration,
+    patience: Patience,
+    any_live: bool,
     monitor: Monitor,
     /// Stops the inputs when it is dropped.
     _tasks: JoinSet<()>,
@@ -89,7 +106,8 @@ impl Feed {
             new_lanes: Some(new_lanes),
             merger: Merger::new(channels),
             switch,
-            hold: patience.hold,
+            patience,
+            any_live,
             monitor: Monitor(opening.gauges.into()),
             _tasks: opening.tasks,
         })
@@ -118,7 +136,8 @@ impl Feed {
             }
             match self.turn() {
                 Turn::Now => {
-                    batch.extend(self.merger.take(&mut self.lanes));
+                    let horizon = self.horizon();
+                    batch.extend(self.merger.take(&mut self.lanes, horizon));
                     if batch.len() >= max {
                         return Some(batch);
                     }
@@ -132,6 +151,12 @@ impl Feed {
         }
     }
 
+    /// The latest time that the next frame of live inputs can have.
+    fn horizon(&self) -> Option<DateTime<Utc>> {
+        let latest = self.merger.latest.filter(|_| self.any_live)?;
+        latest.max(Utc::now()).checked_add_signed(self.patience.max_ahead)
+    }
+
     /// Whether the earliest frame that waits may go.
     fn turn(&self) -> Turn {
         let earliest =
@@ -141,7 +166,7 @@ impl Feed {
         if missing.peek().is_none() {
             return Turn::Now;
         }
-        let deadline = arrived + self.hold;
+        let deadline = arrived + self.patience.hold;
         if missing.any(|lane| !lane.source.is_live) {
             Turn::Unknown
         } else if deadline <= Instant::now() {

@@ -21,7 +21,8 @@ impl<S> Lane<S> {
 /// Brings the frames of several streams into one order of time.
 #[derive(Debug)]
 pub(super) struct Merger {
-    latest: Option<DateTime<Utc>>,
+    /// The time of the last frame taken.
+    pub latest: Option<DateTime<Utc>>,
     places: Places,
 }
 
@@ -37,10 +38,11 @@ impl Merger {
 
     /// Takes the earliest frame that waits, and joins others of the same time to it.
     ///
-    /// `None` when nothing waits, and when the earliest is late: then it is counted and dropped.
-    pub fn take<S>(&mut self, lanes: &mut [Lane<S>]) -> Option<Frame> {
+    /// `None` when nothing waits, and when the earliest is late, or beyond the horizon: then it is counted and dropped.
+    pub fn take<S>(&mut self, lanes: &mut [Lane<S>], horizon: Option<DateTime<Utc>>) -> Option<Frame> {
         let time = lanes.iter().filter_map(|lane| lane.frames.front()).map(|frame| frame.time).min()?;
         let is_late = self.latest.is_some_and(|latest| time < latest);
+        let is_ahead = horizon.is_some_and(|horizon| time > horizon);
         let mut merged = None;
         for lane in lanes {
             if lane.frames.front().is_none_or(|frame| frame.time != time) {
@@ -49,11 +51,14 @@ impl Merger {
             let frame = lane.frames.pop_front();
             match (&mut merged, &frame) {
                 _ if is_late => lane.gauge.lock().tally.old += 1,
+                _ if is_ahead => lane.gauge.lock().tally.ahead += 1,
                 (Some(merged), Some(frame)) => self.join(merged, frame),
                 _ => merged = frame,
             }
         }
-        self.latest = self.latest.max(Some(time));
+        if !is_ahead {
+            self.latest = self.latest.max(Some(time));
+        }
         merged
     }
 

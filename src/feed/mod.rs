@@ -34,9 +34,11 @@ pub use recorded::{Reader, Recorded};
 pub use snapshot::{Holder, Snapshot};
 pub use tally::{Named, Tally};
 
-use chrono::{DateTime, Utc};
+use chrono::{DateTime, Datelike, Utc};
 use line_error::LineError;
 
 fn rfc3339(text: &str) -> Result<DateTime<Utc>, LineError> {
-    DateTime::parse_from_rfc3339(text).map(|time| time.to_utc()).map_err(|_| LineError::Time)
+    let time = DateTime::parse_from_rfc3339(text).map(|time| time.to_utc()).map_err(|_| LineError::Time)?;
+    // An offset can carry a year over the edge of what RFC 3339 can write.
+    if (0..=9999).contains(&time.year()) { Ok(time) } else { Err(LineError::Time) }
 }

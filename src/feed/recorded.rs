@@ -53,7 +53,7 @@ impl Iterator for Recorded {
             if self.lanes.is_empty() {
                 return None;
             }
-            if let Some(frame) = self.merger.take(&mut self.lanes) {
+            if let Some(frame) = self.merger.take(&mut self.lanes, None) {
                 return Some(frame);
             }
         }

@@ -23,6 +23,8 @@ pub struct Tally {
     pub invalid: Named,
     /// Frames dropped because they are older than one before them.
     pub old: u64,
+    /// Frames of live inputs dropped because they are far ahead of the clock and of the frame before them.
+    pub ahead: u64,
     /// Frames dropped because the program did not keep up with datagrams.
     pub overrun: u64,
     /// Connections opened again.
@@ -71,6 +73,7 @@ impl Tally {
             (self.unknown.count, "values of unknown channels ignored", such_as(self.unknown.names.iter())),
             (self.invalid.count, "values invalid", such_as(self.invalid.names.iter())),
             (self.old, "frames dropped, older than one before them", String::new()),
+            (self.ahead, "frames dropped, far ahead of the clock and of the frame before them", String::new()),
             (self.overrun, "frames dropped, more than could be used in time", String::new()),
             (self.reconnects, "connections opened again", String::new()),
         ];

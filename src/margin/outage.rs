@@ -1,5 +1,7 @@
 //! One outage: what it leaves at any point of the stress, and the transfers up to which each criterion holds.
 
+use std::f64::consts::TAU;
+
 use super::{
     OutageLimits, OutagePicture, OutageRecord, PowerAngle,
     case::{Case, Network, OutageCase},
@@ -74,6 +76,8 @@ impl<'a> Outage<'a> {
         let (cleared, kinetic) = match (&fault, &self.corridor.fault) {
             (Some(swing), Some(fault)) => {
                 let cleared = swing.after(Moment::at_rest(angle_rad), fault.clear_ms / 1000.0);
+                // What cannot be followed is not survived: past any tipping point.
+                let cleared = cleared.unwrap_or_else(|| Moment::at_rest(angle_rad + 2.0 * TAU));
                 (cleared, swing.kinetic(&cleared))
             }
             _ => (Moment::at_rest(angle_rad), 0.0),

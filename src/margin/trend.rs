@@ -7,7 +7,9 @@ use chrono::{DateTime, TimeDelta, Utc};
 
 const SPAN: TimeDelta = TimeDelta::minutes(10);
 const INTERVAL: TimeDelta = TimeDelta::seconds(10);
-const FEWEST_SAMPLES: usize = 12;
+const FEWEST_SAMPLES: usize = 8;
+/// A slope over less is not looked at.
+const SHORTEST: TimeDelta = TimeDelta::seconds(110);
 /// Standard normal quantile of the one-sided 99.5 % level at which a slope counts.
 const SIGNIFICANCE: f64 = 2.576;
 /// A slope over ten minutes says nothing about the day after.
@@ -55,7 +57,8 @@ impl Trend {
 
     fn slope(&mut self) -> Option<f64> {
         let count = self.samples.len();
-        if count < FEWEST_SAMPLES {
+        let [(first, _), (last, _)] = [self.samples.front()?, self.samples.back()?];
+        if count < FEWEST_SAMPLES || *last - *first < SHORTEST {
             return None;
         }
         self.slopes.clear();
@@ -111,6 +114,15 @@ mod tests {
             trend(|minutes| if (minutes - 5.0).abs() < 0.01 { -900.0 } else { noise(minutes) }).mw_per_minute(),
             None
         );
+    }
+
+    #[test]
+    fn frames_once_a_minute_make_a_trend() {
+        let mut trend = Trend::default();
+        for minute in 0..12 {
+            trend.push(DateTime::UNIX_EPOCH + TimeDelta::minutes(minute), 500.0 - 10.0 * minute as f64);
+        }
+        assert!(trend.minutes_to(0.0, 390.0).is_some_and(|minutes| (minutes - 39.0).abs() < 1e-9));
     }
 
     #[test]

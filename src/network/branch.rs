@@ -86,7 +86,8 @@ pub fn fault_admittance(kind: FaultKind) -> Option<C64> {
 }
 
 impl FaultedBranch {
-    /// The circuit with a fault at a fraction of it, counted from the given end; a bank at that very place lies behind it.
+    /// The circuit with a fault at a fraction of it, counted from the given end: at 0 and 1 it sits at the buses, and in
+    /// between, a bank at that very place lies behind it.
     pub fn of(circuit: &Circuit, inserted: &[bool], kind: FaultKind, at: f64, counted_from: End) -> Self {
         let at = match counted_from {
             End::From => at,
@@ -103,9 +104,18 @@ impl FaultedBranch {
             None if at <= 0.0 => Self { branch: whole, shorted: Some(End::From) },
             None if at >= 1.0 => Self { branch: whole, shorted: Some(End::To) },
             None => {
-                let (near, far): (Branch, Branch) = (near().into(), far().into());
-                let branch = Branch { y11: near.y11, y12: C64::new(0.0, 0.0), y22: far.y22 };
-                Self { branch, shorted: None }
+                let (near, far) = (near(), far());
+                // A bank that cancels its piece of line puts the short circuit right at the bus.
+                let cancelled = |piece: &TwoPort| piece.b.norm() <= 1e-12 * totals(circuit.line).0.norm();
+                let shorted = match (cancelled(&near), cancelled(&far)) {
+                    (true, _) => Some(End::From),
+                    (_, true) => Some(End::To),
+                    _ => None,
+                };
+                let zero = C64::new(0.0, 0.0);
+                let y11 = if shorted == Some(End::From) { zero } else { near.d / near.b };
+                let y22 = if shorted == Some(End::To) { zero } else { far.a / far.b };
+                Self { branch: Branch { y11, y12: zero, y22 }, shorted }
             }
         }
     }

@@ -161,6 +161,7 @@ fn of_settings(config: &Config, say: &mut impl FnMut(String, &'static str, Strin
     say("measurement".into(), "power σ, %", measurement.power_sigma_pct.to_string());
     say("feed".into(), "inputs (at the next start)", feed.inputs.join(", "));
     say("feed".into(), "a value stands for, s", feed.max_age_s.to_string());
+    say("feed".into(), "a frame is ahead of the clock at most, s (at the next start)", feed.max_ahead_s.to_string());
     say("feed".into(), "inputs wait for each other for, s (at the next start)", feed.hold_s.to_string());
     for (channel, name) in channel_names {
         say(format!("channel {channel}"), "name in the feed", name.clone());

@@ -28,10 +28,15 @@ const MOVE_PART: f64 = 0.01;
 const PRIOR: [f64; 4] = [0.05, 0.45, 0.45, 0.05];
 /// The same when the corridor itself was switched.
 const PRIOR_SWITCHED: [f64; 4] = [0.8, 0.09, 0.09, 0.02];
-/// How fast the share of steps that moved both sides is followed.
+/// How fast the share of steps that moved both sides is followed in the long run; what it is taken for at first, and as how
+/// many steps that counts. With a small share at first, chance would find a foothold before much is known.
 const BOTH_MEMORY: f64 = 0.05;
-/// Share of such steps beyond which those that seem to move one side only are doubtful too.
-const BOTH_USUAL: f64 = 0.25;
+const BOTH_AT_FIRST: f64 = 0.1;
+const BOTH_BEFOREHAND: f64 = 6.0;
+/// Share of such steps beyond which those that seem to move one side only are doubtful too, and how much each step
+/// then widens the variance for every part of the share beyond it.
+const BOTH_USUAL: f64 = 0.3;
+const BOTH_DOUBT: f64 = 3.0;
 
 /// Learns both sides' impedances of one corridor.
 #[derive(Debug, Clone)]
@@ -63,7 +68,7 @@ impl Learner {
             estimate: Estimate::configured(sources),
             detector: Detector::new(&settings),
             watch: [Watch::default(); 2],
-            both: PRIOR[3],
+            both: BOTH_AT_FIRST,
             steps: VecDeque::with_capacity(LOGGED),
             history: VecDeque::with_capacity(HISTORY),
         }
@@ -171,9 +176,10 @@ impl Learner {
         }
         let mut doubtful = 0.0;
         if !onset.switched {
-            self.both += BOTH_MEMORY * (verdict.probability[3] - self.both);
+            let memory = (1.0 / (BOTH_BEFOREHAND + self.steps.len() as f64 + 1.0)).max(BOTH_MEMORY);
+            self.both += memory * (verdict.probability[3] - self.both);
             self.both = self.both.max(PRIOR[3]);
-            doubtful = (self.both - BOTH_USUAL).max(0.0);
+            doubtful = BOTH_DOUBT * (self.both - BOTH_USUAL).max(0.0);
         }
         let lost = Watch::look(&mut self.watch, onset.after_s, event, verdict, &self.belief, &self.configured);
         self.belief = verdict.belief.scaled(1.0 + doubtful, &self.configured);

@@ -85,7 +85,7 @@ async fn server() -> (TcpListener, String) {
 #[tokio::test]
 async fn a_single_live_input_never_waits() {
     let (listener, input) = server().await;
-    let patience = Patience { hold: PATIENTLY * 100, once: true };
+    let patience = Patience { hold: PATIENTLY * 100, once: true, ..Patience::default() };
     let mut feed = Feed::open(&[input.parse().unwrap()], &channels(), patience).await.unwrap();
     let (mut client, _) = listener.accept().await.unwrap();
     for second in 0..3 {
@@ -99,7 +99,7 @@ async fn live_inputs_wait_for_one_another_but_not_for_long() {
     let ((first_listener, first_input), (second_listener, second_input)) = (server().await, server().await);
     let inputs = [first_input.parse().unwrap(), second_input.parse().unwrap()];
     // Far longer than it takes to send: both frames of a time come together.
-    let patience = Patience { hold: Duration::from_secs(2), once: true };
+    let patience = Patience { hold: Duration::from_secs(2), once: true, ..Patience::default() };
     let mut feed = Feed::open(&inputs, &channels(), patience).await.unwrap();
     let (mut first, _) = first_listener.accept().await.unwrap();
     let (mut second, _) = second_listener.accept().await.unwrap();
@@ -117,4 +117,17 @@ async fn live_inputs_wait_for_one_another_but_not_for_long() {
     drop((first, second));
     assert_eq!(rest(&mut feed).await, []);
     assert_eq!(status(&feed).tally.old, 0);
+}
+
+#[tokio::test]
+async fn one_absurd_time_stamp_does_not_age_all_that_follows() {
+    let listener = TcpListener::bind("127.0.0.1:0").await.unwrap();
+    let mut feed = open(&[&format!("tcp://{}", listener.local_addr().unwrap())], true).await;
+    let (mut client, _) = listener.accept().await.unwrap();
+    // Dates of a drill may be far ahead of the clock, and gaps in it long.
+    client.write_all(lines([1, 2, 1000, 20_000_000, 1001, 4000]).as_bytes()).await.unwrap();
+    drop(client);
+    assert_eq!(seconds(&rest(&mut feed).await), [1, 2, 1000, 1001, 4000]);
+    let tally = status(&feed).tally;
+    assert_eq!((tally.ahead, tally.old), (1, 0));
 }

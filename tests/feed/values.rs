@@ -69,7 +69,7 @@ fn absurd_values_are_invalid() {
         ("Mid å.mw", &[0.0, 60_000.0, -60_000.0], &[60_001.0]),
         ("Skarn.mvar", &[100_000.0], &[100_001.0]),
         ("Velm.mw", &[1e9], &[]),
-        ("Skarn.stored_energy_mws", &[0.001, 60_000.0], &[0.0, -1.0]),
+        ("Skarn.stored_energy_mws", &[2.0, 60_000.0], &[1.99, 1e-9, 0.0, -1.0]),
         ("SM.closed", &[0.0, 1.0], &[2.0, 0.5, -1.0]),
         ("SM-SC.inserted", &[0.0, 1.0], &[1.01]),
     ];
@@ -151,4 +151,13 @@ fn a_csv_column_given_twice_is_invalid() {
         decode(Format::Csv, "Skarn.kv,time,Skarn.kv\n400,2031-03-14T05:00:00Z,400\n,2031-03-14T05:00:01Z,400");
     assert!(is_invalid(&frames[0], "Skarn.kv"));
     assert_eq!(good(&frames[1], "Skarn.kv"), Some(400.0), "given once in this row");
+}
+
+#[test]
+fn a_time_that_rfc_3339_cannot_write_is_no_time() {
+    for time in ["9999-12-31T23:59:59-14:00", "0000-01-01T00:00:00+14:00", "10000-01-01T00:00:00Z"] {
+        let (frames, tally) = decode(Format::JsonLines, format!(r#"{{"time":"{time}","values":{{}}}}"#));
+        assert_eq!((frames.len(), tally.malformed), (0, 1), "{time}");
+    }
+    assert_eq!(frame(r#"{"time":"0001-01-01T00:00:00Z","values":{}}"#).readings, []);
 }

@@ -2,5 +2,6 @@
 
 mod bench;
 mod cases;
+mod edges;
 mod properties;
 mod published;

@@ -86,7 +86,7 @@ fn critical_deg(assessment: &Assessment, name: &str, inertia: f64) -> f64 {
     let curve = judged.picture.and_then(|picture| picture.fault).expect("a fault");
     let swing = Swing { curve, p_m_mw: detail.p_m_mw, inertia };
     let seconds = judged.critical_ms.expect("reached") / 1000.0;
-    swing.after(Moment::at_rest(detail.angle_rad), seconds).angle_rad.to_degrees()
+    swing.after(Moment::at_rest(detail.angle_rad), seconds).expect("it is slow").angle_rad.to_degrees()
 }
 
 /// Critical angle (degrees) and time (s) when the whole network is back after the fault: equal area on one curve.
@@ -101,7 +101,7 @@ fn both_back(assessment: &Assessment, fault_peak: f64, stored_energy: f64) -> (f
     let machine = Machine::new([Some(stored_energy), None], 60.0);
     let swing = Swing { curve: PowerAngle::default(), p_m_mw: p_m, inertia: machine.inertia };
     let time = (2.0 * (critical - start) * machine.inertia / p_m).sqrt();
-    close(swing.after(Moment::at_rest(start), time).angle_rad, critical, 1e-9);
+    close(swing.after(Moment::at_rest(start), time).expect("it is slow").angle_rad, critical, 1e-9);
     (critical.to_degrees(), time)
 }
 

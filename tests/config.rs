@@ -6,7 +6,7 @@ use assert_cmd::cargo::cargo_bin_cmd;
 use nalgebra::Complex;
 use proptest::prelude::*;
 use tautline::{
-    config::{Config, ConfigErrors, FeedSettings, LearningSettings, MeasurementSettings},
+    config::{Config, ConfigErrors, FeedSettings, LearningSettings, MeasurementSettings, ScreenSettings},
     grid::{
         BankIndex, CombinedOutage, ConfiguredSource, FROM, Fault, FaultKind, Line, Load, Requirements, Side,
         SynchronismCheck, TO,
@@ -69,6 +69,7 @@ fn bundled_configurations_are_read() {
     let reference = Config::load("config/reference.toml".as_ref()).unwrap_or_else(|errors| panic!("{errors}"));
     assert_eq!(reference.measurement, MeasurementSettings::default());
     assert_eq!(reference.learning, LearningSettings::default());
+    assert_eq!(reference.screen, ScreenSettings::default());
     assert_eq!(reference.feed, FeedSettings { inputs: reference.feed.inputs.clone(), ..FeedSettings::default() });
     Config::load("config/demo.toml".as_ref()).unwrap_or_else(|errors| panic!("{errors}"));
 }

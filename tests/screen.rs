@@ -6,6 +6,8 @@ mod sample;
 #[path = "screen/stage.rs"]
 mod stage;
 
+#[path = "screen/alarms.rs"]
+mod alarms;
 #[path = "screen/drawings.rs"]
 mod drawings;
 #[path = "screen/keys.rs"]
@@ -18,3 +20,6 @@ mod pty;
 mod terminal;
 #[path = "screen/unbreakable.rs"]
 mod unbreakable;
+#[cfg(unix)]
+#[path = "screen/watching.rs"]
+mod watching;

@@ -133,6 +133,11 @@ impl State {
         Self::ALL.into_iter().find(|state| state.word() == word)
     }
 
+    /// Waits for the operator to say that he has seen it.
+    pub fn calls(self) -> bool {
+        matches!(self, Self::Unacknowledged | Self::ReturnedUnacknowledged)
+    }
+
     /// Raised, and shown as such.
     pub fn is_standing(self) -> bool {
         matches!(self, Self::Unacknowledged | Self::Acknowledged)

@@ -12,6 +12,7 @@ use tokio::sync::watch;
 
 use super::{Failure, assess::Sources, inputs, stage};
 use crate::{
+    alarm::Board,
     config::Config,
     desk::Desk,
     feed::{Channels, Holder, Monitor},
@@ -22,9 +23,6 @@ use crate::{
         state::parse_time,
     },
 };
-
-/// Orders that wait at most.
-const ORDERS_WAITING: usize = 64;
 
 /// Options of `replay`.
 #[derive(Debug, Args)]
@@ -70,7 +68,7 @@ pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Resu
     if !stdout().is_terminal() {
         return summarise(config, &recording, &channels, desk, holder);
     }
-    let mut player = Player::new(recording.clone(), channels.clone(), holder, desk)?;
+    let mut player = Player::new(recording.clone(), channels.clone(), holder, desk, Board::new(config))?;
     let Some(first) = player.next_time() else {
         let findings = player.monitor().inputs().into_iter().flat_map(|input| input.tally.findings());
         let findings: Vec<_> = findings.collect();
@@ -81,14 +79,14 @@ pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Resu
     let at = start.at.as_deref().map(|text| parse_time(text, config.time_zone, first)).transpose()?;
 
     let (sender, parcels) = watch::channel(None);
-    let (orders, taken) = sync_channel(ORDERS_WAITING);
+    let (orders, taken) = sync_channel(stage::ORDERS_WAITING);
     let mut replay = Replay::new(player, recording, &channels, sender, taken);
     let (speed, playing) = (start.speed, !start.paused);
     let connection = thread::spawn(move || {
         replay.begin(at, speed, playing);
         replay.run();
     });
-    let ending = stage::show(&stage::runtime()?, config, parcels, orders)?;
+    let ending = stage::show(&stage::runtime()?, config, parcels, move |order| orders.try_send(order).is_ok())?;
     if ending == Ending::Disconnected && connection.join().is_err() { Err(stage::fault()) } else { Ok(()) }
 }
 

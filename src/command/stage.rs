@@ -2,7 +2,7 @@
 
 use std::{
     io::{IsTerminal, stdout},
-    sync::{Arc, mpsc::SyncSender},
+    sync::Arc,
 };
 
 use tokio::{
@@ -19,6 +19,9 @@ use crate::{
         state::App,
     },
 };
+
+/// Orders that wait at most; more come faster than anybody means them.
+pub(super) const ORDERS_WAITING: usize = 64;
 
 /// Refuses where there is no terminal to draw on.
 pub(super) fn needs_terminal() -> Result<(), Failure> {
@@ -39,10 +42,11 @@ pub(super) fn show(
     runtime: &Runtime,
     config: &Config,
     parcels: watch::Receiver<Option<Parcel>>,
-    orders: SyncSender<Order>,
+    order: impl Fn(Order) -> bool,
 ) -> Result<Ending, Failure> {
-    let app = App::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
-    Ok(runtime.block_on(screen::run(app, parcels, orders))?)
+    let mut app = App::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
+    app.settings = config.screen.clone();
+    Ok(runtime.block_on(screen::run(app, parcels, order))?)
 }
 
 /// What to say of a connection that broke down.

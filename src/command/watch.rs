@@ -1,22 +1,22 @@
 //! `tautline watch`: live inputs on the screen.
 
 use std::{
-    fs,
+    env, fs,
     io::{Write, stderr},
     path::{Path, PathBuf},
-    sync::{Arc, mpsc::sync_channel},
+    sync::Arc,
     thread,
 };
 
 use clap::Args;
-use tokio::sync::watch;
+use tokio::sync::{mpsc, watch};
 
 use super::{Failure, assess::Sources, inputs, stage};
 use crate::{
     config::Config,
     desk::Desk,
     feed::{Channels, Feed, Input, Patience},
-    screen::connection::{self, Keeper},
+    screen::connection::{Duty, Keeper, Live, Revision},
 };
 
 /// Options of `watch`.
@@ -55,13 +55,17 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::new(&config.feed)))?;
     let keeper = state_file.map(|path| Keeper::open(path, &mut desk));
     keeper.iter().flat_map(Keeper::findings).for_each(say);
+    let duty = Duty::begin(&config, config.journal.path(&options.config), env::var("USER").ok())?;
     let (sender, parcels) = watch::channel(None);
+    let (orders, taken) = mpsc::channel(stage::ORDERS_WAITING);
+    let sources = options.sources;
+    let adjust = move |config: &mut Config| Sources::choose(sources, config);
+    let revision = Revision::new(&options.config, config.clone(), adjust);
+    let live = Live { feed, desk, holder, channels, revision, duty, keeper, parcels: sender, orders: taken };
     let handle = runtime.handle().clone();
-    let connection = thread::spawn(move || handle.block_on(connection::watch(feed, desk, holder, keeper, sender)));
-    // Nobody takes orders: a live feed cannot be played.
-    let (orders, _) = sync_channel(1);
-    let ending = stage::show(&runtime, &config, parcels, orders);
-    // It ends with the screen, once what was learned is kept.
+    let connection = thread::spawn(move || handle.block_on(live.run()));
+    let ending = stage::show(&runtime, &config, parcels, move |order| orders.try_send(order).is_ok());
+    // It ends with the screen, once the journal is closed and what was learned is kept.
     let kept = connection.join();
     // A thread that waits for standard input cannot be stopped, nor need it be waited for.
     runtime.shutdown_background();

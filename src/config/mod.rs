@@ -14,6 +14,7 @@ pub(crate) mod given;
 mod journal;
 pub(crate) mod limits;
 mod names;
+mod screen;
 pub(crate) mod section;
 pub(crate) mod wording;
 
@@ -24,6 +25,7 @@ use chrono_tz::{TZ_VARIANTS, Tz};
 
 pub use error::{ConfigError, ConfigErrors};
 pub use journal::JournalSettings;
+pub use screen::ScreenSettings;
 
 use crate::{alarm::Definition, grid::Grid};
 use check::GridNames;
@@ -56,6 +58,8 @@ pub struct Config {
     pub alarms: Vec<Vec<Definition>>,
     /// Where the journal is kept.
     pub journal: JournalSettings,
+    /// How the screen calls for attention.
+    pub screen: ScreenSettings,
     /// Where `watch` keeps what it learned, from this file's folder (`[learning] state_file`).
     pub state_file: Option<String>,
 }
@@ -180,9 +184,10 @@ fn read(mut root: Section<'_>) -> Config {
         measurement: measurement(root.section("measurement")),
         feed: feed(root.section("feed")),
         channel_names: channels::read(root.section("channels"), &grid, &names),
-        learning: learning(learned),
         alarms: alarm::all(&mut root, &grid, alarms),
         journal: journal::read(root.section("journal")),
+        screen: screen::read(root.section("screen")),
+        learning: learning(learned),
         state_file,
         grid,
     }

@@ -33,6 +33,30 @@ impl Desk {
         Self { corridors: Self::new(config, channels).corridors.into_iter().map(CorridorDesk::detailed).collect() }
     }
 
+    /// Goes on under another configuration, with channels that came from its own by [`Channels::extended`]. A corridor
+    /// that is the same in it goes on as if nothing had happened; of another, what was learned stays where its configured
+    /// sources are the same.
+    #[must_use]
+    pub fn reconfigured(mut self, before: &Config, after: &Config, channels: &Arc<Channels>) -> Self {
+        let is_same = before.grid.frequency_hz.to_bits() == after.grid.frequency_hz.to_bits()
+            && before.measurement == after.measurement
+            && before.learning == after.learning;
+        let mut desk = Self::detailed(after, channels);
+        for new in &mut desk.corridors {
+            let Some(index) = self.corridors.iter().position(|old| old.corridor().name == new.corridor().name) else {
+                continue;
+            };
+            let old = self.corridors.swap_remove(index);
+            if is_same && old.corridor() == new.corridor() {
+                *new = old;
+            } else if let Some(memory) = old.learner().memory() {
+                // Other configured sources are learned anew.
+                let _other = new.learner_mut().recall(&memory);
+            }
+        }
+        desk
+    }
+
     /// Every corridor at a snapshot, in order.
     pub fn assess(&mut self, snapshot: &Snapshot) -> Vec<Assessment> {
         self.corridors.iter_mut().map(|corridor| corridor.assess(snapshot)).collect()

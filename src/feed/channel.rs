@@ -132,25 +132,41 @@ pub struct Channels {
 impl Channels {
     /// All channels of all corridors; a bus that two corridors share has one set.
     pub fn new(config: &Config) -> Self {
-        let mut channels = Self {
+        let none = Self {
             names: Vec::new(),
             is_status: Vec::new(),
             plausible: Vec::new(),
             by_feed_name: HashMap::new(),
             by_name: HashMap::new(),
         };
+        none.extended(config)
+    }
+
+    /// The channels of another configuration. Each slot keeps its meaning, so that frames under way stay right; those that
+    /// the configuration no longer knows are read no more.
+    #[must_use]
+    pub fn extended(&self, config: &Config) -> Self {
+        let mut channels = Self { by_feed_name: HashMap::new(), ..self.clone() };
+        let mut told = vec![false; channels.names.len()];
         for corridor in &config.grid.corridors {
             for point in Point::of(corridor) {
                 let name: Arc<str> = point.name(corridor).into();
                 let plausible = point.plausible(corridor);
-                if let Some(&slot) = channels.by_name.get(&name) {
+                let known = channels.by_name.get(&name).copied();
+                if let Some(slot) = known.filter(|slot| told[*slot]) {
                     let known = &mut channels.plausible[slot];
                     *known = known.start().min(*plausible.start())..=known.end().max(*plausible.end());
                     continue;
                 }
-                let slot = channels.names.len();
+                let slot = known.unwrap_or(channels.names.len());
                 let feed_name = config.channel_names.get(&*name).map_or_else(|| name.clone(), |n| n.as_str().into());
                 channels.by_feed_name.insert(feed_name, slot);
+                if known.is_some() {
+                    told[slot] = true;
+                    channels.plausible[slot] = plausible;
+                    continue;
+                }
+                told.push(true);
                 channels.by_name.insert(name.clone(), slot);
                 channels.is_status.push(matches!(point, Point::Closed(_) | Point::Inserted(_)));
                 channels.plausible.push(plausible);

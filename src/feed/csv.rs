@@ -10,6 +10,8 @@ pub(super) struct Rows {
     cells: Cells,
     /// `None` before the header; empty below a header that cannot be used.
     columns: Option<Vec<Column>>,
+    /// The header's names.
+    names: Vec<String>,
 }
 
 #[derive(Debug)]
@@ -23,7 +25,14 @@ enum Column {
 impl Rows {
     /// The next line is the header.
     pub fn new() -> Self {
-        Self { cells: Cells::new(), columns: None }
+        Self { cells: Cells::new(), columns: None, names: Vec::new() }
+    }
+
+    /// Goes on under other channels.
+    pub fn rewire(&mut self, channels: &Channels) {
+        if let Some(columns) = self.columns.as_mut().filter(|columns| !columns.is_empty()) {
+            *columns = header(&self.names, channels);
+        }
     }
 
     /// Takes the next line; the header brings no frame.
@@ -39,16 +48,18 @@ impl Rows {
         if let Some(columns) = &self.columns {
             return row(columns, &self.cells, channels, draft, tally).map(Some);
         }
-        let columns = header(&self.cells, channels);
+        self.names = self.cells.iter().map(ToOwned::to_owned).collect();
+        let columns = header(&self.names, channels);
         let times = columns.iter().filter(|column| matches!(column, Column::Time)).count();
         self.columns = Some(if times == 1 { columns } else { Vec::new() });
         if times == 1 { Ok(None) } else { Err(LineError::Header) }
     }
 }
 
-fn header(cells: &Cells, channels: &Channels) -> Vec<Column> {
-    cells
+fn header(names: &[String], channels: &Channels) -> Vec<Column> {
+    names
         .iter()
+        .map(String::as_str)
         .map(|name| {
             let quality_of = || name.strip_suffix(".quality").and_then(|channel| channels.in_feed(channel));
             if name == "time" {

@@ -15,6 +15,7 @@ use super::{
     merge::{Lane, Merger},
     opening::Opening,
     stream::Outlet,
+    switch::Switch,
 };
 use crate::config::FeedSettings;
 
@@ -65,6 +66,7 @@ pub struct Feed {
     /// Lanes of clients that connect; `None` once there cannot be any more.
     new_lanes: Option<mpsc::Receiver<Lane<Inlet>>>,
     merger: Merger,
+    switch: Switch,
     patience: Patience,
     any_live: bool,
     monitor: Monitor,
@@ -92,7 +94,8 @@ impl Feed {
     /// Opens all inputs and starts to read them; to be called inside a tokio runtime.
     pub async fn open(inputs: &[Input], channels: &Arc<Channels>, patience: Patience) -> Result<Self, OpenError> {
         let (lane_sender, new_lanes) = mpsc::channel(1);
-        let mut opening = Opening::new(channels, patience.once, lane_sender);
+        let switch = Switch::new(channels);
+        let mut opening = Opening::new(channels, &switch, patience.once, lane_sender);
         let any_live = inputs.iter().any(Input::is_live);
         for input in inputs {
             let is_live = input.is_live() || (*input == Input::Stdin && any_live);
@@ -102,11 +105,19 @@ impl Feed {
             lanes: opening.lanes,
             new_lanes: Some(new_lanes),
             merger: Merger::new(channels),
+            switch,
             patience,
             any_live,
             monitor: Monitor(opening.gauges.into()),
             _tasks: opening.tasks,
         })
+    }
+
+    /// Reads what follows with other channels, which came from these by [`Channels::extended`]. No frame is lost or
+    /// doubled: what was read before is as it was.
+    pub fn rewire(&mut self, channels: &Arc<Channels>) {
+        self.merger.rewire(channels);
+        self.switch.set(channels);
     }
 
     /// How the inputs are doing.

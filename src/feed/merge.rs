@@ -31,6 +31,11 @@ impl Merger {
         Self { latest: None, places: Places::new(channels) }
     }
 
+    /// Goes on under more channels.
+    pub fn rewire(&mut self, channels: &Channels) {
+        self.places = Places::new(channels);
+    }
+
     /// Takes the earliest frame that waits, and joins others of the same time to it.
     ///
     /// `None` when nothing waits, and when the earliest is late, or beyond the horizon: then it is counted and dropped.

@@ -20,6 +20,7 @@ mod places;
 mod recorded;
 mod snapshot;
 mod stream;
+mod switch;
 mod tally;
 
 pub use crate::grid::End;

@@ -12,12 +12,14 @@ use super::{
     merge::Lane,
     monitor::Gauge,
     stream::{Closed, Queue, Strand, Stream},
+    switch::Switch,
 };
 
 /// Opens inputs one after another, each read by a task of its own.
 #[derive(Debug)]
 pub(super) struct Opening<'a> {
     channels: &'a Arc<Channels>,
+    switch: Switch,
     once: bool,
     lane_sender: mpsc::Sender<Lane<Inlet>>,
     pub lanes: Vec<Lane<Inlet>>,
@@ -26,8 +28,14 @@ pub(super) struct Opening<'a> {
 }
 
 impl<'a> Opening<'a> {
-    pub fn new(channels: &'a Arc<Channels>, once: bool, lane_sender: mpsc::Sender<Lane<Inlet>>) -> Self {
-        Self { channels, once, lane_sender, lanes: Vec::new(), gauges: Vec::new(), tasks: JoinSet::new() }
+    pub fn new(
+        channels: &'a Arc<Channels>,
+        switch: &Switch,
+        once: bool,
+        lane_sender: mpsc::Sender<Lane<Inlet>>,
+    ) -> Self {
+        let switch = switch.clone();
+        Self { channels, switch, once, lane_sender, lanes: Vec::new(), gauges: Vec::new(), tasks: JoinSet::new() }
     }
 
     pub async fn open(&mut self, input: &Input, is_live: bool) -> io::Result<()> {
@@ -63,8 +71,9 @@ impl<'a> Opening<'a> {
                 let listener = TcpListener::bind((&*address.host, address.port)).await?;
                 let gauge = Gauge::new(&input.to_string());
                 gauge.lock().address = listener.local_addr().ok();
-                let (channels, of_clients) = (self.channels.clone(), gauge.clone());
-                let stream = move || Stream::new(Format::JsonLines, channels.clone(), of_clients.clone());
+                let (channels, of_clients, switch) = (self.channels.clone(), gauge.clone(), self.switch.clone());
+                let stream =
+                    move || Stream::new(Format::JsonLines, channels.clone(), of_clients.clone()).with(switch.clone());
                 let lanes = self.lane_sender.clone();
                 self.gauges.push(gauge.clone());
                 self.spawn(gauge, listen::tcp(listener, lanes, once, stream));
@@ -74,7 +83,8 @@ impl<'a> Opening<'a> {
     }
 
     /// Reads on a thread that may block.
-    fn read(&mut self, mut reader: Reader, is_live: bool) {
+    fn read(&mut self, reader: Reader, is_live: bool) {
+        let mut reader = reader.with(self.switch.clone());
         let queue = self.lane(reader.gauge().clone(), is_live);
         self.tasks.spawn_blocking(move || {
             while let Some(frames) = reader.next_frames() {
@@ -88,7 +98,8 @@ impl<'a> Opening<'a> {
     fn strand(&mut self, input: &Input, format: Format) -> (Strand, Arc<Gauge>) {
         let gauge = Gauge::new(&input.to_string());
         let queue = self.lane(gauge.clone(), true);
-        (Strand { stream: Stream::new(format, self.channels.clone(), gauge.clone()), queue }, gauge)
+        let stream = Stream::new(format, self.channels.clone(), gauge.clone()).with(self.switch.clone());
+        (Strand { stream, queue }, gauge)
     }
 
     fn lane(&mut self, gauge: Arc<Gauge>, is_live: bool) -> Queue {

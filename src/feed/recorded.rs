@@ -12,6 +12,7 @@ use super::{
     merge::{Lane, Merger},
     monitor::Gauge,
     stream::{CHUNK_BYTES, Stream},
+    switch::Switch,
 };
 
 /// Recorded frames of one or more sources, merged by time, read as they are asked for.
@@ -87,6 +88,11 @@ impl Reader {
     pub fn new(name: &str, bytes: impl Read + Send + 'static, format: Format, channels: &Arc<Channels>) -> Self {
         let stream = Stream::new(format, channels.clone(), Gauge::new(name));
         Self { bytes: Bytes::Unopened(Box::new(bytes)), chunk: vec![0; CHUNK_BYTES], stream }
+    }
+
+    /// The same, reading with the channels in force.
+    pub(super) fn with(self, switch: Switch) -> Self {
+        Self { stream: self.stream.with(switch), ..self }
     }
 
     pub(super) fn gauge(&self) -> &Arc<Gauge> {

@@ -38,6 +38,13 @@ impl Holder {
         }
     }
 
+    /// Goes on under channels that came from its own by [`Channels::extended`]: what is held stays.
+    pub fn rewire(&mut self, channels: &Channels, max_age: TimeDelta) {
+        self.max_age = max_age;
+        self.is_status = (0..channels.len()).map(|slot| channels.is_status(slot)).collect();
+        self.last.resize(channels.len(), None);
+    }
+
     /// Takes a frame in; `None` when it is older than the one before it, which changes nothing.
     pub fn take(&mut self, frame: &Frame) -> Option<Snapshot> {
         if self.latest.is_some_and(|latest| frame.time < latest) {
@@ -50,14 +57,20 @@ impl Holder {
                 self.last[slot] = Some((frame.time, reading));
             }
         }
+        self.snapshot()
+    }
+
+    /// What stands at the time of the latest frame; `None` before the first.
+    pub fn snapshot(&self) -> Option<Snapshot> {
+        let time = self.latest?;
         let readings = self
             .last
             .iter()
             .zip(&self.is_status)
             .map(|(last, is_status)| {
-                last.filter(|(since, _)| *is_status || frame.time - *since <= self.max_age).map(|(_, reading)| reading)
+                last.filter(|(since, _)| *is_status || time - *since <= self.max_age).map(|(_, reading)| reading)
             })
             .collect();
-        Some(Snapshot { time: frame.time, readings })
+        Some(Snapshot { time, readings })
     }
 }

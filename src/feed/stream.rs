@@ -5,7 +5,7 @@ use tokio::{
     sync::mpsc,
 };
 
-use super::{Channels, Decoder, Format, Frame, monitor::Gauge};
+use super::{Channels, Decoder, Format, Frame, monitor::Gauge, switch::Switch};
 
 /// Bytes read at once.
 pub(super) const CHUNK_BYTES: usize = 1 << 16;
@@ -17,13 +17,20 @@ const QUEUE: usize = 8;
 pub(super) struct Stream {
     format: Format,
     channels: Arc<Channels>,
+    /// Brings other channels while it is read.
+    switch: Option<Switch>,
     decoder: Decoder,
     pub gauge: Arc<Gauge>,
 }
 
 impl Stream {
     pub fn new(format: Format, channels: Arc<Channels>, gauge: Arc<Gauge>) -> Self {
-        Self { format, decoder: Decoder::new(format, channels.clone()), channels, gauge }
+        Self { format, decoder: Decoder::new(format, channels.clone()), channels, switch: None, gauge }
+    }
+
+    /// The same, reading with the channels in force.
+    pub fn with(self, switch: Switch) -> Self {
+        Self { switch: Some(switch), ..self }
     }
 
     /// Forgets a line that has begun, and a header: another file starts.
@@ -33,6 +40,10 @@ impl Stream {
 
     /// The frames that these bytes complete.
     pub fn push(&mut self, bytes: &[u8]) -> Vec<Frame> {
+        if let Some(channels) = self.switch.as_ref().and_then(|switch| switch.other_than(&self.channels)) {
+            self.decoder.rewire(channels.clone());
+            self.channels = channels;
+        }
         let mut frames = Vec::new();
         let mut status = self.gauge.lock();
         status.last_arrival = Some(Instant::now());

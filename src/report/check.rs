@@ -17,7 +17,7 @@ pub struct Understood<'a>(pub &'a Config);
 
 impl fmt::Display for Understood<'_> {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let Config { grid, time_zone, measurement, feed, channel_names, learning, alarms, journal, state_file } =
+        let Config { grid, time_zone, measurement, feed, channel_names, learning, alarms, journal, screen, state_file } =
             self.0;
         writeln!(f, "{} at {} Hz", counted(grid.corridors.len(), "corridor"), grid.frequency_hz)?;
         for (corridor, alarms) in grid.corridors.iter().zip(alarms) {
@@ -34,13 +34,23 @@ impl fmt::Display for Understood<'_> {
             "    standard deviations: kV {} %, angles {}°, MW and Mvar {} % of thermal MVA",
             measurement.kv_sigma_pct, measurement.angle_sigma_deg, measurement.power_sigma_pct
         )?;
+        writeln!(f, "    journal: entries are kept for {} days", journal.keep_days)?;
+        let bell: Vec<_> = screen.bell.iter().map(|priority| priority.word()).collect();
+        let bell =
+            if bell.is_empty() { "no alarm".to_owned() } else { format!("alarms of priority {}", bell.join(", ")) };
+        writeln!(
+            f,
+            "    screen: the bell rings for {bell}; {}",
+            if screen.blink { "new alarms blink" } else { "nothing blinks" }
+        )?;
+        let applied = if screen.apply_changes { "applied at once" } else { "shown first, and applied by a key" };
+        writeln!(f, "    a change of this file while watching is {applied}")?;
         if learning.enabled {
             let kept = state_file.as_deref().unwrap_or("a file beside the configuration");
             writeln!(f, "    sources: learned from steps; watch keeps them in {kept}")?;
         } else {
             writeln!(f, "    sources: as configured")?;
         }
-        writeln!(f, "    journal: entries are kept for {} days", journal.keep_days)?;
         writeln!(f, "    times shown in {}", time_zone.name())
     }
 }

@@ -1,4 +1,7 @@
-use std::{io, sync::mpsc::SyncSender, time::Duration};
+use std::{
+    io::{self, Write, stdout},
+    time::Duration,
+};
 
 use crossterm::event::{Event, EventStream, KeyCode, KeyModifiers, MouseEventKind};
 use futures::StreamExt;
@@ -26,11 +29,11 @@ pub enum Ending {
     Disconnected,
 }
 
-/// Shows what comes in until the user leaves or a signal ends it.
+/// Shows what comes in until the user leaves or a signal ends it. An order is refused with `false`.
 pub async fn run(
     mut app: App,
     mut parcels: watch::Receiver<Option<Parcel>>,
-    orders: SyncSender<Order>,
+    order: impl Fn(Order) -> bool,
 ) -> io::Result<Ending> {
     let theme = Theme::from_environment();
     let mut interrupted = signal(SignalKind::interrupt())?;
@@ -53,9 +56,12 @@ pub async fn run(
                 Some(Ok(event)) => match answer(&mut app, &event) {
                     Answer::Nothing => continue,
                     Answer::Drawing => {}
+                    Answer::Order(wanted) => {
+                        if !order(wanted) {
+                            app.refused();
+                        }
+                    }
                     Answer::Suspend => suspend()?,
-                    // A full queue means that orders are coming faster than anybody means them.
-                    Answer::Order(order) => drop(orders.try_send(order)),
                 },
                 Some(Err(error)) => return Err(error),
                 None => break,
@@ -71,6 +77,10 @@ pub async fn run(
                 let mut drawn = None;
                 screen.terminal.draw(|frame| drawn = Some(view::draw(frame, &app, theme)))?;
                 app.drawn = drawn.unwrap_or_default();
+                if app.rings() {
+                    stdout().write_all(b"\x07")?;
+                    stdout().flush()?;
+                }
                 pace.done(std::time::Instant::now());
                 continue;
             }

@@ -59,6 +59,7 @@ fn enter() -> io::Result<()> {
 
 /// Puts everything back; harmless when there is nothing to put back, and silent when the terminal is gone.
 pub(super) fn give_back() {
-    let _ = execute!(stdout(), DisableMouseCapture, ResetColor, Show, LeaveAlternateScreen);
+    // Who sees the last of it sees a terminal that is whole.
     let _ = disable_raw_mode();
+    let _ = execute!(stdout(), DisableMouseCapture, ResetColor, Show, LeaveAlternateScreen);
 }

@@ -2,7 +2,7 @@
 
 use ratatui::style::{Color, Modifier};
 use tautline::screen::{
-    connection::{FeedReport, Order, Origin, Parcel},
+    connection::{AlarmReport, FeedReport, Order, Origin, Parcel, Scene},
     state::{App, Chronicle},
 };
 
@@ -11,9 +11,9 @@ use crate::{
     stage::{self, draw, live, press, replay, text},
 };
 
-const SIZES: [(u16, u16); 3] = [(80, 24), (120, 40), (200, 60)];
+pub const SIZES: [(u16, u16); 3] = [(80, 24), (120, 40), (200, 60)];
 
-fn snapshot(name: &str, app: App) {
+pub fn snapshot(name: &str, app: App) {
     snapshot_at(name, app, &SIZES);
 }
 
@@ -131,7 +131,13 @@ fn nothing_to_show_is_explained() {
 
     let mut ended = new();
     let feed = FeedReport { ended: true, ..FeedReport::default() };
-    ended.receive(Parcel { chronicle: Chronicle::default(), feed, origin: Origin::Live });
+    ended.receive(Parcel {
+        chronicle: Chronicle::default(),
+        alarms: AlarmReport::default(),
+        scene: Scene::default(),
+        feed,
+        origin: Origin::Live,
+    });
     assert!(text(&draw(&mut ended, 80, 24, true)).contains("ended without a single frame"));
 
     let mut silent = live(vec![sample::ample()]);

@@ -7,9 +7,10 @@ use chrono_tz::Tz;
 use crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
 use ratatui::{Terminal, backend::TestBackend, buffer::Buffer};
 use tautline::{
+    alarm::{Board, CorridorBoard, Definition, Kind, built_in},
     desk::Assessment,
     screen::{
-        connection::{FeedReport, InputReport, Order, Origin, Parcel, Playback},
+        connection::{AlarmReport, Alarms, FeedReport, InputReport, Order, Origin, Parcel, Playback, Scene},
         state::{App, Chronicle, Strip},
         view::{self, Theme},
     },
@@ -22,7 +23,9 @@ use super::sample;
 pub fn live(assessments: Vec<Assessment>) -> App {
     let names: Vec<_> = assessments.iter().map(|assessment| &*assessment.corridor).collect();
     let mut app = App::new(sample::grid(&names), Tz::UTC, TimeDelta::seconds(10));
-    app.receive(Parcel { chronicle: played(&assessments), feed: feed(), origin: Origin::Live });
+    let (chronicle, alarms) = played(&app, &assessments);
+    let alarms = AlarmReport { alarms, ..AlarmReport::default() };
+    app.receive(Parcel { chronicle, alarms, scene: Scene::default(), feed: feed(), origin: Origin::Live });
     app.clock = Instant::now();
     app
 }
@@ -51,8 +54,13 @@ pub fn replay(assessments: Vec<Assessment>) -> App {
 
 const HISTORY_S: i64 = 7200;
 
-fn played(assessments: &[Assessment]) -> Chronicle {
+fn played(app: &App, assessments: &[Assessment]) -> (Chronicle, Alarms) {
     let mut chronicle = Chronicle::default();
+    // A frame a minute would be silence.
+    let heard = |definition: &Definition| definition.kind != Kind::DataAge;
+    let definitions = |corridor| built_in(corridor).into_iter().filter(heard).collect::<Vec<_>>();
+    let corridors = app.grid.corridors.iter().map(|corridor| CorridorBoard::new(corridor, &definitions(corridor)));
+    let mut alarms = Alarms::new(Board { corridors: corridors.collect() });
     for minute in 0..=HISTORY_S / 60 {
         let fade = (HISTORY_S / 60 - minute) as f64;
         let mut frame = assessments.to_vec();
@@ -65,9 +73,10 @@ fn played(assessments: &[Assessment]) -> Chronicle {
                 }
             }
         }
+        alarms.observe(&frame);
         chronicle.take(frame);
     }
-    chronicle
+    (chronicle, alarms)
 }
 
 fn feed() -> FeedReport {

@@ -11,7 +11,7 @@ fn files() -> (PathBuf, PathBuf) {
     (case.join("config.toml"), case.join("frames.jsonl"))
 }
 
-fn tautline() -> Command {
+pub fn tautline() -> Command {
     let mut command = Command::new(env!("CARGO_BIN_EXE_tautline"));
     command.env_remove("NO_COLOR");
     command
@@ -46,6 +46,13 @@ fn keys_and_signals_give_the_terminal_back() {
 #[test]
 fn watching_a_file_shows_it_and_says_when_it_has_ended() {
     let (config, frames) = files();
+    // The journal goes beside the configuration.
+    let folder = tempfile::tempdir().unwrap();
+    let config = {
+        let copy = folder.path().join("config.toml");
+        fs::copy(config, &copy).unwrap();
+        copy
+    };
     let mut command = tautline();
     command.arg("watch").arg("--no-state").arg("--config").arg(config).arg("--input").arg(frames);
     let mut stage = Stage::new(command);

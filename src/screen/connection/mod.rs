@@ -3,6 +3,8 @@
 //! What is sent is always the whole present, in a [`Parcel`] that is cheap to clone. Only the newest is kept, so a
 //! slow screen never slows the desk, and a fast desk never floods the screen.
 
+mod alarms;
+mod duty;
 mod keeper;
 mod live;
 mod parcel;
@@ -10,10 +12,14 @@ mod player;
 mod recording;
 mod replay;
 mod report;
+mod revision;
 
+pub use alarms::{AlarmKey, AlarmOrder, AlarmReport, Alarms, LOG_KEPT, Seen, Wish};
+pub use duty::Duty;
 pub use keeper::Keeper;
-pub use live::watch;
-pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Seeking};
+pub use live::Live;
+pub use parcel::{FeedReport, InputReport, Order, Origin, Parcel, Playback, SPEEDS, Scene, Seeking, Setting};
 pub use player::{Goal, Place, Player};
 pub use recording::{Extent, Recording};
 pub use replay::Replay;
+pub use revision::{Change, Revision};

@@ -1,18 +1,50 @@
 use std::{sync::Arc, time::Instant};
 
 use chrono::{DateTime, TimeDelta, Utc};
+use chrono_tz::Tz;
 
-use crate::screen::state::{Chronicle, Strip};
+use super::{AlarmOrder, AlarmReport, Change};
+use crate::{
+    config::ScreenSettings,
+    grid::Grid,
+    screen::state::{Chronicle, Strip},
+};
 
 /// Everything a screen shows, as it stands.
 #[derive(Debug, Clone)]
 pub struct Parcel {
     /// The corridors, and what became of them so far.
     pub chronicle: Chronicle,
+    /// Their alarms.
+    pub alarms: AlarmReport,
+    /// What is watched, and what a changed file would change of it.
+    pub scene: Scene,
     /// How the feed does.
     pub feed: FeedReport,
     /// Live or recorded.
     pub origin: Origin,
+}
+
+/// What is watched, where that can change meanwhile.
+#[derive(Debug, Clone, Default)]
+pub struct Scene {
+    /// What has come into force since the start.
+    pub setting: Option<Arc<Setting>>,
+    /// What a changed configuration file would bring.
+    pub change: Option<Arc<Change>>,
+}
+
+/// What a screen needs to know of a configuration.
+#[derive(Debug)]
+pub struct Setting {
+    /// What is watched.
+    pub grid: Arc<Grid>,
+    /// Zone for display.
+    pub zone: Tz,
+    /// How long a value stands.
+    pub max_age: TimeDelta,
+    /// How to call for attention.
+    pub screen: ScreenSettings,
 }
 
 /// Where the frames come from.
@@ -88,8 +120,8 @@ pub struct Seeking {
     pub done: f64,
 }
 
-/// What the screen asks of a recording.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+/// What the screen asks for; most of it can be asked of a recording only.
+#[derive(Debug, Clone, PartialEq, Eq)]
 pub enum Order {
     /// Play or pause.
     Toggle,
@@ -107,6 +139,10 @@ pub enum Order {
     Seek(DateTime<Utc>),
     /// Stop seeking where we are.
     Cancel,
+    /// Apply the change of this number, live.
+    Apply(u64),
+    /// Something with alarms, also live.
+    Alarm(AlarmOrder),
 }
 
 /// The speeds that keys step through.

@@ -2,8 +2,9 @@ use std::{io, iter::Peekable, sync::Arc};
 
 use chrono::{DateTime, Utc};
 
-use super::Recording;
+use super::{Alarms, Recording, Wish};
 use crate::{
+    alarm::{Board, Refusal},
     desk::Desk,
     feed::{Channels, Holder, Monitor, Recorded},
     screen::state::{Chronicle, Strip},
@@ -21,6 +22,8 @@ pub struct Place {
     pub time: Option<DateTime<Utc>>,
     /// What the corridors came to.
     pub chronicle: Chronicle,
+    /// How their alarms stand.
+    pub alarms: Alarms,
     holder: Holder,
     desk: Desk,
 }
@@ -52,12 +55,19 @@ pub struct Player {
 
 impl Player {
     /// At the start of a recording.
-    pub fn new(recording: Recording, channels: Arc<Channels>, holder: Holder, desk: Desk) -> io::Result<Self> {
+    pub fn new(
+        recording: Recording,
+        channels: Arc<Channels>,
+        holder: Holder,
+        desk: Desk,
+        board: Board,
+    ) -> io::Result<Self> {
         let frames = recording.open(&channels)?;
         let (monitor, frames) = (frames.monitor().clone(), frames.peekable());
         // A place holds what every corridor remembers, which may be a few hundred kilobytes each.
         let kept_max = (400 / desk.corridors.len().max(1)).clamp(8, 96);
-        let here = Place { taken: 0, time: None, chronicle: Chronicle::default(), holder, desk };
+        let here =
+            Place { taken: 0, time: None, chronicle: Chronicle::default(), alarms: Alarms::new(board), holder, desk };
         let kept = vec![here.clone()];
         Ok(Self { channels, recording, frames, monitor, here, kept, kept_max, spacing: SPACING, seen: Arc::default() })
     }
@@ -89,13 +99,28 @@ impl Player {
         here.taken += 1;
         here.time = Some(frame.time);
         if let Some(snapshot) = here.holder.take(&frame) {
-            here.chronicle.take(here.desk.assess(&snapshot));
+            let assessments = here.desk.assess(&snapshot);
+            here.alarms.observe(&assessments);
+            here.chronicle.take(assessments);
             if let Some(worst) = here.chronicle.worst() {
                 Arc::make_mut(&mut self.seen).take(frame.time, worst);
             }
         }
         self.keep();
         true
+    }
+
+    /// Takes in that time has passed without a frame.
+    pub fn elapse(&mut self, now: DateTime<Utc>) {
+        self.here.alarms.elapse(now);
+    }
+
+    /// Does something with alarms. What was kept of the recording beyond here knows nothing of it, and is forgotten.
+    pub fn obey(&mut self, wish: &Wish) -> Result<(), Refusal> {
+        self.here.alarms.obey(wish, None)?;
+        let taken = self.here.taken;
+        self.kept.retain(|place| place.taken <= taken);
+        Ok(())
     }
 
     fn keep(&mut self) {
@@ -198,7 +223,7 @@ mod tests {
         let channels = Arc::new(Channels::new(&config));
         let holder = Holder::new(&channels, TimeDelta::seconds(10));
         let desk = Desk::detailed(&config, &channels);
-        (Player::new(Recording::Files(vec![path.clone()]), channels, holder, desk).unwrap(), path)
+        (Player::new(Recording::Files(vec![path.clone()]), channels, holder, desk, Board::new(&config)).unwrap(), path)
     }
 
     fn go(player: &mut Player, goal: Goal) {
@@ -212,7 +237,7 @@ mod tests {
     fn seen(player: &Player) -> String {
         let here = player.here();
         let tracks: Vec<_> = here.chronicle.tracks.iter().map(|track| format!("{track:?}")).collect();
-        format!("{} {:?} {tracks:?} {:?}", here.taken, here.time, here.chronicle.events)
+        format!("{} {:?} {tracks:?} {:?} {:?}", here.taken, here.time, here.chronicle.events, here.alarms)
     }
 
     #[test]

@@ -10,7 +10,8 @@ use chrono::{DateTime, TimeDelta, Utc};
 use tokio::sync::watch;
 
 use super::{
-    Extent, FeedReport, Goal, InputReport, Order, Origin, Parcel, Playback, Player, Recording, SPEEDS, Seeking, report,
+    AlarmOrder, AlarmReport, Extent, FeedReport, Goal, InputReport, Order, Origin, Parcel, Playback, Player, Recording,
+    SPEEDS, Scene, Seeking, report,
 };
 use crate::feed::Channels;
 
@@ -34,6 +35,8 @@ pub struct Replay {
     seeking: Option<Seek>,
     trouble: Option<String>,
     sent: Option<Instant>,
+    /// The last order about alarms that was answered, and why it was refused.
+    answer: (u64, Option<String>),
 }
 
 /// A way under way.
@@ -73,6 +76,7 @@ impl Replay {
             seeking: None,
             trouble: None,
             sent: None,
+            answer: (0, None),
         }
     }
 
@@ -139,6 +143,8 @@ impl Replay {
             if self.clock.lag(next, self.speed) > LAG_MAX {
                 self.set_clock();
             }
+        } else if let Some(now) = self.now() {
+            self.player.elapse(now);
         }
     }
 
@@ -170,6 +176,11 @@ impl Replay {
             Order::Cancel => {
                 self.seeking = None;
                 self.set_clock();
+            }
+            // A recording is played as it was configured.
+            Order::Apply(_) => {}
+            Order::Alarm(AlarmOrder { number, wish }) => {
+                self.answer = (number, self.player.obey(&wish).err().map(|refusal| refusal.to_string()));
             }
         }
     }
@@ -234,7 +245,15 @@ impl Replay {
         let inputs = trouble.chain(report::inputs(self.player.monitor())).collect();
         let feed = FeedReport { inputs, frames: here.taken as u64, ..FeedReport::default() };
         let chronicle = here.chronicle.clone();
-        self.parcels.send_replace(Some(Parcel { chronicle, feed, origin: Origin::Replay(playback) }));
+        let (answered, refusal) = self.answer.clone();
+        let alarms = AlarmReport { alarms: here.alarms.clone(), answered, refusal, ..AlarmReport::default() };
+        self.parcels.send_replace(Some(Parcel {
+            chronicle,
+            alarms,
+            scene: Scene::default(),
+            feed,
+            origin: Origin::Replay(playback),
+        }));
     }
 }
 

@@ -51,6 +51,22 @@ impl Chronicle {
         }
     }
 
+    /// Goes on with other corridors, as they are assessed at the latest frame; those of the same name keep their past.
+    pub fn reconfigure(&mut self, assessments: Vec<Assessment>) {
+        let mut before = std::mem::take(&mut self.tracks);
+        for assessment in assessments {
+            let old = before.iter().position(|track| track.latest.corridor == assessment.corridor);
+            let old = old.map(|index| before.swap_remove(index));
+            let track = if let Some(mut track) = old {
+                Arc::make_mut(&mut track).latest = Arc::new(assessment);
+                track
+            } else {
+                Arc::new(Track::new(assessment))
+            };
+            self.tracks.push(track);
+        }
+    }
+
     /// Adds to the events, by their time.
     pub fn note(&mut self, event: Event) {
         let events = Arc::make_mut(&mut self.events);

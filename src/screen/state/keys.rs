@@ -1,16 +1,16 @@
-use std::sync::Arc;
+use std::{ops::ControlFlow, sync::Arc};
 
 use chrono::TimeDelta;
 use crossterm::event::{KeyCode, KeyEvent, KeyEventKind, KeyModifiers};
 
-use super::{App, Page, Panel, Sort, Typing, parse_time};
+use super::{App, Page, Panel, Prompt, Sort, Typing, parse_time};
 use crate::screen::connection::Order;
 
 /// Longest line that can be typed.
-const TYPED_MAX: usize = 64;
+const TYPED_MAX: usize = 200;
 
 /// Every key, with what it does: the help page prints this.
-pub const KEYS: [(&str, &[(&str, &str)]); 3] = [
+pub const KEYS: [(&str, &[(&str, &str)]); 4] = [
     (
         "Everywhere",
         &[
@@ -24,7 +24,9 @@ pub const KEYS: [(&str, &[(&str, &str)]); 3] = [
             ("b", "corridor page: back to the outage that sets the headroom"),
             ("s", "overview: as configured, or worst first"),
             ("/", "overview: show only names that contain, or a state that begins with, what you type"),
+            ("a", "alarms"),
             ("m", "messages"),
+            ("c", "what a changed configuration file would change; Enter there applies it"),
             ("?", "this help"),
             ("q  Ctrl-C", "quit"),
             ("Ctrl-Z", "suspend; `fg` brings it back"),
@@ -44,9 +46,31 @@ pub const KEYS: [(&str, &[(&str, &str)]); 3] = [
         ],
     ),
     (
+        "On the alarm page",
+        &[
+            ("y", "acknowledge the alarm under the cursor, and go to the next"),
+            ("Y", "acknowledge all that are in sight"),
+            ("z", "shelve it: for how long (at most 24h) and why"),
+            ("o", "take it out of service, and why"),
+            ("u", "bring back what is shelved or out of service"),
+            ("n", "put a note on it"),
+            ("Tab", "its history, and back"),
+            ("Enter", "open its corridor; in a replay at the moment it was raised"),
+            (
+                "/",
+                "show only corridors and alarms that contain, or a state or priority that begins with, what you type",
+            ),
+            ("v", "normal alarms too, or only those that are not"),
+        ],
+    ),
+    (
         "Mouse",
         &[
-            ("click", "choose a corridor, an outage, a part, a place on the time bar; again to open the corridor"),
+            (
+                "click",
+                "choose a corridor, an outage, an alarm, a part, a place on the time bar; again to open the corridor",
+            ),
+            ("click", "the line of alarms at the top: the alarm page"),
             ("wheel", "move up, down"),
         ],
     ),
@@ -66,10 +90,18 @@ impl App {
         if self.typing.is_some() {
             return self.type_key(key.code);
         }
+        if self.page == Page::Alarms
+            && let ControlFlow::Break(order) = self.alarm_key(key.code)
+        {
+            return order;
+        }
         match key.code {
             KeyCode::Char('q') => self.leaving = true,
             KeyCode::Char('?') => self.toggle(Page::Help),
+            KeyCode::Char('a') => self.toggle(Page::Alarms),
             KeyCode::Char('m') => self.toggle(Page::Messages),
+            KeyCode::Char('c') => self.toggle(Page::Change),
+            KeyCode::Enter if self.page == Page::Change => return self.apply(),
             KeyCode::Up | KeyCode::Char('k') => self.go(-1),
             KeyCode::Down | KeyCode::Char('j') => self.go(1),
             KeyCode::PageUp => self.go(-self.screenful()),
@@ -127,21 +159,28 @@ impl App {
     fn type_key(&mut self, code: KeyCode) -> Option<Order> {
         let typed = match self.typing.as_mut()? {
             Typing::Filter => &mut self.filter,
-            Typing::Time(text) => text,
+            Typing::Alarm(Prompt::Filter, _) => &mut self.alarms.filter,
+            Typing::Time(text) | Typing::Alarm(_, text) => text,
         };
         match code {
             KeyCode::Char(char) if typed.chars().count() < TYPED_MAX && !char.is_control() => typed.push(char),
             KeyCode::Backspace => drop(typed.pop()),
-            KeyCode::Esc if self.typing.take() == Some(Typing::Filter) => self.filter.clear(),
-            KeyCode::Enter => {
-                if let Some(Typing::Time(text)) = self.typing.take() {
+            KeyCode::Esc => match self.typing.take() {
+                Some(Typing::Filter) => self.filter.clear(),
+                Some(Typing::Alarm(Prompt::Filter, _)) => self.alarms.filter.clear(),
+                _ => {}
+            },
+            KeyCode::Enter => match self.typing.take()? {
+                Typing::Time(text) => {
                     let near = self.playback()?.now?;
                     match parse_time(&text, self.zone, near) {
                         Ok(time) => return Some(Order::Seek(time)),
                         Err(why) => self.notice = Some(why),
                     }
                 }
-            }
+                Typing::Alarm(prompt, text) => return self.alarm_typed(prompt, &text),
+                Typing::Filter => {}
+            },
             KeyCode::Up => self.go(-1),
             KeyCode::Down => self.go(1),
             _ => {}
@@ -154,6 +193,7 @@ impl App {
     pub(super) fn go(&mut self, by: isize) {
         match self.page {
             Page::Overview => self.move_in(&self.rows(), by),
+            Page::Alarms if !self.alarms.history => self.walk_alarms(by),
             Page::Corridor if self.walks_outages() => self.walk_outages(by),
             _ => {
                 let end = self.drawn.scroll_max;
@@ -200,6 +240,13 @@ impl App {
         isize::try_from(self.drawn.rows_shown.max(1)).unwrap_or(1)
     }
 
+    /// Applies what is shown, if it can be applied.
+    fn apply(&mut self) -> Option<Order> {
+        let number = self.change().filter(|change| change.is_sound).map(|change| change.number)?;
+        self.back(true);
+        Some(Order::Apply(number))
+    }
+
     pub(super) fn show(&mut self, panel: Panel) {
         self.panel = panel;
         self.scroll = 0;
@@ -210,11 +257,12 @@ impl App {
             self.outage = None;
             self.panel = Panel::Outages;
         }
+        self.alarms.history = false;
         self.page = page;
         self.scroll = 0;
     }
 
-    fn toggle(&mut self, page: Page) {
+    pub(super) fn toggle(&mut self, page: Page) {
         if self.page == page {
             self.back(true);
         } else {
@@ -231,7 +279,7 @@ impl App {
             Page::Overview if drop_filter => self.filter.clear(),
             Page::Overview => {}
             Page::Corridor => self.page = Page::Overview,
-            Page::Messages | Page::Help => self.page = self.under,
+            Page::Alarms | Page::Change | Page::Messages | Page::Help => self.page = self.under,
         }
     }
 

@@ -1,5 +1,6 @@
 //! What the screen remembers: a pure model that takes keys and parcels in and gives orders out. No terminal.
 
+mod alarms;
 mod chronicle;
 mod event;
 mod flutter;
@@ -16,6 +17,7 @@ use chrono::TimeDelta;
 use chrono_tz::Tz;
 use ratatui::layout::Size;
 
+pub use alarms::{AlarmPage, Prompt};
 pub use chronicle::{Chronicle, EVENTS_KEPT, Track};
 pub use event::{Event, criterion, severity, word};
 pub use history::{History, Strip};
@@ -25,8 +27,9 @@ pub use panel::Panel;
 pub use pointer::{Drawn, Target};
 pub use teller::Teller;
 
-use super::connection::{Origin, Parcel, Playback};
+use super::connection::{Change, Origin, Parcel, Playback, Setting};
 use crate::{
+    config::ScreenSettings,
     desk::{Assessment, OutageRecord},
     grid::{Corridor, Grid},
 };
@@ -60,10 +63,16 @@ pub struct App {
     pub panel: Panel,
     /// First line shown of a page that is longer than the screen.
     pub scroll: usize,
+    /// How to call for attention.
+    pub settings: ScreenSettings,
+    /// The alarm page.
+    pub alarms: AlarmPage,
     /// Of the terminal.
     pub size: Size,
     /// This computer's clock at the last drawing.
     pub clock: Instant,
+    /// The same when this began.
+    started: Instant,
     /// A word on the last key, until the next.
     pub notice: Option<String>,
     /// What the last drawing found out.
@@ -79,6 +88,10 @@ pub enum Page {
     Overview,
     /// One corridor.
     Corridor,
+    /// What calls for the operator.
+    Alarms,
+    /// What a changed configuration file would bring.
+    Change,
     /// What happened.
     Messages,
     /// Keys, numbers, caution.
@@ -101,12 +114,15 @@ pub enum Typing {
     Filter,
     /// A time to go to.
     Time(String),
+    /// Something about an alarm.
+    Alarm(Prompt, String),
 }
 
 impl App {
     /// Nothing known yet.
     pub fn new(grid: Arc<Grid>, zone: Tz, max_age: TimeDelta) -> Self {
         let page = if grid.corridors.len() == 1 { Page::Corridor } else { Page::Overview };
+        let started = Instant::now();
         Self {
             grid,
             zone,
@@ -121,8 +137,11 @@ impl App {
             outage: None,
             panel: Panel::Outages,
             scroll: 0,
+            settings: ScreenSettings::default(),
+            alarms: AlarmPage::default(),
             size: Size::new(80, 24),
-            clock: Instant::now(),
+            clock: started,
+            started,
             notice: None,
             drawn: Drawn::default(),
             leaving: false,
@@ -131,7 +150,27 @@ impl App {
 
     /// Takes in what the connection sent.
     pub fn receive(&mut self, parcel: Parcel) {
+        self.receive_alarms(&parcel.alarms);
+        self.receive_setting(parcel.scene.setting.as_ref());
         self.parcel = Some(parcel);
+    }
+
+    /// Takes another configuration in; the cursor stays on its corridor.
+    fn receive_setting(&mut self, setting: Option<&Arc<Setting>>) {
+        let Some(setting) = setting.filter(|setting| !Arc::ptr_eq(&setting.grid, &self.grid)) else { return };
+        let here = self.corridor().map(|corridor| corridor.name.clone());
+        (self.grid, self.zone, self.max_age) = (setting.grid.clone(), setting.zone, setting.max_age);
+        self.settings = setting.screen.clone();
+        let place = self.grid.corridors.iter().position(|corridor| Some(&corridor.name) == here.as_ref());
+        self.selected = place.unwrap_or(0);
+        if place.is_none() {
+            self.outage = None;
+        }
+    }
+
+    /// What a changed configuration file would bring.
+    pub fn change(&self) -> Option<&Change> {
+        self.parcel.as_ref()?.scene.change.as_deref()
     }
 
     /// The corridors of the overview, by their place in the configuration.
@@ -193,7 +232,8 @@ impl App {
 
     /// Whether the picture changes by the passing of time alone.
     pub fn ticks(&self) -> bool {
-        self.parcel.as_ref().is_some_and(|parcel| matches!(parcel.origin, Origin::Live) && !parcel.feed.ended)
+        let is_live = |parcel: &Parcel| matches!(parcel.origin, Origin::Live) && !parcel.feed.ended;
+        self.blinks() || self.parcel.as_ref().is_some_and(is_live)
     }
 }
 

@@ -5,7 +5,7 @@ use crossterm::event::{MouseButton, MouseEvent, MouseEventKind};
 use ratatui::layout::{Position, Rect};
 
 use super::{App, Page, Panel};
-use crate::screen::connection::Order;
+use crate::screen::connection::{Order, Seen};
 
 /// What a drawing found out that keys and the mouse need to know.
 #[derive(Debug, Clone, Default, PartialEq)]
@@ -16,6 +16,10 @@ pub struct Drawn {
     pub rows_shown: usize,
     /// Furthest that a long page scrolls.
     pub scroll_max: usize,
+    /// Alarms in sight, as they were.
+    pub alarms: Vec<Seen>,
+    /// Which of them has the cursor.
+    pub alarm_cursor: usize,
     /// What can be clicked.
     pub targets: Vec<(Rect, Target)>,
 }
@@ -27,6 +31,10 @@ pub enum Target {
     Corridor(usize),
     /// An outage of the list.
     Outage(Arc<str>),
+    /// The line of alarms.
+    Alarms,
+    /// An alarm of the list.
+    Alarm(Seen),
     /// A tab or a panel.
     Panel(Panel),
     /// A stretch of time, from the left edge to the right.
@@ -51,6 +59,10 @@ impl App {
             Target::Corridor(index) if index == self.selected => self.open(Page::Corridor),
             Target::Corridor(index) => self.selected = index,
             Target::Outage(name) => self.outage = Some(name),
+            Target::Alarms if self.page == Page::Alarms => {}
+            Target::Alarms => self.toggle(Page::Alarms),
+            Target::Alarm(seen) if self.alarms.chosen.as_ref() == Some(&seen.key) => return self.visit(&seen),
+            Target::Alarm(seen) => self.alarms.chosen = Some(seen.key),
             Target::Panel(panel) => self.show(panel),
             Target::Time(from, until) => {
                 let share = f64::from(position.x - area.x) / f64::from(area.width.max(1));

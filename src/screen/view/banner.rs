@@ -4,7 +4,7 @@ use ratatui::text::{Line, Span};
 use super::{Theme, figures, text};
 use crate::screen::{
     connection::{Playback, Seeking},
-    state::App,
+    state::{App, Page},
 };
 
 /// The one thing that must be known before any number is believed; `None` when all is well.
@@ -18,6 +18,26 @@ fn words(app: &App) -> Option<(String, bool)> {
     if let Some(notice) = &app.notice {
         return Some((notice.clone(), true));
     }
+    troubled(app).or_else(|| unwritten(app)).or_else(|| changed(app))
+}
+
+fn unwritten(app: &App) -> Option<(String, bool)> {
+    let trouble = app.alarm_report()?.journal.as_ref()?.trouble.as_ref()?;
+    Some((format!("What alarms do is kept in memory until the journal can be written again: {trouble}"), true))
+}
+
+fn changed(app: &App) -> Option<(String, bool)> {
+    app.change().filter(|_| app.page != Page::Change).map(|change| {
+        let words = if change.is_sound {
+            "The configuration file has changed: c shows what, and applies it."
+        } else {
+            "The changed configuration file is refused, what was in force stays: c shows why."
+        };
+        (words.into(), !change.is_sound)
+    })
+}
+
+fn troubled(app: &App) -> Option<(String, bool)> {
     let parcel = app.parcel.as_ref()?;
     let time = parcel.chronicle.time()?;
     if let Some(playback) = app.playback() {

@@ -2,7 +2,7 @@ use ratatui::text::{Line, Span};
 use unicode_width::UnicodeWidthStr;
 
 use super::{Theme, text};
-use crate::screen::state::{App, Page, Typing};
+use crate::screen::state::{App, Page, Prompt, Typing};
 
 /// What is being typed, else the keys of this page that fit.
 pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
@@ -11,6 +11,16 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
         Some(Typing::Time(text)) => {
             Some(("go to (14:03, 14:03:20, 2031-03-14T14:03Z)", text, "Enter goes, Esc does not"))
         }
+        Some(Typing::Alarm(Prompt::Filter, _)) => {
+            Some(("show names with, states or priorities", &app.alarms.filter, "Enter keeps it, Esc drops it"))
+        }
+        Some(Typing::Alarm(Prompt::Shelve, text)) => {
+            Some(("shelve for and why (30m switching at Velm)", text, "Enter does, Esc does not"))
+        }
+        Some(Typing::Alarm(Prompt::OutOfService, text)) => {
+            Some(("out of service because", text, "Enter does, Esc does not"))
+        }
+        Some(Typing::Alarm(Prompt::Note, text)) => Some(("note", text, "Enter keeps it, Esc does not")),
         None => None,
     };
     if let Some((what, typed, then)) = prompt {
@@ -29,6 +39,7 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
             ("Enter", "open"),
             ("s", "sort"),
             ("/", "find"),
+            ("a", "alarms"),
             ("m", "messages"),
         ],
         Page::Corridor => &[
@@ -36,9 +47,26 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
             ("Esc", "all corridors"),
             ("↑↓", if app.walks_outages() { "outage" } else { "scroll" }),
             ("Tab", "next part"),
+            ("a", "alarms"),
             ("[ ]", "corridor"),
             ("m", "messages"),
         ],
+        Page::Alarms if app.alarms.history => &[("Tab", "back"), ("↑↓", "scroll"), ("n", "note"), ("q", "quit")],
+        Page::Alarms => &[
+            ("y", "acknowledge"),
+            ("Y", "all in sight"),
+            ("z", "shelve"),
+            ("Tab", "history"),
+            ("Enter", "corridor"),
+            ("u", "bring back"),
+            ("o", "out of service"),
+            ("n", "note"),
+            ("/", "find"),
+            ("v", "normal too"),
+            ("Esc", "back"),
+            ("?", "help"),
+        ],
+        Page::Change => &[("Enter", "apply it"), ("Esc", "back"), ("↑↓", "scroll"), ("q", "quit")],
         Page::Messages | Page::Help => &[("Esc", "back"), ("↑↓", "scroll"), ("q", "quit")],
     };
     let replay: &[(&str, &str)] = match app.playback() {

@@ -12,6 +12,8 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
         Page::Overview if app.sort == Sort::WorstFirst => "worst first",
         Page::Overview => "all corridors",
         Page::Corridor => "corridor",
+        Page::Alarms => "alarms",
+        Page::Change => "configuration",
         Page::Messages => "messages",
         Page::Help => "help",
     };

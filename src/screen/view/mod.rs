@@ -1,8 +1,11 @@
 //! Pure functions of the state onto a frame.
 
 mod actions;
+mod alarm_line;
+mod alarms;
 mod banner;
 mod card;
+mod change;
 mod corridor;
 mod curves;
 mod data;
@@ -32,7 +35,7 @@ use ratatui::{
 
 pub use theme::Theme;
 
-use super::state::{App, Drawn, Page};
+use super::state::{App, Drawn, Page, Target};
 
 /// The smallest terminal that is drawn on.
 const SMALLEST: (u16, u16) = (40, 10);
@@ -47,7 +50,8 @@ pub fn draw(frame: &mut Frame, app: &App, theme: Theme) -> Drawn {
         return Drawn::default();
     }
     let banner = banner::line(app, theme, usize::from(area.width));
-    let [head, warn, body, time, foot] = Layout::vertical([
+    let [head, alarm, warn, body, time, foot] = Layout::vertical([
+        Constraint::Length(1),
         Constraint::Length(1),
         Constraint::Length(u16::from(banner.is_some())),
         Constraint::Fill(1),
@@ -57,15 +61,19 @@ pub fn draw(frame: &mut Frame, app: &App, theme: Theme) -> Drawn {
     .areas(area);
 
     frame.render_widget(header::line(app, theme, usize::from(head.width)), head);
+    frame.render_widget(alarm_line::line(app, theme, usize::from(alarm.width)), alarm);
     if let Some(banner) = banner {
         frame.render_widget(banner, warn);
     }
     let mut drawn = match app.page {
         Page::Overview => overview::draw(frame, body, app, theme),
         Page::Corridor => corridor::draw(frame, body, app, theme),
+        Page::Alarms => alarms::draw(frame, body, app, theme),
+        Page::Change => scrolled(frame, body, app.scroll, change::lines(app, theme, usize::from(body.width))),
         Page::Messages => scrolled(frame, body, app.scroll, messages::lines(app, theme, body)),
         Page::Help => scrolled(frame, body, app.scroll, help::lines(theme, usize::from(body.width))),
     };
+    drawn.targets.push((alarm, Target::Alarms));
     if let Some(playback) = app.playback() {
         drawn.targets.extend(timebar::draw(frame, time, app, playback, theme));
     }

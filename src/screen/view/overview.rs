@@ -80,7 +80,7 @@ pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
         let lines: Vec<_> = iter::once(Line::styled(title, theme.quiet())).chain(news).collect();
         frame.render_widget(Paragraph::new(lines), below);
     }
-    Drawn { first_row, rows_shown, scroll_max: 0, targets }
+    Drawn { first_row, rows_shown, targets, ..Drawn::default() }
 }
 
 /// The first row to show so that the cursor is in sight and as little as possible moves.

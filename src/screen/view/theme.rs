@@ -1,6 +1,10 @@
 use ratatui::style::{Color, Modifier, Style};
 
-use crate::{desk::State, screen::state::word};
+use crate::{
+    alarm::{self, Priority},
+    desk::State,
+    screen::state::word,
+};
 
 /// How things look. Colour is for what is abnormal, and never alone.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -42,6 +46,29 @@ impl Theme {
             (State::Spent, false) => Style::new().add_modifier(Modifier::BOLD | Modifier::REVERSED),
             (State::Blind, true) => pair(Color::Black, Color::Cyan),
             (State::Blind, false) => Style::new().add_modifier(Modifier::REVERSED),
+        }
+    }
+
+    /// Mark and word of an alarm's state, the word at most 14 cells wide: capitals while it waits to be acknowledged.
+    pub fn alarm(self, state: alarm::State) -> (&'static str, &'static str) {
+        match state {
+            alarm::State::Normal => ("·", "normal"),
+            alarm::State::Unacknowledged => ("▲", "UNACKNOWLEDGED"),
+            alarm::State::Acknowledged => ("●", "acknowledged"),
+            alarm::State::ReturnedUnacknowledged => ("△", "RETURNED UNACK"),
+            alarm::State::Shelved => ("◇", "shelved"),
+            alarm::State::Suppressed => ("○", "suppressed"),
+            alarm::State::OutOfService => ("–", "out of service"),
+        }
+    }
+
+    /// The style of a priority.
+    pub fn priority(self, priority: Priority) -> Style {
+        match priority {
+            Priority::Urgent => self.badge(State::Spent),
+            Priority::High => self.badge(State::Thin),
+            Priority::Medium => self.strong(),
+            Priority::Low => Style::new(),
         }
     }
 

@@ -3,9 +3,9 @@
 use ratatui::text::{Line, Span};
 
 use super::{
-    corridor::{Subject, heading, paragraph},
     figures::{self, deg, headroom, number},
     row::refusal,
+    subject::{Subject, heading, paragraph},
     text,
 };
 use crate::desk::Reclose;

@@ -4,7 +4,6 @@ use ratatui::{
     Frame,
     layout::{Constraint, Layout, Rect},
     text::{Line, Span},
-    widgets::Paragraph,
 };
 use unicode_width::UnicodeWidthStr;
 
@@ -12,25 +11,11 @@ use super::{
     Theme, actions, card, curves, data, network, outages,
     row::{best_action, headroom, set_by},
     ruler::{self, Ruler},
-    sources, text, trend,
+    sources,
+    subject::Subject,
+    text, trend,
 };
-use crate::{
-    desk::OutageRecord,
-    screen::state::{App, Drawn, Panel, Target, Track},
-};
-
-/// What the panels of a corridor draw from.
-#[derive(Clone, Copy)]
-pub struct Subject<'a> {
-    /// The screen's state.
-    pub app: &'a App,
-    /// The corridor over time.
-    pub track: &'a Track,
-    /// The outage looked at.
-    pub outage: Option<&'a OutageRecord>,
-    /// How things look.
-    pub theme: Theme,
-}
+use crate::screen::state::{App, Drawn, Panel, Target};
 
 /// Draws the corridor page.
 pub fn draw(frame: &mut Frame, area: Rect, app: &App, theme: Theme) -> Drawn {
@@ -177,19 +162,4 @@ fn arranged(panels: &[Panel], area: Rect, network_height: u16) -> Vec<(Panel, Re
             ]
         }
     }
-}
-
-/// A paragraph of wrapped text, ready for a panel.
-pub fn paragraph(words: &str, width: usize) -> Vec<Line<'static>> {
-    text::wrap(words, width.saturating_sub(1), 2).into_iter().map(|line| Line::raw(format!(" {line}"))).collect()
-}
-
-/// A heading inside a panel.
-pub fn heading(words: &str, theme: Theme) -> Line<'static> {
-    Line::styled(format!(" {words}"), theme.strong())
-}
-
-/// Draws nothing but words in a panel that has nothing to show.
-pub fn nothing(frame: &mut Frame, area: Rect, words: &str) {
-    frame.render_widget(Paragraph::new(paragraph(words, usize::from(area.width))), area);
 }

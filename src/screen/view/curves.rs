@@ -12,9 +12,9 @@ use ratatui::{
 };
 
 use super::{
-    corridor::{Subject, nothing},
     figures,
     ruler::{self, END_DEG, Ruler},
+    subject::{Subject, nothing},
     text,
 };
 use crate::margin::{OutagePicture, PowerAngle};

@@ -21,6 +21,7 @@ mod overview;
 mod row;
 mod ruler;
 mod sources;
+mod subject;
 mod text;
 mod theme;
 mod timebar;

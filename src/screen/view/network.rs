@@ -3,8 +3,8 @@
 use ratatui::text::{Line, Span};
 
 use super::{
-    corridor::{Subject, heading, paragraph},
     figures::{mw, number, percent},
+    subject::{Subject, heading, paragraph},
     text::{clean, left, right},
 };
 

@@ -9,10 +9,10 @@ use ratatui::{
 
 use super::{
     Theme,
-    corridor::{Subject, nothing, paragraph},
     figures::{self, number},
     overview::first_in_sight,
     row::cursor,
+    subject::{Subject, nothing, paragraph},
     text::{cut, left, right},
 };
 use crate::{

@@ -4,8 +4,8 @@ use ratatui::text::Line;
 use unicode_width::UnicodeWidthStr;
 
 use super::{
-    corridor::{Subject, heading, paragraph},
     figures::{NONE, number, percent},
+    subject::{Subject, heading, paragraph},
     text::{cut, left, right},
 };
 use crate::{

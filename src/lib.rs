@@ -6,7 +6,7 @@
 //! 2. [`desk`] takes each corridor of a frame through [`fit`] (measurements to a state), [`source`] (what
 //!    stands behind each terminal) and [`margin`] (every outage, the headroom), on top of [`network`]
 //!    (two-ports, admittance, reduction),
-//! 3. [`alarm`] watches them, and [`journal`] keeps what the alarms did,
+//! 3. [`alarm`] watches them, [`journal`] keeps what the alarms did, and [`events`] puts what happened into words,
 //! 4. [`screen`] and [`report`] show the assessments, and [`command`] ties a feed, a desk and one of these together.
 //!
 //! [`grid`] says what a corridor is, [`config`] reads one from a file, and [`drill`] makes feeds with known truth.
@@ -37,6 +37,7 @@ pub mod command;
 pub mod config;
 pub mod desk;
 pub mod drill;
+pub mod events;
 pub mod feed;
 pub mod fit;
 pub mod grid;

@@ -195,6 +195,12 @@ impl Event {
             Self::Withdraw => "withdraw",
         }
     }
+
+    /// Whether it is somebody's doing.
+    pub fn is_act(self) -> bool {
+        use Event::{Acknowledge, RemoveFromService, ReturnToService, Shelve, Unshelve};
+        matches!(self, Acknowledge | Shelve | Unshelve | RemoveFromService | ReturnToService)
+    }
 }
 
 impl fmt::Display for State {

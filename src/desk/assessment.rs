@@ -55,9 +55,35 @@ pub struct Assessment {
     pub minutes_to_spent: Option<f64>,
     /// The thin threshold in force, MW.
     pub thin_mw: f64,
+    /// Every circuit and bank as it stands, flows having won over flags: not part of the record.
+    #[serde(skip)]
+    pub switches: Arc<[Switch]>,
+    /// The sudden step that was found at this frame: not part of the record.
+    #[serde(skip)]
+    pub step: Option<Step>,
     /// What a screen draws besides: not part of the record.
     #[serde(skip)]
     pub detail: Option<Arc<Detail>>,
+}
+
+/// Something that can be switched.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Switch {
+    /// Name of the circuit or the bank.
+    pub name: Arc<str>,
+    /// Which of the two.
+    pub kind: SwitchKind,
+    /// Closed, or inserted.
+    pub on: bool,
+}
+
+/// What can be switched.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum SwitchKind {
+    /// A circuit, in service or open.
+    Circuit,
+    /// A series capacitor bank, inserted or bypassed.
+    Bank,
 }
 
 /// A corridor's state.
@@ -72,6 +98,31 @@ pub enum State {
     Spent,
     /// Too little is measured to say.
     Blind,
+}
+
+impl State {
+    /// From the best to the worst.
+    pub const ALL: [Self; 4] = [Self::Ample, Self::Thin, Self::Blind, Self::Spent];
+
+    /// Its word.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Ample => "ample",
+            Self::Thin => "thin",
+            Self::Spent => "spent",
+            Self::Blind => "blind",
+        }
+    }
+
+    /// How bad it is; larger is worse.
+    pub fn severity(self) -> u8 {
+        match self {
+            Self::Ample => 0,
+            Self::Thin => 1,
+            Self::Blind => 2,
+            Self::Spent => 3,
+        }
+    }
 }
 
 /// The Thevenin equivalent behind one terminal.

@@ -2,7 +2,7 @@ use std::sync::Arc;
 
 use super::{
     Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Learned, Reclose, SourceRecord,
-    State,
+    State, Switch, SwitchKind,
 };
 use crate::{
     config::Config,
@@ -11,7 +11,7 @@ use crate::{
     grid::{Circuit, Corridor, FROM, TO},
     margin::{Behind, Engine, Judgement, Present, Seated, Trend},
     network::Topology,
-    source::{Learner, Observation},
+    source::{Learner, Observation, Step},
 };
 
 /// One corridor with what is remembered of it.
@@ -25,6 +25,7 @@ pub struct CorridorDesk {
     trend: Trend,
     /// Statuses of the frame before, and how often they have changed.
     topology: Option<Topology>,
+    switches: Arc<[Switch]>,
     switchings: u64,
     detailed: bool,
     learned: Arc<Learned>,
@@ -39,6 +40,7 @@ impl CorridorDesk {
             engine: Engine::new(config.grid.frequency_hz),
             trend: Trend::default(),
             topology: None,
+            switches: Arc::default(),
             switchings: 0,
             detailed: false,
             learned: Arc::default(),
@@ -93,6 +95,7 @@ impl CorridorDesk {
             // A trend does not reach across a switching.
             self.trend.clear();
             self.switchings += 1;
+            self.switches = switches(&self.corridor, &fit.topology);
             self.topology = Some(fit.topology.clone());
         }
         fit
@@ -101,7 +104,7 @@ impl CorridorDesk {
     fn joined(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState) -> Assessment {
         let present = Present { topology: &fit.topology, voltage: &state.voltage, load: &state.load };
         let seated = self.engine.seat(&self.corridor, &present);
-        self.learn(snapshot, fit, state, &seated);
+        let step = self.learn(snapshot, fit, state, &seated);
         let estimate = self.learner.estimate();
         let behind = Behind {
             z_ohm: estimate.z_ohm(),
@@ -140,6 +143,7 @@ impl CorridorDesk {
             detail: self.detailed.then(|| Arc::new(self.detail(fit, state, &seated, &judgement))),
             intact: Some(judgement.intact),
             outages: judgement.outages,
+            step,
             binding: Some(judgement.binding),
             actions: judgement.actions,
             reclose: judgement.reclose,
@@ -147,7 +151,7 @@ impl CorridorDesk {
         }
     }
 
-    fn learn(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState, seated: &Seated) {
+    fn learn(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState, seated: &Seated) -> Option<Step> {
         let step = self.learner.observe(&Observation {
             time: snapshot.time,
             kv: [FROM, TO].map(|bus| state.voltage[bus].norm()),
@@ -164,6 +168,7 @@ impl CorridorDesk {
                 history: self.learner.history().copied().collect(),
             });
         }
+        step
     }
 
     /// Nothing joins the terminals: not a megawatt more, until a circuit is closed.
@@ -216,6 +221,8 @@ impl CorridorDesk {
             minutes_to_thin: None,
             minutes_to_spent: None,
             thin_mw: self.corridor.thin_mw,
+            switches: self.switches.clone(),
+            step: None,
             detail: None,
         }
     }
@@ -264,6 +271,17 @@ impl CorridorDesk {
             learned: self.learned.clone(),
         }
     }
+}
+
+fn switches(corridor: &Corridor, topology: &Topology) -> Arc<[Switch]> {
+    let circuits = corridor.circuits.iter().zip(&topology.closed).zip(&topology.inserted);
+    let each = circuits.flat_map(|((circuit, closed), inserted)| {
+        let switch = |name: &Arc<str>, kind, on| Switch { name: name.clone(), kind, on };
+        let banks = circuit.banks.iter().zip(inserted);
+        let banks = banks.map(move |(bank, inserted)| switch(&bank.name, SwitchKind::Bank, *inserted));
+        [switch(&circuit.name, SwitchKind::Circuit, *closed)].into_iter().chain(banks)
+    });
+    each.collect()
 }
 
 fn banks(circuit: &Circuit, inserted: &[bool]) -> Vec<(Arc<str>, bool)> {

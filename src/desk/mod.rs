@@ -6,7 +6,9 @@ mod corridor;
 use std::sync::Arc;
 
 pub use crate::margin::{Action, Binding, Criterion, Intact, IntactLimits, OutageLimits, OutageRecord, Reclose};
-pub use assessment::{Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, Learned, SourceRecord, State};
+pub use assessment::{
+    Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, Learned, SourceRecord, State, Switch, SwitchKind,
+};
 pub use corridor::CorridorDesk;
 
 use crate::{

@@ -106,6 +106,19 @@ pub enum Criterion {
     Separation,
 }
 
+impl Criterion {
+    /// Its word.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Angle => "angle",
+            Self::Area => "area",
+            Self::Loading => "loading",
+            Self::Voltage => "voltage",
+            Self::Separation => "separation",
+        }
+    }
+}
+
 /// A single action at hand.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct Action {

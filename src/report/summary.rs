@@ -6,7 +6,7 @@ use chrono::{DateTime, TimeDelta, Utc};
 use chrono_tz::Tz;
 
 use crate::{
-    desk::{Assessment, Binding, Criterion, State},
+    desk::{Assessment, Binding, State},
     grid::Grid,
 };
 
@@ -40,8 +40,7 @@ struct Least {
     binding: Option<Binding>,
 }
 
-const STATES: [(State, &str); 4] =
-    [(State::Ample, "ample"), (State::Thin, "thin"), (State::Spent, "spent"), (State::Blind, "blind")];
+const STATES: [State; 4] = [State::Ample, State::Thin, State::Spent, State::Blind];
 const NO_DATA: usize = 4;
 
 const CAUTION: &str = "\
@@ -72,7 +71,7 @@ impl Tally {
         let time = assessment.time;
         if let Some((since, state)) = self.before.replace((time, assessment.state)) {
             let lasted = time - since;
-            let place = STATES.iter().position(|(known, _)| *known == state).unwrap_or(NO_DATA);
+            let place = STATES.iter().position(|known| *known == state).unwrap_or(NO_DATA);
             self.seconds[place] += lasted.min(max_age).as_seconds_f64();
             self.seconds[NO_DATA] += (lasted - max_age).max(TimeDelta::zero()).as_seconds_f64();
         }
@@ -115,7 +114,7 @@ impl fmt::Display for Summary {
                     why(least.binding.as_ref())
                 )?,
             }
-            let names = STATES.iter().map(|(_, name)| *name).chain(["without data"]);
+            let names = STATES.iter().map(|state| state.word()).chain(["without data"]);
             let minutes = names.zip(tally.seconds).filter(|(_, seconds)| *seconds > 0.0);
             let minutes: Vec<_> = minutes.map(|(name, seconds)| format!("{name} {:.1}", seconds / 60.0)).collect();
             writeln!(f, "  minutes         {}", minutes.join(", "))?;
@@ -134,14 +133,7 @@ fn plain(name: &str) -> String {
 fn why(binding: Option<&Binding>) -> String {
     let Some(binding) = binding else { return String::new() };
     let outage = binding.outage.as_ref().map_or("nothing lost".into(), |name| format!("{} out", plain(name)));
-    let criterion = match binding.criterion {
-        Criterion::Angle => "angle",
-        Criterion::Area => "area",
-        Criterion::Loading => "loading",
-        Criterion::Voltage => "voltage",
-        Criterion::Separation => "separation",
-    };
-    format!(": {outage}, by {criterion}")
+    format!(": {outage}, by {}", binding.criterion.word())
 }
 
 #[cfg(test)]

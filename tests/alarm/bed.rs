@@ -103,6 +103,8 @@ pub fn healthy(seconds: i64) -> Assessment {
         minutes_to_thin: None,
         minutes_to_spent: None,
         thin_mw: 200.0,
+        switches: [].into(),
+        step: None,
         detail: None,
     }
 }

@@ -5,7 +5,7 @@ use chrono::{DateTime, TimeDelta, Utc};
 use tautline::{
     desk::{
         Action, Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Intact,
-        IntactLimits, Learned, OutageLimits, OutageRecord, Reclose, SourceRecord, State,
+        IntactLimits, Learned, OutageLimits, OutageRecord, Reclose, SourceRecord, State, Switch, SwitchKind,
     },
     grid::{
         Bank, Bus, Circuit, ConfiguredSource, Corridor, Fault, FaultKind, Grid, Line, Requirements, Side,
@@ -110,8 +110,16 @@ pub fn carrying(name: &str, transfer_mw: f64) -> Assessment {
         minutes_to_thin: None,
         minutes_to_spent: None,
         thin_mw: 100.0,
+        switches: switches(),
+        step: None,
         detail: Some(Arc::new(detail(transfer_mw, picture))),
     }
+}
+
+fn switches() -> Arc<[Switch]> {
+    let switch = |name: &str, kind| Switch { name: name.into(), kind, on: true };
+    let circuit = |name| switch(name, SwitchKind::Circuit);
+    [circuit("SV1"), circuit("SV2"), switch("SV2-SC", SwitchKind::Bank), circuit("SV3")].into()
 }
 
 /// The same corridor with a headroom set by hand.

@@ -12,8 +12,9 @@ use tokio::{
 use super::{Duty, FeedReport, Keeper, Order, Origin, Parcel, Revision, Scene, Setting, report};
 use crate::{
     desk::Desk,
+    events::Event,
     feed::{Channels, Feed, Frame, Holder},
-    screen::state::{Chronicle, Event},
+    screen::state::Chronicle,
 };
 
 /// Frames taken in one go at most.
@@ -57,7 +58,7 @@ impl Sofar {
     /// Adds to the messages.
     fn tell(&mut self, text: String) {
         let time = self.chronicle.time().unwrap_or_else(Utc::now);
-        self.chronicle.note(Event { time, corridor: None, state: None, text });
+        self.chronicle.note(Event::of_program(time, text));
     }
 }
 
@@ -181,7 +182,7 @@ impl Live {
         }
         if let Some(time) = sofar.chronicle.time() {
             for text in keeper.take_news() {
-                sofar.chronicle.note(Event { time, corridor: None, state: None, text });
+                sofar.chronicle.note(Event::of_program(time, text));
             }
         }
         sofar.feed.kept = Some(keeper.report());

@@ -2,11 +2,11 @@ use std::{collections::VecDeque, sync::Arc};
 
 use chrono::{DateTime, Utc};
 
-use super::{
-    Event, History, Strip, Teller,
-    event::{reason, severity, word},
+use super::{History, Strip};
+use crate::{
+    desk::{Assessment, State},
+    events::{Event, EventKind, Teller},
 };
-use crate::desk::{Assessment, State};
 
 /// Events kept; older ones are forgotten.
 pub const EVENTS_KEPT: usize = 1000;
@@ -40,13 +40,13 @@ impl Chronicle {
         for (index, assessment) in assessments.into_iter().enumerate() {
             if index == self.tracks.len() {
                 if assessment.state != State::Ample {
-                    self.note(first(&assessment));
+                    self.note(Event::first(&assessment));
                 }
                 self.tracks.push(Arc::new(Track::new(assessment)));
             } else {
-                for event in Arc::make_mut(&mut self.tracks[index]).take(Arc::new(assessment)) {
-                    self.note(event);
-                }
+                let events = Arc::make_mut(&mut self.tracks[index]).take(Arc::new(assessment));
+                // Steps have a list of their own, where they come by the hundred.
+                events.into_iter().filter(|event| event.kind != EventKind::Step).for_each(|event| self.note(event));
             }
         }
     }
@@ -84,7 +84,7 @@ impl Chronicle {
 
     /// The worst state of all corridors.
     pub fn worst(&self) -> Option<State> {
-        self.tracks.iter().map(|track| track.latest.state).max_by_key(|&state| severity(state))
+        self.tracks.iter().map(|track| track.latest.state).max_by_key(|state| state.severity())
     }
 }
 
@@ -115,15 +115,6 @@ impl Track {
     }
 }
 
-fn first(assessment: &Assessment) -> Event {
-    Event {
-        time: assessment.time,
-        corridor: Some(assessment.corridor.clone()),
-        state: Some(assessment.state),
-        text: format!("{} at the first frame{}", word(assessment.state), reason(assessment)),
-    }
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -147,7 +138,7 @@ mod tests {
     #[test]
     fn events_are_bounded() {
         let mut chronicle = Chronicle::default();
-        let event = |second| Event { time: sample::time(second), corridor: None, state: None, text: "new".into() };
+        let event = |second| Event::of_program(sample::time(second), "new".into());
         (0..2 * i64::try_from(EVENTS_KEPT).unwrap()).for_each(|second| chronicle.note(event(second)));
         chronicle.note(event(1990));
         assert_eq!(chronicle.events.len(), EVENTS_KEPT);

@@ -2,7 +2,6 @@ use std::collections::VecDeque;
 
 use chrono::{DateTime, Utc};
 
-use super::severity;
 use crate::desk::State;
 
 /// Minutes of headroom kept.
@@ -97,7 +96,7 @@ impl Strip {
 
 /// The worse of two states; nothing known is the best.
 fn worse(one: Option<State>, other: Option<State>) -> Option<State> {
-    if one.map(severity) >= other.map(severity) { one } else { other }
+    if one.map(State::severity) >= other.map(State::severity) { one } else { other }
 }
 
 #[cfg(test)]

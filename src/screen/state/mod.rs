@@ -2,14 +2,11 @@
 
 mod alarms;
 mod chronicle;
-mod event;
-mod flutter;
 mod history;
 mod instant;
 mod keys;
 mod panel;
 mod pointer;
-mod teller;
 
 use std::{sync::Arc, time::Instant};
 
@@ -19,13 +16,11 @@ use ratatui::layout::Size;
 
 pub use alarms::{AlarmPage, Prompt};
 pub use chronicle::{Chronicle, EVENTS_KEPT, Track};
-pub use event::{Event, criterion, severity, word};
 pub use history::{History, Strip};
 pub use instant::parse_time;
 pub use keys::KEYS;
 pub use panel::Panel;
 pub use pointer::{Drawn, Target};
-pub use teller::Teller;
 
 use super::connection::{Change, Origin, Parcel, Playback, Setting};
 use crate::{
@@ -177,7 +172,7 @@ impl App {
     pub fn rows(&self) -> Vec<usize> {
         let wanted = self.filter.to_lowercase();
         let fits = |&index: &usize| {
-            let state = self.track(index).map_or("", |track| word(track.latest.state));
+            let state = self.track(index).map_or("", |track| track.latest.state.word());
             wanted.is_empty()
                 || state.starts_with(&wanted)
                 || self.grid.corridors[index].name.to_lowercase().contains(&wanted)
@@ -187,7 +182,7 @@ impl App {
             rows.sort_by(|&one, &other| {
                 let key = |index| {
                     self.track(index).map_or((0, f64::INFINITY), |track| {
-                        (severity(track.latest.state), track.latest.headroom_mw.unwrap_or(f64::INFINITY))
+                        (track.latest.state.severity(), track.latest.headroom_mw.unwrap_or(f64::INFINITY))
                     })
                 };
                 let (one, other) = (key(one), key(other));

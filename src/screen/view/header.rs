@@ -3,7 +3,7 @@ use ratatui::text::{Line, Span};
 use super::{Theme, text};
 use crate::{
     desk::State,
-    screen::state::{App, Page, Sort, severity},
+    screen::state::{App, Page, Sort},
 };
 
 /// Where we are, how many corridors are in which state, what time it is.
@@ -26,7 +26,7 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
         left.push(Span::styled(format!(" with “{}”", text::cut(&app.filter, 16)), theme.caution()));
     }
     let mut states = [State::Ample, State::Thin, State::Spent, State::Blind];
-    states.sort_by_key(|&state| std::cmp::Reverse(severity(state)));
+    states.sort_by_key(|&state| std::cmp::Reverse(state.severity()));
     for state in states {
         let tracks = app.parcel.iter().flat_map(|parcel| &parcel.chronicle.tracks);
         let count = tracks.filter(|track| track.latest.state == state).count();

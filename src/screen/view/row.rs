@@ -12,7 +12,7 @@ use super::{
 use crate::{
     desk::{Action, Assessment, State},
     grid::Corridor,
-    screen::state::{Track, criterion, worst_outage},
+    screen::state::{Track, worst_outage},
 };
 
 /// Column widths of the overview.
@@ -177,7 +177,7 @@ pub fn headroom(assessment: &Assessment) -> String {
 /// The outage and the criterion that set the headroom; of the two the outage’s name is cut to fit.
 pub fn set_by(assessment: &Assessment, width: usize) -> String {
     let Some(binding) = &assessment.binding else { return figures::NONE.into() };
-    let by = criterion(binding.criterion);
+    let by = binding.criterion.word();
     match &binding.outage {
         Some(name) => format!("{} out, {by}", text::cut(name, width.saturating_sub(by.len() + 6))),
         None => format!("nothing lost, {by}"),

@@ -3,7 +3,6 @@ use ratatui::style::{Color, Modifier, Style};
 use crate::{
     alarm::{self, Priority},
     desk::State,
-    screen::state::word,
 };
 
 /// How things look. Colour is for what is abnormal, and never alone.
@@ -21,7 +20,7 @@ impl Theme {
 
     /// A state's word: capitals when it is abnormal.
     pub fn word(self, state: State) -> String {
-        if state == State::Ample { word(state).into() } else { word(state).to_uppercase() }
+        if state == State::Ample { state.word().into() } else { state.word().to_uppercase() }
     }
 
     /// A state's mark, one cell wide.

@@ -3,11 +3,14 @@ use std::{collections::BTreeMap, sync::Arc};
 use chrono::{DateTime, TimeDelta, Utc};
 
 use super::{
-    Event,
-    event::{reason, word},
+    Event, EventKind,
+    event::reason,
     flutter::{Fact, News},
 };
-use crate::desk::{Assessment, Detail, State};
+use crate::{
+    desk::{Assessment, State, SwitchKind},
+    source::{Moved, Step},
+};
 
 /// A change of state, of direction or of data is told once it has lasted so long.
 const HOLD: TimeDelta = TimeDelta::seconds(5);
@@ -21,8 +24,8 @@ pub struct Teller {
     /// Why it is, or was, in a state other than the one told.
     why: String,
     exporter: Option<Fact<Arc<str>>>,
-    /// Circuits and their banks, in order.
-    switches: Vec<(Arc<str>, &'static Words, Fact<bool>)>,
+    /// Circuits and their banks, in the order of the assessment.
+    switches: Vec<Fact<bool>>,
     /// Channels that are out of order, or were lately.
     channels: BTreeMap<(Arc<str>, bool), Fact<bool>>,
 }
@@ -58,8 +61,9 @@ impl Teller {
         self.state(assessment, &mut told);
         self.direction(assessment, &mut told);
         self.channels(assessment, &mut told);
-        if let Some(detail) = &assessment.detail {
-            self.switches(detail, assessment.time, &mut told);
+        self.switches(assessment, &mut told);
+        if let Some(step) = &assessment.step {
+            told.add(step.time, EventKind::Step, None, sentence(step, assessment));
         }
         told.events
     }
@@ -71,13 +75,13 @@ impl Teller {
         let Some((time, news)) = self.state.take(assessment.time, assessment.state) else { return };
         let why = &self.why;
         let (state, text) = match news {
-            News::Changed { from, to } => (to, format!("{} → {}{why}", word(from), word(to))),
-            News::Passed { was, lasted } => (was, format!("{} for {}{why}", word(was), span(lasted))),
+            News::Changed { from, to } => (to, format!("{} → {}{why}", from.word(), to.word())),
+            News::Passed { was, lasted } => (was, format!("{} for {}{why}", was.word(), span(lasted))),
             News::Fluttered { from, to, changes, within, now } => {
-                (now, to_and_fro("", [word(from), word(to)], changes, within, word(now)))
+                (now, to_and_fro("", [from.word(), to.word()], changes, within, now.word()))
             }
         };
-        told.add(time, Some(state), text);
+        told.add(time, EventKind::State, Some(state), text);
     }
 
     fn direction(&mut self, assessment: &Assessment, told: &mut Told) {
@@ -99,7 +103,7 @@ impl Teller {
                 to_and_fro("exporter ", [&from, &to], changes, within, &now)
             }
         };
-        told.add(time, None, text);
+        told.add(time, EventKind::Direction, None, text);
     }
 
     fn channels(&mut self, assessment: &Assessment, told: &mut Told) {
@@ -126,23 +130,23 @@ impl Teller {
             } else {
                 format!("{name} and {} more: each {what}", count - 1)
             };
-            told.add(time, None, text);
+            told.add(time, EventKind::Meter, None, text);
         }
     }
 
-    fn switches(&mut self, detail: &Detail, time: DateTime<Utc>, told: &mut Told) {
-        let circuits = detail.circuits.iter();
-        let standing = circuits.flat_map(|circuit| {
-            let banks = circuit.banks.iter().map(|(name, inserted)| (name, &BANK, *inserted));
-            [(&circuit.name, &CIRCUIT, circuit.closed)].into_iter().chain(banks)
-        });
-        for (place, (name, words, on)) in standing.enumerate() {
+    fn switches(&mut self, assessment: &Assessment, told: &mut Told) {
+        let time = assessment.time;
+        for (place, switch) in assessment.switches.iter().enumerate() {
             if place == self.switches.len() {
-                self.switches.push((name.clone(), words, Fact::new(on, time, TimeDelta::zero())));
+                self.switches.push(Fact::new(switch.on, time, TimeDelta::zero()));
             }
-            if let Some((time, news)) = self.switches[place].2.take(time, on) {
-                told.add(time, None, format!("{name} {}", words.sentence(&news)));
-            }
+            let Some((time, news)) = self.switches[place].take(time, switch.on) else { continue };
+            let (words, kinds) = match switch.kind {
+                SwitchKind::Circuit => (&CIRCUIT, [EventKind::Trip, EventKind::Return]),
+                SwitchKind::Bank => (&BANK, [EventKind::Bypass, EventKind::Insertion]),
+            };
+            let kind = kinds[usize::from(switch.on)];
+            told.add(time, kind, None, format!("{} {}", switch.name, words.sentence(&news)));
         }
     }
 }
@@ -153,8 +157,8 @@ struct Told<'a> {
 }
 
 impl Told<'_> {
-    fn add(&mut self, time: DateTime<Utc>, state: Option<State>, text: String) {
-        self.events.push(Event { time, corridor: Some(self.corridor.clone()), state, text });
+    fn add(&mut self, time: DateTime<Utc>, kind: EventKind, state: Option<State>, text: String) {
+        self.events.push(Event { time, corridor: Some(self.corridor.clone()), kind, state, text });
     }
 }
 
@@ -169,6 +173,20 @@ impl Words {
             }
         }
     }
+}
+
+/// What a step did, and how surely.
+fn sentence(step: &Step, assessment: &Assessment) -> String {
+    let [from, to] = &assessment.sources;
+    let kv = |side: usize| format!("{:+.1} kV", step.de_kv[side]).replace('-', "−");
+    let what = match step.moved {
+        Moved::Neither => "neither side moved".to_owned(),
+        Moved::From => format!("{} moved by {}", from.bus, kv(0)),
+        Moved::To => format!("{} moved by {}", to.bus, kv(1)),
+        Moved::Both => format!("{} moved by {}, {} by {}", from.bus, kv(0), to.bus, kv(1)),
+    };
+    let widened = if step.widened { "; its reactance is taken as less well known again" } else { "" };
+    format!("step: {what} ({:.0} %){widened}", 100.0 * step.probability)
 }
 
 fn to_and_fro(what: &str, [one, other]: [&str; 2], changes: u32, within: TimeDelta, now: &str) -> String {
@@ -217,9 +235,9 @@ mod tests {
         assert_eq!(told(300, |a| a.exporter = Some("Velm".into())), ["direction reversed: Velm exports now"]);
         assert_eq!(
             told(300, |a| {
-                let detail = Arc::make_mut(a.detail.as_mut().unwrap());
-                detail.circuits[1].banks[0].1 = false;
-                detail.circuits[2].closed = false;
+                let switches = Arc::make_mut(&mut a.switches);
+                switches[2].on = false;
+                switches[3].on = false;
             }),
             ["SV2-SC bypassed", "SV3 opened"]
         );

@@ -45,5 +45,6 @@ pub mod journal;
 pub mod margin;
 pub mod network;
 pub mod report;
+pub mod review;
 pub mod screen;
 pub mod source;

@@ -1,6 +1,7 @@
 use std::{fmt, sync::Arc};
 
 use chrono::TimeDelta;
+use serde::{Deserialize, Serialize};
 
 use super::{Direction, Kind};
 
@@ -39,7 +40,8 @@ pub struct Suppression {
 }
 
 /// How soon an alarm needs a response.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
 pub enum Priority {
     /// Within the shift.
     Low,

@@ -3,7 +3,7 @@
 use std::sync::Arc;
 
 use chrono::{DateTime, SecondsFormat, Utc};
-use serde::{Serialize, Serializer};
+use serde::{Deserialize, Serialize, Serializer};
 
 use crate::{
     margin::{Action, Binding, Intact, OutageRecord, Picture, Reclose},
@@ -87,7 +87,7 @@ pub enum SwitchKind {
 }
 
 /// A corridor's state.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
 #[serde(rename_all = "lowercase")]
 pub enum State {
     /// Headroom above the thin threshold.
@@ -150,7 +150,7 @@ pub struct SourceRecord {
 }
 
 /// Where a source's impedance comes from.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
 #[serde(rename_all = "lowercase")]
 pub enum Basis {
     /// The configuration.

@@ -1,6 +1,7 @@
 use std::sync::Arc;
 
 use chrono::{DateTime, TimeDelta, Utc};
+use serde::{Deserialize, Serialize};
 
 use super::teller::span;
 use crate::{
@@ -9,7 +10,7 @@ use crate::{
 };
 
 /// Something worth a line.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Event {
     /// When, by the frames.
     pub time: DateTime<Utc>,
@@ -24,7 +25,8 @@ pub struct Event {
 }
 
 /// What an event is about.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
 pub enum EventKind {
     /// The corridor came into another state.
     State,
@@ -85,11 +87,6 @@ impl EventKind {
             Self::Act => "act",
             Self::Program => "program",
         }
-    }
-
-    /// The kind that a word stands for.
-    pub fn from_word(word: &str) -> Option<Self> {
-        Self::ALL.into_iter().find(|kind| kind.word() == word)
     }
 }
 

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use serde::{Serialize, Serializer, ser::SerializeMap};
+use serde::{Deserialize, Serialize, Serializer, ser::SerializeMap};
 
 use super::OutagePicture;
 
@@ -91,7 +91,7 @@ pub struct Binding {
 }
 
 /// What must hold after an outage.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
 #[serde(rename_all = "lowercase")]
 pub enum Criterion {
     /// An equilibrium with enough angle margin.

@@ -1,0 +1,227 @@
+use std::sync::Arc;
+
+use chrono::{DateTime, NaiveDate, NaiveTime, TimeDelta, Utc};
+use rayon::prelude::*;
+
+use super::{Beginning, CorridorDay, Day, FileNote, SourceNote};
+use crate::{
+    alarm::{CorridorBoard, Transition},
+    config::Config,
+    desk::{Assessment, CorridorDesk, Desk, State},
+    events::{Event, EventKind, Teller, gap},
+    feed::{Channels, Frame, Holder, Snapshot},
+};
+
+/// Events of a corridor and a day; more than a reader would go through.
+const MOST_EVENTS: usize = 1000;
+
+/// What is to be reviewed, and how.
+#[derive(Debug, Clone)]
+pub struct Task {
+    /// Corridors, alarms, settings.
+    pub config: Arc<Config>,
+    /// What its corridors read.
+    pub channels: Arc<Channels>,
+}
+
+/// Takes every assessment as it is made, one for each corridor: to write it down in full.
+pub trait Rows: Send {
+    /// Takes the next one, and what it would have been with the change that was asked for.
+    fn take(&mut self, was: &Assessment, what_if: Option<&Assessment>);
+}
+
+/// Keeps nothing.
+impl Rows for () {
+    fn take(&mut self, _was: &Assessment, _what_if: Option<&Assessment>) {}
+}
+
+/// One day at work: frames in, a [`Day`] out.
+#[derive(Debug)]
+pub struct Bench<R> {
+    max_age: TimeDelta,
+    holder: Holder,
+    seats: Vec<Seat<R>>,
+    beginning: Beginning,
+    span: Option<(DateTime<Utc>, DateTime<Utc>)>,
+    frames: u64,
+    covered_ms: i64,
+    gaps: Vec<Event>,
+}
+
+/// One corridor, which shares nothing with the others.
+#[derive(Debug)]
+struct Seat<R> {
+    max_age: TimeDelta,
+    desk: CorridorDesk,
+    board: CorridorBoard,
+    rows: R,
+    teller: Option<Teller>,
+    last: Option<Assessment>,
+    first_sources: Option<[SourceNote; 2]>,
+    day: CorridorDay,
+    events: Vec<Event>,
+    left_out: u64,
+    transitions: Vec<Transition>,
+}
+
+impl<R: Rows> Bench<R> {
+    /// At the beginning of a day, with nothing known but the configuration. `rows` are one for each corridor.
+    pub fn new(task: &Task, rows: impl IntoIterator<Item = R>) -> Self {
+        let config = &task.config;
+        let max_age = config.feed.max_age();
+        let desks = Desk::new(config, &task.channels).corridors.into_iter();
+        let seats = desks.zip(&config.alarms).zip(rows).map(|((desk, alarms), rows)| {
+            let board = CorridorBoard::new(desk.corridor(), alarms);
+            Seat::new(desk, board, rows, max_age)
+        });
+        Self {
+            max_age,
+            holder: Holder::new(&task.channels, max_age),
+            seats: seats.collect(),
+            beginning: Beginning::Configured,
+            span: None,
+            frames: 0,
+            covered_ms: 0,
+            gaps: Vec::new(),
+        }
+    }
+
+    /// Takes frames of the day, all corridors at once on the threads of the pool this is called in.
+    pub fn take(&mut self, frames: &[Frame]) {
+        let snapshots: Vec<Snapshot> = frames.iter().filter_map(|frame| self.holder.take(frame)).collect();
+        snapshots.iter().for_each(|snapshot| self.note(snapshot.time));
+        self.seats.par_iter_mut().for_each(|seat| snapshots.iter().for_each(|snapshot| seat.take(snapshot)));
+    }
+
+    fn note(&mut self, time: DateTime<Utc>) {
+        self.frames += 1;
+        let Some((first, last)) = self.span else {
+            self.span = Some((time, time));
+            return;
+        };
+        self.covered_ms += lasted_ms(last, time, self.max_age);
+        if self.gaps.len() < MOST_EVENTS {
+            self.gaps.extend(gap(last, time, self.max_age));
+        }
+        self.span = Some((first, time));
+    }
+
+    /// What was taken down of each corridor.
+    pub fn rows(&mut self) -> impl Iterator<Item = &mut R> {
+        self.seats.iter_mut().map(|seat| &mut seat.rows)
+    }
+
+    /// Ends the day; `None` when there was not a single frame. The bench is ready for the next one, with everything it has learned.
+    pub fn finish(&mut self, files: Vec<FileNote>) -> Option<Day> {
+        let (first, last) = self.span.take()?;
+        let midnight = midnight_after(last.date_naive());
+        let covered_ms = std::mem::take(&mut self.covered_ms) + lasted_ms(last, midnight, self.max_age);
+        let mut events = std::mem::take(&mut self.gaps);
+        let mut events_left_out = 0;
+        let corridors =
+            self.seats.iter_mut().filter_map(|seat| seat.finish(midnight, &mut events, &mut events_left_out));
+        let corridors = corridors.collect();
+        events.sort_by_key(|event| event.time);
+        Some(Day {
+            date: first.date_naive(),
+            beginning: std::mem::replace(&mut self.beginning, Beginning::Carried),
+            files,
+            first,
+            last,
+            frames: std::mem::take(&mut self.frames),
+            covered_ms,
+            findings: Vec::new(),
+            events,
+            events_left_out,
+            corridors,
+        })
+    }
+}
+
+impl<R: Rows> Seat<R> {
+    fn new(desk: CorridorDesk, board: CorridorBoard, rows: R, max_age: TimeDelta) -> Self {
+        Self {
+            max_age,
+            day: CorridorDay::new(desk.corridor().name.clone()),
+            desk,
+            board,
+            rows,
+            teller: None,
+            last: None,
+            first_sources: None,
+            events: Vec::new(),
+            left_out: 0,
+            transitions: Vec::new(),
+        }
+    }
+
+    fn take(&mut self, snapshot: &Snapshot) {
+        let assessment = self.desk.assess(snapshot);
+        if let Some(last) = self.last.take() {
+            self.stood(&last, assessment.time);
+        }
+        self.rows.take(&assessment, None);
+        self.day.was.take(self.desk.corridor(), &assessment);
+        self.tell(&assessment);
+        self.last = Some(assessment);
+    }
+
+    fn stood(&mut self, assessment: &Assessment, until: DateTime<Utc>) {
+        let ms = lasted_ms(assessment.time, until, self.max_age);
+        self.day.was.stood(self.desk.corridor(), assessment, ms);
+        for channel in &assessment.fit.missing {
+            self.day.meter(channel).missing_ms += ms;
+        }
+        for channel in &assessment.fit.suspects {
+            self.day.meter(channel).suspect_ms += ms;
+        }
+    }
+
+    fn tell(&mut self, assessment: &Assessment) {
+        self.first_sources.get_or_insert_with(|| SourceNote::both(assessment));
+        if self.day.was.frames == 1 && assessment.state != State::Ample {
+            self.keep(Event::first(assessment));
+        }
+        let teller = self.teller.get_or_insert_with(|| Teller::new(assessment));
+        let told = teller.take(assessment);
+        told.into_iter().for_each(|event| self.keep(event));
+        let mut transitions = std::mem::take(&mut self.transitions);
+        self.board.observe(assessment, &mut transitions);
+        self.day.was.count(&transitions);
+        transitions.drain(..).for_each(|transition| self.keep(Event::of_alarm(&transition)));
+        self.transitions = transitions;
+    }
+
+    /// Keeps an event, the most telling ones where there are too many.
+    fn keep(&mut self, event: Event) {
+        if self.events.len() >= MOST_EVENTS && matches!(event.kind, EventKind::Meter | EventKind::Step)
+            || self.events.len() >= 2 * MOST_EVENTS
+        {
+            self.left_out += 1;
+        } else {
+            self.events.push(event);
+        }
+    }
+
+    fn finish(&mut self, midnight: DateTime<Utc>, events: &mut Vec<Event>, left_out: &mut u64) -> Option<CorridorDay> {
+        let last = self.last.take()?;
+        self.stood(&last, midnight);
+        events.append(&mut self.events);
+        *left_out += std::mem::take(&mut self.left_out);
+        let next = CorridorDay::new(self.day.corridor.clone());
+        let mut day = std::mem::replace(&mut self.day, next);
+        let end = SourceNote::both(&last);
+        day.sources = Some([self.first_sources.take().unwrap_or_else(|| end.clone()), end]);
+        Some(day)
+    }
+}
+
+/// For how long what was seen at one time stands until the next, ms.
+fn lasted_ms(from: DateTime<Utc>, until: DateTime<Utc>, max_age: TimeDelta) -> i64 {
+    (until.timestamp_millis() - from.timestamp_millis()).min(max_age.num_milliseconds())
+}
+
+fn midnight_after(date: NaiveDate) -> DateTime<Utc> {
+    let next = date.succ_opt().unwrap_or(date);
+    next.and_time(NaiveTime::MIN).and_utc()
+}

@@ -1,0 +1,21 @@
+//! Recorded days on paper: how close each corridor came, when, because of what, and what a change would have made of it.
+//!
+//! A [`Day`] is one UTC day, reviewed on its own: all its times are whole milliseconds and all its figures belong to it alone,
+//! so that it does not matter where and in which order days are reviewed. A [`Review`] is any number of them put
+//! together, always in the order of their dates.
+
+mod bench;
+mod course;
+mod day;
+mod durations;
+mod series;
+mod tallied;
+mod whole;
+
+pub use bench::{Bench, Rows, Task};
+pub use course::{AlarmCount, Binding, Course, Least};
+pub use day::{Beginning, CorridorDay, Day, FileNote, MeterNote, SourceNote};
+pub use durations::Durations;
+pub use series::{Series, Slot};
+pub use tallied::{Share, Tallied};
+pub use whole::{Brief, CorridorReview, DayFigures, Review};

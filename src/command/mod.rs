@@ -6,7 +6,9 @@ pub mod demo;
 pub mod drill;
 mod inputs;
 pub mod journal;
+mod progress;
 pub mod replay;
+pub mod review;
 pub mod shell;
 mod stage;
 pub mod try_thresholds;
@@ -37,6 +39,8 @@ pub enum Command {
     Watch(watch::Options),
     /// Play recorded files on the screen.
     Replay(replay::Options),
+    /// Review recorded days: how close, when, because of what.
+    Review(review::Options),
     /// Try alarms on recorded days: how many, how early, and what they would have missed.
     Try(try_thresholds::Options),
     /// Print or export what the alarms did.
@@ -60,6 +64,7 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         Some(Command::Assess(options)) => assess::run(&options),
         Some(Command::Watch(options)) => watch::run(&options),
         Some(Command::Replay(options)) => replay::run(&options),
+        Some(Command::Review(options)) => review::run(&options),
         Some(Command::Try(options)) => try_thresholds::run(&options),
         Some(Command::Journal(options)) => journal::run(&options),
         Some(Command::Drill(options)) => drill::run(&options),

@@ -9,11 +9,11 @@ use std::{
 };
 
 use clap::Args;
-use indicatif::{ProgressBar, ProgressStyle};
+use indicatif::ProgressBar;
 use rayon::prelude::*;
 use thiserror::Error;
 
-use super::{Failure, inputs};
+use super::{Failure, inputs, progress};
 use crate::{
     alarm::{
         Definition, Kind,
@@ -174,7 +174,7 @@ struct Seat {
 
 fn play(options: &Options, config: &Config, sets: &[Set]) -> Result<Vec<(String, Figures)>, Failure> {
     let channels = Arc::new(Channels::new(config));
-    let progress = progress();
+    let progress = progress::bar("");
     let readers = options.files.iter().map(|path| open(path, &channels, &progress)).collect::<Result<Vec<_>, _>>()?;
     let mut recorded = Recorded::new(readers, &channels);
     let mut holder = inputs::holder(config, &channels);
@@ -218,13 +218,6 @@ impl Seat {
             self.trials.iter_mut().for_each(|trial| trial.take(&assessment));
         }
     }
-}
-
-/// A bar on standard error; nothing where that is no terminal.
-fn progress() -> ProgressBar {
-    let template = "{bar:40} {percent:>3} % of {binary_total_bytes}, {eta} left";
-    let style = ProgressStyle::with_template(template).unwrap_or_else(|_| ProgressStyle::default_bar());
-    ProgressBar::new(0).with_style(style)
 }
 
 fn open(path: &Path, channels: &Arc<Channels>, progress: &ProgressBar) -> Result<Reader, Failure> {

@@ -151,9 +151,14 @@ impl Default for LearningSettings {
 impl Config {
     /// Reads a configuration file.
     pub fn load(path: &Path) -> Result<Self, ConfigErrors> {
+        Ok(Self::load_with_text(path)?.0)
+    }
+
+    /// The same, and the text it was read from.
+    pub fn load_with_text(path: &Path) -> Result<(Self, String), ConfigErrors> {
         let name = path.display().to_string();
         let text = file::read(path).map_err(|error| ConfigErrors::one(&name, error))?;
-        Self::parse(&text, &name)
+        Ok((Self::parse(&text, &name)?, text))
     }
 
     /// Reads a configuration from its text; `file_name` is what the errors call it.

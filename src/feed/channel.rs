@@ -132,14 +132,18 @@ pub struct Channels {
 impl Channels {
     /// All channels of all corridors; a bus that two corridors share has one set.
     pub fn new(config: &Config) -> Self {
-        let none = Self {
+        Self::none().extended(config)
+    }
+
+    /// No channels: frames have times, and nothing else.
+    pub fn none() -> Self {
+        Self {
             names: Vec::new(),
             is_status: Vec::new(),
             plausible: Vec::new(),
             by_feed_name: HashMap::new(),
             by_name: HashMap::new(),
-        };
-        none.extended(config)
+        }
     }
 
     /// The channels of another configuration. Each slot keeps its meaning, so that frames under way stay right; those that

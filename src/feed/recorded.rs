@@ -7,6 +7,8 @@ use std::{
     sync::Arc,
 };
 
+use chrono::{DateTime, Utc};
+
 use super::{
     Channels, Format, Frame, InputState, Monitor,
     merge::{Lane, Merger},
@@ -19,6 +21,8 @@ use super::{
 #[derive(Debug)]
 pub struct Recorded {
     lanes: Vec<Lane<Reader>>,
+    /// Sources that begin later, the latest first, with the time from when they are needed.
+    later: Vec<(DateTime<Utc>, Reader)>,
     merger: Merger,
     monitor: Monitor,
 }
@@ -26,9 +30,34 @@ pub struct Recorded {
 impl Recorded {
     /// Reads recorded sources.
     pub fn new(readers: Vec<Reader>, channels: &Channels) -> Self {
-        let monitor = Monitor(readers.iter().map(|reader| reader.gauge().clone()).collect());
-        let lanes = readers.into_iter().map(|reader| Lane::new(reader.gauge().clone(), reader)).collect();
-        Self { lanes, merger: Merger::new(channels), monitor }
+        Self::in_turn(readers.into_iter().map(|reader| (DateTime::<Utc>::MIN_UTC, reader)).collect(), channels)
+    }
+
+    /// Reads recorded sources that bring nothing before a time each: they are opened when it comes.
+    pub fn in_turn(mut readers: Vec<(DateTime<Utc>, Reader)>, channels: &Channels) -> Self {
+        let monitor = Monitor(readers.iter().map(|(_, reader)| reader.gauge().clone()).collect());
+        // Among equals the first stays the first.
+        readers.sort_by_key(|(from, _)| *from);
+        readers.reverse();
+        Self { lanes: Vec::new(), later: readers, merger: Merger::new(channels), monitor }
+    }
+
+    /// Opens those that may bring the next frame.
+    fn open(&mut self) {
+        loop {
+            for lane in &mut self.lanes {
+                while lane.frames.is_empty()
+                    && let Some(frames) = lane.source.next_frames()
+                {
+                    lane.frames = VecDeque::from(frames);
+                }
+            }
+            self.lanes.retain(|lane| !lane.frames.is_empty());
+            let earliest = self.lanes.iter().filter_map(|lane| lane.frames.front()).map(|frame| frame.time).min();
+            let is_due = |(from, _): &mut (_, _)| earliest.is_none_or(|earliest| *from <= earliest);
+            let Some((_, reader)) = self.later.pop_if(is_due) else { return };
+            self.lanes.push(Lane::new(reader.gauge().clone(), reader));
+        }
     }
 
     /// What was read so far, and what of it could not be used.
@@ -42,14 +71,7 @@ impl Iterator for Recorded {
 
     fn next(&mut self) -> Option<Frame> {
         loop {
-            for lane in &mut self.lanes {
-                while lane.frames.is_empty()
-                    && let Some(frames) = lane.source.next_frames()
-                {
-                    lane.frames = VecDeque::from(frames);
-                }
-            }
-            self.lanes.retain(|lane| !lane.frames.is_empty());
+            self.open();
             if self.lanes.is_empty() {
                 return None;
             }
@@ -87,7 +109,7 @@ impl Reader {
     /// Reads from anything else, which is not touched before the first frame is asked for.
     pub fn new(name: &str, bytes: impl Read + Send + 'static, format: Format, channels: &Arc<Channels>) -> Self {
         let stream = Stream::new(format, channels.clone(), Gauge::new(name));
-        Self { bytes: Bytes::Unopened(Box::new(bytes)), chunk: vec![0; CHUNK_BYTES], stream }
+        Self { bytes: Bytes::Unopened(Box::new(bytes)), chunk: Vec::new(), stream }
     }
 
     /// The same, reading with the channels in force.
@@ -124,6 +146,7 @@ impl Reader {
                 Bytes::Unopened(bytes) => {
                     let bytes = std::mem::replace(bytes, Box::new(io::empty()));
                     self.stream.gauge.set(InputState::Connected);
+                    self.chunk.resize(CHUNK_BYTES, 0);
                     self.bytes = Bytes::Open(unpacked(bytes)?);
                 }
                 Bytes::Open(bytes) => match bytes.read(&mut self.chunk) {

@@ -89,7 +89,9 @@ impl<R: Rows> Bench<R> {
     /// Takes frames of the day, all corridors at once on the threads of the pool this is called in.
     pub fn take(&mut self, frames: &[Frame]) {
         let snapshots: Vec<Snapshot> = frames.iter().filter_map(|frame| self.holder.take(frame)).collect();
-        snapshots.iter().for_each(|snapshot| self.note(snapshot.time));
+        for snapshot in &snapshots {
+            self.note(snapshot.time);
+        }
         self.seats.par_iter_mut().for_each(|seat| snapshots.iter().for_each(|snapshot| seat.take(snapshot)));
     }
 
@@ -106,13 +108,20 @@ impl<R: Rows> Bench<R> {
         self.span = Some((first, time));
     }
 
+    /// The same, taking down what comes in others.
+    #[must_use]
+    pub fn with_rows(mut self, rows: impl IntoIterator<Item = R>) -> Self {
+        self.seats.iter_mut().zip(rows).for_each(|(seat, rows)| seat.rows = rows);
+        self
+    }
+
     /// What was taken down of each corridor.
     pub fn rows(&mut self) -> impl Iterator<Item = &mut R> {
         self.seats.iter_mut().map(|seat| &mut seat.rows)
     }
 
     /// Ends the day; `None` when there was not a single frame. The bench is ready for the next one, with everything it has learned.
-    pub fn finish(&mut self, files: Vec<FileNote>) -> Option<Day> {
+    pub fn finish(&mut self, files: Vec<FileNote>, findings: Vec<String>) -> Option<Day> {
         let (first, last) = self.span.take()?;
         let midnight = midnight_after(last.date_naive());
         let covered_ms = std::mem::take(&mut self.covered_ms) + lasted_ms(last, midnight, self.max_age);
@@ -130,7 +139,7 @@ impl<R: Rows> Bench<R> {
             last,
             frames: std::mem::take(&mut self.frames),
             covered_ms,
-            findings: Vec::new(),
+            findings,
             events,
             events_left_out,
             corridors,
@@ -184,7 +193,9 @@ impl<R: Rows> Seat<R> {
         }
         let teller = self.teller.get_or_insert_with(|| Teller::new(assessment));
         let told = teller.take(assessment);
-        told.into_iter().for_each(|event| self.keep(event));
+        for event in told {
+            self.keep(event);
+        }
         let mut transitions = std::mem::take(&mut self.transitions);
         self.board.observe(assessment, &mut transitions);
         self.day.was.count(&transitions);

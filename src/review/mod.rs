@@ -4,18 +4,24 @@
 //! so that it does not matter where and in which order days are reviewed. A [`Review`] is any number of them put
 //! together, always in the order of their dates.
 
+mod archive;
 mod bench;
 mod course;
 mod day;
 mod durations;
+mod part;
+mod run;
 mod series;
 mod tallied;
 mod whole;
 
+pub use archive::{Archive, ArchiveError, ArchiveKey, Deferred, Follow, Stretch};
 pub use bench::{Bench, Rows, Task};
 pub use course::{AlarmCount, Binding, Course, Least};
 pub use day::{Beginning, CorridorDay, Day, FileNote, MeterNote, SourceNote};
 pub use durations::Durations;
+pub use part::{Part, PartError, Terms};
+pub use run::{Done, Output, Run};
 pub use series::{Series, Slot};
 pub use tallied::{Share, Tallied};
 pub use whole::{Brief, CorridorReview, DayFigures, Review};

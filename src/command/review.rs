@@ -1,0 +1,174 @@
+//! `tautline review`: recorded days on paper.
+
+use std::{
+    collections::BTreeMap,
+    fs,
+    io::{Write, stdout},
+    num::NonZeroUsize,
+    path::{Path, PathBuf},
+    sync::Arc,
+};
+
+use chrono::NaiveDate;
+use clap::Args;
+
+use super::{Failure, assess::Sources, progress};
+use crate::{
+    config::Config,
+    feed::Channels,
+    review::{Day, Done, Part, PartError, Review, Run, Stretch, Task, Terms},
+};
+
+/// Options of `review`.
+#[derive(Debug, Args)]
+pub struct Options {
+    /// Configuration file
+    #[arg(long, value_name = "FILE", required_unless_present = "merge")]
+    config: Option<PathBuf>,
+    /// Recorded files, in any order
+    #[arg(required_unless_present = "merge", value_name = "FILES")]
+    files: Vec<PathBuf>,
+    /// Put reviewed days together that --parts has kept: files, or folders of them
+    #[arg(long, value_name = "PARTS", num_args = 1.., conflicts_with_all = ["files", "config", "parts", "share", "carry", "sources"])]
+    merge: Vec<PathBuf>,
+    /// Keep each reviewed day in this folder, and go on from what is there
+    #[arg(long, value_name = "DIR")]
+    parts: Option<PathBuf>,
+    /// Review only a share of the days, as one of several jobs: 3/16 is the third of sixteen
+    #[arg(long, value_name = "K/N", requires = "parts", conflicts_with = "carry")]
+    share: Option<Share>,
+    /// Let a day that has no recorded start go on from the day before it
+    #[arg(long)]
+    carry: bool,
+    /// What stands behind the terminals [default: as the configuration says, else learned]
+    #[arg(long, value_enum)]
+    sources: Option<Sources>,
+    /// Threads to assess on [default: one a processor]
+    #[arg(long, value_name = "N")]
+    threads: Option<NonZeroUsize>,
+}
+
+/// One of several jobs.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+struct Share {
+    /// From 1.
+    number: usize,
+    of: usize,
+}
+
+impl std::str::FromStr for Share {
+    type Err = String;
+
+    fn from_str(text: &str) -> Result<Self, String> {
+        let numbers = text.split_once('/').and_then(|(number, of)| Some((number.parse().ok()?, of.parse().ok()?)));
+        match numbers {
+            Some((number, of)) if (1..=of).contains(&number) => Ok(Self { number, of }),
+            _ => Err("write K/N with K from 1 to N, as in 3/16".into()),
+        }
+    }
+}
+
+/// Runs it.
+pub fn run(options: &Options) -> Result<(), Failure> {
+    let (review, config) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
+    if review.days.is_empty() {
+        return Err("not a single frame was read".into());
+    }
+    write!(stdout(), "{review:?}")?;
+    let _ = config;
+    Ok(())
+}
+
+fn review(options: &Options) -> Result<(Review, Config), Failure> {
+    let path = options.config.as_deref().unwrap_or(Path::new(""));
+    let (mut config, text) = Config::load_with_text(path)?;
+    Sources::choose(options.sources, &mut config);
+    let terms = Terms {
+        program: env!("CARGO_PKG_VERSION").into(),
+        configuration: text.into(),
+        changes: Vec::new(),
+        learning: options.sources.map(|sources| sources == Sources::Learned),
+        carried: options.carry,
+    };
+    let stretches = options.stretches()?;
+    let task = Task { channels: Arc::new(Channels::new(&config)), config: Arc::new(config) };
+    if let Some(folder) = &options.parts {
+        fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()))?;
+    }
+    let progress = progress::bar("");
+    progress.inc_length(stretches.iter().map(Stretch::bytes).sum());
+    let known = |stretch: &Stretch, date: NaiveDate| known(options.parts.as_deref()?, &terms, stretch, date);
+    let run = Run {
+        task: &task,
+        stretches: &stretches,
+        threads: options.threads,
+        carry: options.carry,
+        output: &task.config.grid.corridors.len(),
+        known: &known,
+        follow: &progress::following(&progress),
+    };
+    let mut review = Review::new(task.config.feed.max_age());
+    run.go(|done: Done| -> Result<(), Failure> {
+        let mut day = done.day;
+        if let Some(folder) = options.parts.as_deref().filter(|_| !done.was_known) {
+            let part = Part::new(terms.clone(), stretches[done.stretch].keys(), day);
+            part.save(folder)?;
+            day = part.day;
+        }
+        review.add(day);
+        Ok(())
+    })?;
+    progress.finish_and_clear();
+    Ok((review, Arc::unwrap_or_clone(task.config)))
+}
+
+/// A day that was reviewed before, from the same files and under the same terms.
+fn known(folder: &Path, terms: &Terms, stretch: &Stretch, date: NaiveDate) -> Option<Day> {
+    let part = Part::load(&Part::path(folder, date)).ok()?;
+    (part.terms == *terms && part.archives == stretch.keys()).then_some(part.day)
+}
+
+impl Options {
+    /// The files in stretches, or this job's share of them.
+    fn stretches(&self) -> Result<Vec<Stretch>, Failure> {
+        let progress = progress::bar("looking through ");
+        let follow = progress::following(&progress);
+        let stretches = Stretch::all(&self.files, &follow, |bytes| progress.inc_length(bytes))?;
+        progress.finish_and_clear();
+        let Some(Share { number, of }) = self.share else { return Ok(stretches) };
+        Ok(stretches.into_iter().skip(number - 1).step_by(of).collect())
+    }
+}
+
+/// Puts together what was reviewed before, exactly as one run would have.
+fn merge(paths: &[PathBuf]) -> Result<(Review, Config), Failure> {
+    let mut parts = BTreeMap::new();
+    let mut terms: Option<(PathBuf, Terms)> = None;
+    for path in Part::find(paths)? {
+        let part = Part::load(&path)?;
+        match &terms {
+            None => terms = Some((path.clone(), part.terms)),
+            Some((one, first)) => {
+                if let Some(what) = first.difference(&part.terms) {
+                    return Err(PartError::Terms { one: one.clone(), other: path, what }.into());
+                }
+            }
+        }
+        let date = part.day.date;
+        if let Some((one, archives)) = parts.insert(date, (path.clone(), part.archives.clone()))
+            && archives != part.archives
+        {
+            return Err(PartError::Twice { date, one, other: path }.into());
+        }
+    }
+    let Some((path, terms)) = terms else { return Err("nothing to merge".into()) };
+    let mut config = Config::parse(&terms.configuration, &format!("the configuration in {}", path.display()))?;
+    if let Some(learning) = terms.learning {
+        config.learning.enabled = learning;
+    }
+    let mut review = Review::new(config.feed.max_age());
+    for (path, _) in parts.into_values() {
+        review.add(Part::load(&path)?.day);
+    }
+    Ok((review, config))
+}

@@ -1,0 +1,213 @@
+//! Recorded files, in whatever order they are given, as stretches that can be reviewed apart from one another.
+
+use std::{
+    collections::{BTreeSet, HashSet},
+    fs::{self, File, Metadata},
+    io::{self, Read},
+    path::{Path, PathBuf},
+    sync::Arc,
+    time::UNIX_EPOCH,
+};
+
+use chrono::{DateTime, NaiveDate, SecondsFormat, Utc};
+use rayon::prelude::*;
+use serde::{Deserialize, Serialize};
+use thiserror::Error;
+
+use super::FileNote;
+use crate::feed::{Channels, Format, InputStatus, Monitor, Reader, Recorded};
+
+/// Follows the reading of a file.
+pub type Follow = dyn Fn(Deferred) -> Box<dyn Read + Send> + Sync;
+
+/// A file that cannot be reviewed.
+#[derive(Debug, Error)]
+#[error("cannot open {}: {source}", path.display())]
+pub struct ArchiveError {
+    path: PathBuf,
+    source: io::Error,
+}
+
+/// A recorded file.
+#[derive(Debug, Clone)]
+pub struct Archive {
+    path: PathBuf,
+    /// What tells it from others, and from what it was before it changed.
+    pub key: ArchiveKey,
+    /// Time of the first and the last frame, once they are known.
+    span: Option<(DateTime<Utc>, DateTime<Utc>)>,
+}
+
+/// What tells a file from others.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct ArchiveKey {
+    /// Its name, without the folder.
+    pub name: String,
+    /// Its size, bytes.
+    pub bytes: u64,
+    /// When it was written last, s since 1970.
+    pub modified_s: u64,
+}
+
+/// Files that share UTC days with one another, and none with others.
+#[derive(Debug, Clone)]
+pub struct Stretch {
+    /// In the order of their first frames.
+    pub archives: Vec<Archive>,
+    /// The first and the last day, where they are known.
+    pub days: Option<(NaiveDate, NaiveDate)>,
+    /// What there is to say of the files.
+    pub findings: Vec<String>,
+}
+
+impl Archive {
+    fn new(path: &Path) -> Result<Self, ArchiveError> {
+        let failed = |source| ArchiveError { path: path.to_owned(), source };
+        let metadata = fs::metadata(path).map_err(failed)?;
+        if metadata.is_dir() {
+            return Err(failed(io::ErrorKind::IsADirectory.into()));
+        }
+        // Whether it can be read is known before anything is begun.
+        File::open(path).map_err(failed)?;
+        Ok(Self { path: path.to_owned(), key: ArchiveKey::new(path, &metadata), span: None })
+    }
+
+    /// As it was given.
+    pub fn name(&self) -> String {
+        self.path.display().to_string()
+    }
+
+    fn reader(&self, channels: &Arc<Channels>, follow: &Follow) -> Reader {
+        let bytes = follow(Deferred { path: self.path.clone(), file: None });
+        Reader::new(&self.name(), bytes, Format::of(&self.path), channels)
+    }
+
+    /// Reads through it for its first and last time.
+    fn measured(mut self, follow: &Follow) -> Self {
+        let none = Arc::new(Channels::none());
+        let frames = Recorded::new(vec![self.reader(&none, follow)], &none);
+        for frame in frames {
+            self.span = Some((self.span.map_or(frame.time, |(first, _)| first), frame.time));
+        }
+        self
+    }
+}
+
+impl ArchiveKey {
+    fn new(path: &Path, metadata: &Metadata) -> Self {
+        let modified = metadata.modified().ok().and_then(|time| time.duration_since(UNIX_EPOCH).ok());
+        Self {
+            name: path.file_name().unwrap_or(path.as_os_str()).to_string_lossy().into_owned(),
+            bytes: metadata.len(),
+            modified_s: modified.map_or(0, |modified| modified.as_secs()),
+        }
+    }
+}
+
+impl Stretch {
+    /// Sorts files into stretches, in the order of time; for that, several are read through first. `expect` is told how much that is.
+    pub fn all(paths: &[PathBuf], follow: &Follow, expect: impl FnOnce(u64)) -> Result<Vec<Self>, ArchiveError> {
+        let mut known = HashSet::new();
+        let mut twice = BTreeSet::new();
+        let mut archives = Vec::new();
+        for path in paths {
+            let archive = Archive::new(path)?;
+            if known.insert(fs::canonicalize(path).unwrap_or_else(|_| path.clone())) {
+                archives.push(archive);
+            } else {
+                twice.insert(format!("{}: given twice, read once", path.display()));
+            }
+        }
+        if archives.len() > 1 {
+            expect(archives.iter().map(|archive| archive.key.bytes).sum());
+            archives = archives.into_par_iter().map(|archive| archive.measured(follow)).collect();
+        }
+        archives.sort_by_key(|archive| archive.span);
+        let mut stretches: Vec<Self> = Vec::new();
+        for archive in archives {
+            match stretches.last_mut() {
+                Some(stretch) if stretch.shares_a_day_with(&archive) => stretch.add(archive),
+                _ => stretches.push(Self::of(archive)),
+            }
+        }
+        if let Some(first) = stretches.first_mut() {
+            first.findings.extend(twice);
+        }
+        Ok(stretches)
+    }
+
+    fn of(archive: Archive) -> Self {
+        let days = archive.span.map(|(first, last)| (first.date_naive(), last.date_naive()));
+        Self { archives: vec![archive], days, findings: Vec::new() }
+    }
+
+    /// Files without a frame come first, and share nothing.
+    fn shares_a_day_with(&self, archive: &Archive) -> bool {
+        self.days.zip(archive.span).is_some_and(|((_, last), (first, _))| first.date_naive() <= last)
+    }
+
+    fn add(&mut self, archive: Archive) {
+        let Some((first, last)) = archive.span else { return };
+        let stamp = |time: DateTime<Utc>| time.to_rfc3339_opts(SecondsFormat::AutoSi, true);
+        for other in &self.archives {
+            if let Some((_, end)) = other.span.filter(|(_, end)| *end >= first) {
+                let (other, until) = (other.name(), stamp(end.min(last)));
+                let what = "frames of the same time are joined, and of two values the better or else the first stands";
+                self.findings.push(format!(
+                    "{} overlaps with {other} from {} to {until}: {what}",
+                    archive.name(),
+                    stamp(first)
+                ));
+            }
+        }
+        self.days = self.days.map(|(begin, end)| (begin, end.max(last.date_naive())));
+        self.archives.push(archive);
+    }
+
+    /// What tells its files from others.
+    pub fn keys(&self) -> Vec<ArchiveKey> {
+        self.archives.iter().map(|archive| archive.key.clone()).collect()
+    }
+
+    /// Size of its files.
+    pub fn bytes(&self) -> u64 {
+        self.archives.iter().map(|archive| archive.key.bytes).sum()
+    }
+
+    /// The files that a day was read from. What of a file could not be used is said on its last day.
+    pub(super) fn notes(&self, date: NaiveDate, is_last: bool, monitor: &Monitor) -> Vec<FileNote> {
+        let inputs = self.archives.iter().zip(monitor.inputs());
+        let on_this_day = inputs.filter(|(archive, _)| {
+            archive.span.is_none_or(|(first, last)| (first.date_naive()..=last.date_naive()).contains(&date))
+        });
+        let note = |(archive, input): (&Archive, InputStatus)| {
+            let ends = archive.span.map_or(is_last, |(_, last)| last.date_naive() == date);
+            FileNote { name: archive.name(), findings: if ends { input.tally.findings() } else { Vec::new() } }
+        };
+        on_this_day.map(note).collect()
+    }
+
+    /// The frames of all its files in one order of time, each file opened when its time comes.
+    pub fn open(&self, channels: &Arc<Channels>, follow: &Follow) -> Recorded {
+        let from = |archive: &Archive| archive.span.map_or(DateTime::<Utc>::MIN_UTC, |(first, _)| first);
+        let readers = self.archives.iter().map(|archive| (from(archive), archive.reader(channels, follow)));
+        Recorded::in_turn(readers.collect(), channels)
+    }
+}
+
+/// A file that is opened when it is read for the first time: hundreds of them cost nothing.
+#[derive(Debug)]
+pub struct Deferred {
+    path: PathBuf,
+    file: Option<File>,
+}
+
+impl Read for Deferred {
+    fn read(&mut self, bytes: &mut [u8]) -> io::Result<usize> {
+        let file = match &mut self.file {
+            Some(file) => file,
+            none => none.insert(File::open(&self.path)?),
+        };
+        file.read(bytes)
+    }
+}

@@ -1,0 +1,203 @@
+//! Stretches of recorded days on all cores: within one, corridors side by side while the next frames are read; and
+//! several stretches at once. The days come out in the order of time.
+
+use std::{
+    collections::VecDeque,
+    io,
+    iter::Peekable,
+    num::NonZeroUsize,
+    sync::{
+        Mutex, PoisonError,
+        mpsc::{Receiver, SyncSender, sync_channel},
+    },
+    thread,
+};
+
+use chrono::NaiveDate;
+use rayon::{ThreadPool, ThreadPoolBuilder};
+
+use super::{Bench, Day, Follow, Rows, Stretch, Task};
+use crate::feed::{Frame, Recorded};
+
+/// Frames assessed at once.
+const BATCH_FRAMES: usize = 128;
+
+/// Where the rows of each day go.
+pub trait Output: Sync {
+    /// Takes the rows of one corridor.
+    type Rows: Rows;
+    /// Takes those of all corridors on one day.
+    type Book: Send;
+    /// Begins a day, with rows for each corridor.
+    fn open(&self, date: NaiveDate) -> io::Result<(Self::Book, Vec<Self::Rows>)>;
+    /// Looks after rows that have come, the last ones of the day included.
+    fn turn(&self, book: &mut Self::Book, rows: &mut Self::Rows, is_last: bool) -> io::Result<()>;
+    /// Ends a day.
+    fn close(&self, book: Self::Book) -> io::Result<()>;
+}
+
+/// What is to be done.
+pub struct Run<'a, O> {
+    /// How to review.
+    pub task: &'a Task,
+    /// What to review, in the order of time.
+    pub stretches: &'a [Stretch],
+    /// Threads that assess; `None`: one a processor.
+    pub threads: Option<NonZeroUsize>,
+    /// Days without a recorded start go on from the day before them, one after another.
+    pub carry: bool,
+    /// Where rows go.
+    pub output: &'a O,
+    /// A day that was reviewed before.
+    pub known: &'a (dyn Fn(&Stretch, NaiveDate) -> Option<Day> + Sync),
+    /// Follows the reading.
+    pub follow: &'a Follow,
+}
+
+/// A day that is done.
+pub struct Done {
+    /// The day.
+    pub day: Day,
+    /// Its stretch, by place.
+    pub stretch: usize,
+    /// Whether it was known before.
+    pub was_known: bool,
+}
+
+/// A stretch to be done, and where its days go.
+type Job = (usize, SyncSender<io::Result<Done>>);
+
+impl<O: Output> Run<'_, O> {
+    /// Reviews everything; `each` gets the days in the order of time, and may end it by failing.
+    pub fn go<E: From<io::Error>>(&self, mut each: impl FnMut(Done) -> Result<(), E>) -> Result<(), E> {
+        let threads = self.threads.map_or(0, NonZeroUsize::get);
+        let pool = ThreadPoolBuilder::new().num_threads(threads).build().map_err(io::Error::other)?;
+        let workers = if self.carry { 1 } else { pool.current_num_threads().min(self.stretches.len()) };
+        let (jobs, taken) = sync_channel::<Job>(workers);
+        let (pool, taken) = (&pool, &Mutex::new(taken));
+        thread::scope(|scope| {
+            // Gone with the scope: that is what ends the workers.
+            let jobs = jobs;
+            for _ in 0..workers {
+                scope.spawn(move || self.work(pool, taken));
+            }
+            let mut ahead: VecDeque<Receiver<io::Result<Done>>> = VecDeque::new();
+            let mut next = 0..self.stretches.len();
+            loop {
+                // Not so far ahead that days pile up.
+                while ahead.len() < 2 * workers
+                    && let Some(stretch) = next.next()
+                {
+                    let (days, coming) = sync_channel(1);
+                    if jobs.send((stretch, days)).is_err() {
+                        break;
+                    }
+                    ahead.push_back(coming);
+                }
+                let Some(days) = ahead.pop_front() else { return Ok(()) };
+                for done in days {
+                    each(done?)?;
+                }
+            }
+        })
+    }
+
+    fn work(&self, pool: &ThreadPool, jobs: &Mutex<Receiver<Job>>) {
+        let mut carried = None;
+        loop {
+            let job = jobs.lock().unwrap_or_else(PoisonError::into_inner).recv();
+            let Ok((stretch, days)) = job else { return };
+            if let Err(error) = self.stretch(stretch, pool, &mut carried, &days) {
+                // Nobody listens any more when the whole run has failed already.
+                let _unheard = days.send(Err(error));
+            }
+        }
+    }
+
+    fn stretch(
+        &self,
+        place: usize,
+        pool: &ThreadPool,
+        carried: &mut Option<Bench<O::Rows>>,
+        days: &SyncSender<io::Result<Done>>,
+    ) -> io::Result<()> {
+        let stretch = &self.stretches[place];
+        let send = |day, was_known| days.send(Ok(Done { day, stretch: place, was_known })).is_ok();
+        if let Some((first, last)) = stretch.days
+            && !self.carry
+            && (self.known)(stretch, last).is_some()
+        {
+            // The last day is done after all others.
+            let known =
+                first.iter_days().take_while(|date| *date <= last).filter_map(|date| (self.known)(stretch, date));
+            let _all_heard = known.map(|day| send(day, true)).all(|heard| heard);
+            return Ok(());
+        }
+        let recorded = stretch.open(&self.task.channels, self.follow);
+        let monitor = recorded.monitor().clone();
+        let mut frames = recorded.peekable();
+        let mut findings = stretch.findings.clone();
+        while let Some(date) = frames.peek().map(|frame| frame.time.date_naive()) {
+            if let Some(day) = (self.known)(stretch, date).filter(|_| !self.carry) {
+                while !batch(&mut frames, date).is_empty() {}
+                if !send(day, true) {
+                    return Ok(());
+                }
+                continue;
+            }
+            let (mut book, rows) = self.output.open(date)?;
+            let mut bench = match carried.take() {
+                Some(bench) => bench.with_rows(rows),
+                None => Bench::new(self.task, rows),
+            };
+            let mut now = batch(&mut frames, date);
+            while !now.is_empty() {
+                let mut next = Vec::new();
+                pool.in_place_scope(|scope| {
+                    scope.spawn(|_| bench.take(&now));
+                    next = batch(&mut frames, date);
+                });
+                bench.rows().try_for_each(|rows| self.output.turn(&mut book, rows, false))?;
+                now = next;
+            }
+            bench.rows().try_for_each(|rows| self.output.turn(&mut book, rows, true))?;
+            self.output.close(book)?;
+            let files = stretch.notes(date, frames.peek().is_none(), &monitor);
+            let day = bench.finish(files, std::mem::take(&mut findings));
+            *carried = self.carry.then_some(bench);
+            if !day.is_none_or(|day| send(day, false)) {
+                return Ok(());
+            }
+        }
+        Ok(())
+    }
+}
+
+/// The next frames of a day; none when they are all taken.
+fn batch(frames: &mut Peekable<Recorded>, date: NaiveDate) -> Vec<Frame> {
+    let mut batch = Vec::new();
+    while batch.len() < BATCH_FRAMES
+        && let Some(frame) = frames.next_if(|frame| frame.time.date_naive() == date)
+    {
+        batch.push(frame);
+    }
+    batch
+}
+
+/// Keeps no rows.
+impl Output for usize {
+    type Rows = ();
+    type Book = ();
+
+    fn open(&self, _date: NaiveDate) -> io::Result<((), Vec<()>)> {
+        Ok(((), vec![(); *self]))
+    }
+
+    fn turn(&self, _book: &mut (), _rows: &mut (), _is_last: bool) -> io::Result<()> {
+        Ok(())
+    }
+
+    fn close(&self, _book: ()) -> io::Result<()> {
+        Ok(())
+    }
+}

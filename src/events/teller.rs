@@ -198,7 +198,11 @@ pub(super) fn span(span: TimeDelta) -> String {
     match span.num_milliseconds() {
         ms @ ..1000 => format!("{ms} ms"),
         ms @ 1000..120_000 => format!("{} s", ms / 1000),
-        ms => format!("{} min", ms / 60_000),
+        ms @ 120_000..7_200_000 => format!("{} min", ms / 60_000),
+        ms => match (ms / 3_600_000, ms / 60_000 % 60) {
+            (hours, 0) => format!("{hours} h"),
+            (hours, minutes) => format!("{hours} h {minutes} min"),
+        },
     }
 }
 

@@ -1,0 +1,97 @@
+//! Reviewed days that are kept, shared out over jobs, and put together.
+
+use std::{fs, path::PathBuf, time::SystemTime};
+
+use assert_cmd::Command;
+
+use crate::bed::{Bed, name};
+
+fn review(bed: &Bed, more: &[&str]) -> (bool, String, String) {
+    let output = Command::cargo_bin("tautline")
+        .unwrap()
+        .current_dir(bed.folder.path())
+        .arg("review")
+        .args(more)
+        .output()
+        .unwrap();
+    let text = |bytes| String::from_utf8(bytes).unwrap();
+    (output.status.success(), text(output.stdout), text(output.stderr))
+}
+
+fn days(bed: &Bed) -> Vec<String> {
+    let day = |day: usize| name(&bed.file(&format!("{day}.jsonl.zst"), bed.hours(24 * day..24 * day + 24)));
+    (0..3).map(day).collect()
+}
+
+fn parts(bed: &Bed) -> Vec<(PathBuf, SystemTime)> {
+    let entries = fs::read_dir(bed.path("parts")).unwrap().map(|entry| entry.unwrap().path());
+    let mut parts: Vec<_> =
+        entries.map(|path| (path.clone(), fs::metadata(path).unwrap().modified().unwrap())).collect();
+    parts.sort();
+    parts
+}
+
+#[test]
+fn jobs_with_nothing_but_files_in_common_do_what_one_run_does() {
+    let bed = Bed::new(60.0);
+    let files = days(&bed);
+    let files: Vec<&str> = files.iter().map(String::as_str).collect();
+    let with = |more: &[&'static str]| [&["--config", "config.toml"], &files[..], more].concat();
+    let (_, whole, _) = review(&bed, &with(&["--json", "-"]));
+    for share in ["1/2", "2/2"] {
+        let (done, _, said) = review(&bed, &with(&["--parts", "parts", "--share", share]));
+        assert!(done, "{said}");
+    }
+    assert_eq!(parts(&bed).len(), 3);
+    let (_, merged, said) = review(&bed, &["--merge", "parts", "--json", "-"]);
+    assert!(said.is_empty(), "{said}");
+    assert_eq!(merged, whole);
+}
+
+#[test]
+fn it_goes_on_where_it_was_stopped() {
+    let bed = Bed::new(60.0);
+    let files = days(&bed);
+    let files: Vec<&str> = files.iter().map(String::as_str).collect();
+    let run = || review(&bed, &[&["--config", "config.toml", "--parts", "parts", "--json", "-"], &files[..]].concat());
+    let (_, whole, _) = run();
+    let first = parts(&bed);
+    fs::remove_file(&first[1].0).unwrap();
+    fs::write(&first[2].0, "half a p").unwrap();
+    let (_, again, _) = run();
+    assert_eq!(again, whole);
+    let second = parts(&bed);
+    assert_eq!(second[0], first[0], "what was done is not done again");
+    assert!(second[1].1 > first[1].1 && second[2].1 > first[2].1);
+    // Another file under the same name is another day.
+    bed.file("0.jsonl.zst", bed.hours(0..5));
+    let (_, other, _) = run();
+    assert_ne!(other, whole);
+}
+
+#[test]
+fn parts_that_do_not_go_together_are_refused() {
+    let bed = Bed::new(30.0);
+    let file = name(&bed.file("0.jsonl", bed.hours(0..24)));
+    let next = name(&bed.file("1.jsonl", bed.hours(24..30)));
+    let half = name(&bed.file("half.jsonl", bed.hours(0..3)));
+    let base = ["--config", "config.toml"];
+    review(&bed, &[&base[..], &["--parts", "a", &file]].concat());
+    review(&bed, &[&base[..], &["--parts", "b", "--sources", "configured", &next]].concat());
+    review(&bed, &[&base[..], &["--parts", "c", &half]].concat());
+    let said = |more: &[&str]| {
+        let (done, _, said) = review(&bed, more);
+        assert!(!done);
+        said
+    };
+    assert!(said(&["--merge", "a", "b"]).contains("another --sources"));
+    assert!(said(&["--merge", "a", "c"]).contains("2031-03-14 is in"));
+    fs::create_dir(bed.path("d")).unwrap();
+    assert!(said(&["--merge", "d"]).contains("no reviewed day in there"));
+    assert!(
+        said(&["--merge", "0.jsonl"]).contains("not a reviewed day")
+            || said(&["--merge", "0.jsonl"]).contains("0.jsonl")
+    );
+    let (done, ..) = review(&bed, &["--merge", "a", "a"]);
+    assert!(done, "the same part twice is one part");
+}

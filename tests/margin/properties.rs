@@ -25,7 +25,7 @@ pub struct Invented {
 }
 
 pub fn invented() -> impl Strategy<Value = Invented> {
-    let circuit = (80.0..320.0, prop::option::of(5.0..25.0));
+    let circuit = (80.0..320.0, prop::option::of(5.0..24.0));
     let source = [0.3..2.0, 6.0..30.0, 0.0..10.0];
     let fault = (prop_oneof![Just("three-phase"), Just("phase-phase"), Just("phase-earth")], 0.0..1.0, 50.0..150.0);
     let load = [0.0..900.0, -50.0..200.0];

@@ -6,7 +6,7 @@ use chrono::TimeDelta;
 use criterion::{Criterion, criterion_group, criterion_main};
 use tautline::{
     config::Config,
-    desk::Desk,
+    desk::{Alternative, Desk},
     feed::{Channels, Decoder, Format, Holder, Tally},
 };
 
@@ -27,6 +27,12 @@ fn assess(criterion: &mut Criterion) {
     assert_eq!(desk.assess(&snapshot)[0].outages.len(), 5);
     criterion.bench_function("assess/three circuits", |bencher| {
         bencher.iter(|| desk.assess(black_box(&snapshot)));
+    });
+    let with = ["open SV1".to_owned(), "transfer Skarn-Velm -100".to_owned()];
+    let alternatives = Alternative::parse(&with, &[], &config.grid).expect("right changes");
+    let mut alternative = alternatives.into_iter().next().flatten().expect("the corridor is changed");
+    criterion.bench_function("assess/three circuits, with a change", |bencher| {
+        bencher.iter(|| desk.corridors[0].assess_with(black_box(&snapshot), &mut alternative));
     });
     let record = &desk.assess(&snapshot)[0];
     let mut bytes = Vec::new();

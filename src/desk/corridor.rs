@@ -1,17 +1,17 @@
 use std::sync::Arc;
 
 use super::{
-    Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Learned, Reclose, SourceRecord,
-    State, Switch, SwitchKind,
+    Alternative, Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Learned, Reclose,
+    SourceRecord, State, Switch, SwitchKind,
 };
 use crate::{
     config::Config,
     feed::{Channels, Slot, Snapshot},
     fit::{Fit, FittedState, Fitter, Standing},
     grid::{Circuit, Corridor, FROM, TO},
-    margin::{Behind, Engine, Judgement, Present, Seated, Trend},
+    margin::{Behind, Engine, Footing, Judgement, Present, Seated, Trend},
     network::Topology,
-    source::{Learner, Observation, Step},
+    source::{Estimate, Learner, Observation, Step},
 };
 
 /// One corridor with what is remembered of it.
@@ -72,20 +72,59 @@ impl CorridorDesk {
     /// This corridor at a snapshot.
     pub fn assess(&mut self, snapshot: &Snapshot) -> Assessment {
         let fit = self.fit(snapshot);
-        match &fit.standing {
-            Standing::Joined(state) => self.joined(snapshot, &fit, state),
-            Standing::Parted { state, angle_known } => self.parted(snapshot, &fit, state, *angle_known),
-            Standing::Blind => self.blank(snapshot, &fit),
-        }
+        self.assess_fit(snapshot, &fit).0
+    }
+
+    /// This corridor at a snapshot, as [`Self::assess`] says, and what it would be with a change: one fit, learned from
+    /// once, judged twice. Blind or parted, it stays what it is; where the change leaves no balance, it is spent, bound
+    /// by its own angle, and has no headroom.
+    pub fn assess_with(&mut self, snapshot: &Snapshot, alternative: &mut Alternative) -> (Assessment, Assessment) {
+        let fit = self.fit(snapshot);
+        let topology = alternative.topology(&fit.topology);
+        let (present, ground) = self.assess_fit(snapshot, &fit);
+        let altered = match (&fit.standing, ground) {
+            (Standing::Joined(state), Some((seated, footing))) if present.state != State::Blind => {
+                let altered = alternative.alter(&self.corridor, &fit, state, &seated, &footing, topology);
+                altered.map_or_else(|| self.unbalanced(snapshot, &fit), |fit| self.altered(snapshot, &fit, alternative))
+            }
+            _ => present.clone(),
+        };
+        (present, altered)
+    }
+
+    /// The assessment of a fit, and what a change would start from.
+    fn assess_fit(&mut self, snapshot: &Snapshot, fit: &Fit) -> (Assessment, Option<(Seated, Footing)>) {
+        let Standing::Joined(state) = &fit.standing else { return (self.apart(snapshot, fit), None) };
+        let (seated, step) = self.take_in(snapshot, fit, state);
+        let behind = behind(fit, self.learner.estimate());
+        let judgement = self.engine.judge(&self.corridor, &present(fit, state), &seated, &behind);
+        self.trend.push(snapshot.time, judgement.headroom_mw);
+        let footing = judgement.footing;
+        let assessment = self.joined(snapshot, fit, state, &seated, judgement, &self.trend);
+        (Assessment { step, ..assessment }, Some((seated, footing)))
+    }
+
+    /// The assessment of a fit that a change was made to.
+    fn altered(
+        &self,
+        snapshot: &Snapshot,
+        fit: &Fit,
+        Alternative { engine, trend, .. }: &mut Alternative,
+    ) -> Assessment {
+        let Standing::Joined(state) = &fit.standing else { return self.apart(snapshot, fit) };
+        let present = present(fit, state);
+        let seated = engine.seat(&self.corridor, &present);
+        let behind = behind(fit, self.learner.estimate());
+        let judgement = engine.judge(&self.corridor, &present, &seated, &behind);
+        trend.push(snapshot.time, judgement.headroom_mw);
+        self.joined(snapshot, fit, state, &seated, judgement, trend)
     }
 
     /// Learns from a snapshot without judging it: far cheaper where nobody looks at every frame.
     pub fn follow(&mut self, snapshot: &Snapshot) {
         let fit = self.fit(snapshot);
         if let Standing::Joined(state) = &fit.standing {
-            let present = Present { topology: &fit.topology, voltage: &state.voltage, load: &state.load };
-            let seated = self.engine.seat(&self.corridor, &present);
-            self.learn(snapshot, &fit, state, &seated);
+            self.take_in(snapshot, &fit, state);
         }
     }
 
@@ -101,22 +140,27 @@ impl CorridorDesk {
         fit
     }
 
-    fn joined(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState) -> Assessment {
-        let present = Present { topology: &fit.topology, voltage: &state.voltage, load: &state.load };
-        let seated = self.engine.seat(&self.corridor, &present);
+    /// Seats a state and learns from it.
+    fn take_in(&mut self, snapshot: &Snapshot, fit: &Fit, state: &FittedState) -> (Seated, Option<Step>) {
+        let seated = self.engine.seat(&self.corridor, &present(fit, state));
         let step = self.learn(snapshot, fit, state, &seated);
-        let estimate = self.learner.estimate();
-        let behind = Behind {
-            z_ohm: estimate.z_ohm(),
-            covariance: &estimate.covariance,
-            stored_energy_mws: fit.stored_energy_mws,
-        };
-        let judgement = self.engine.judge(&self.corridor, &present, &seated, &behind);
+        (seated, step)
+    }
+
+    /// Closed circuits join the terminals.
+    fn joined(
+        &self,
+        snapshot: &Snapshot,
+        fit: &Fit,
+        state: &FittedState,
+        seated: &Seated,
+        judgement: Judgement,
+        trend: &Trend,
+    ) -> Assessment {
         if !judgement.headroom_mw.is_finite() {
             return self.blank(snapshot, fit);
         }
         let headroom = judgement.headroom_mw;
-        self.trend.push(snapshot.time, headroom);
         let thin_mw = self.corridor.thin_mw;
         let sure = headroom - self.corridor.state_spreads * judgement.headroom_sd_mw;
         let [from, to] = judgement.e_kv;
@@ -138,12 +182,11 @@ impl CorridorDesk {
             ],
             headroom_mw: Some(headroom),
             headroom_sd_mw: Some(judgement.headroom_sd_mw),
-            minutes_to_thin: self.trend.minutes_to(thin_mw, sure),
-            minutes_to_spent: self.trend.minutes_to(0.0, sure),
-            detail: self.detailed.then(|| Arc::new(self.detail(fit, state, &seated, &judgement))),
+            minutes_to_thin: trend.minutes_to(thin_mw, sure),
+            minutes_to_spent: trend.minutes_to(0.0, sure),
+            detail: self.detailed.then(|| Arc::new(self.detail(fit, state, seated, &judgement))),
             intact: Some(judgement.intact),
             outages: judgement.outages,
-            step,
             binding: Some(judgement.binding),
             actions: judgement.actions,
             reclose: judgement.reclose,
@@ -169,6 +212,20 @@ impl CorridorDesk {
             });
         }
         step
+    }
+
+    /// Closed circuits do not join the terminals, or too little is known to say.
+    fn apart(&self, snapshot: &Snapshot, fit: &Fit) -> Assessment {
+        match &fit.standing {
+            Standing::Parted { state, angle_known } => self.parted(snapshot, fit, state, *angle_known),
+            Standing::Joined(_) | Standing::Blind => self.blank(snapshot, fit),
+        }
+    }
+
+    /// What a change asks for is beyond the peak of the curve.
+    fn unbalanced(&self, snapshot: &Snapshot, fit: &Fit) -> Assessment {
+        let binding = Some(Binding { outage: None, criterion: Criterion::Angle });
+        Assessment { state: State::Spent, binding, ..self.blank(snapshot, fit) }
     }
 
     /// Nothing joins the terminals: not a megawatt more, until a circuit is closed.
@@ -221,9 +278,17 @@ impl CorridorDesk {
             minutes_to_thin: None,
             minutes_to_spent: None,
             thin_mw: self.corridor.thin_mw,
-            switches: self.switches.clone(),
+            switches: self.switches(&fit.topology),
             step: None,
             detail: None,
+        }
+    }
+
+    fn switches(&self, topology: &Topology) -> Arc<[Switch]> {
+        if self.topology.as_ref() == Some(topology) {
+            self.switches.clone()
+        } else {
+            switches(&self.corridor, topology)
         }
     }
 
@@ -282,6 +347,14 @@ fn switches(corridor: &Corridor, topology: &Topology) -> Arc<[Switch]> {
         [switch(&circuit.name, SwitchKind::Circuit, *closed)].into_iter().chain(banks)
     });
     each.collect()
+}
+
+fn present<'a>(fit: &'a Fit, state: &'a FittedState) -> Present<'a> {
+    Present { topology: &fit.topology, voltage: &state.voltage, load: &state.load }
+}
+
+fn behind<'a>(fit: &Fit, estimate: &'a Estimate) -> Behind<'a> {
+    Behind { z_ohm: estimate.z_ohm(), covariance: &estimate.covariance, stored_energy_mws: fit.stored_energy_mws }
 }
 
 fn banks(circuit: &Circuit, inserted: &[bool]) -> Vec<(Arc<str>, bool)> {

@@ -1,14 +1,18 @@
 //! Takes each corridor of a snapshot from measurements to an assessment: a pure function of configuration and frames.
 
+mod alternative;
 mod assessment;
+mod change;
 mod corridor;
 
 use std::sync::Arc;
 
 pub use crate::margin::{Action, Binding, Criterion, Intact, IntactLimits, OutageLimits, OutageRecord, Reclose};
+pub use alternative::Alternative;
 pub use assessment::{
     Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, Learned, SourceRecord, State, Switch, SwitchKind,
 };
+pub use change::ChangeErrors;
 pub use corridor::CorridorDesk;
 
 use crate::{

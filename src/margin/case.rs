@@ -95,9 +95,11 @@ impl Case {
 }
 
 impl CaseSet {
-    pub fn new(corridor: &Corridor, topology: &Topology, exporter: BusIndex) -> Self {
+    /// Without the outages of these names.
+    pub fn new(corridor: &Corridor, topology: &Topology, exporter: BusIndex, without: &[Arc<str>]) -> Self {
         let present = Case::new(corridor, topology, exporter);
         let outages = outages(corridor, topology)
+            .filter(|(name, ..)| !without.contains(name))
             .map(|(name, circuits, banks)| {
                 let after = topology.without(&circuits, &banks);
                 let after = after.joins_terminals(corridor).then(|| Case::new(corridor, &after, exporter));

@@ -1,9 +1,11 @@
 //! One corridor judged: every outage, the limits, the headroom, what can be done.
 
+use std::sync::Arc;
+
 use nalgebra::Matrix4;
 
 use super::{
-    Action, Binding, Intact, Machine, OutageRecord, Picture, Reclose,
+    Action, Binding, Footing, Intact, Machine, OutageRecord, Picture, Reclose,
     case::{CaseSet, seat},
     outage::Outage,
     reclose,
@@ -50,7 +52,8 @@ pub struct Seated {
     /// By circuit, also the open ones.
     pub circuits: Vec<CircuitFlow>,
     set: usize,
-    loads: Vec<C64>,
+    /// By seat, S.
+    pub(super) loads: Vec<C64>,
 }
 
 /// All that is found of a corridor in one state.
@@ -80,6 +83,8 @@ pub struct Judgement {
     pub reclose: Vec<Reclose>,
     /// The present curve, sources of the swing.
     pub picture: Picture,
+    /// What a change would start from.
+    pub footing: Footing,
 }
 
 /// What a circuit carries.
@@ -95,9 +100,10 @@ pub struct CircuitFlow {
 #[derive(Debug, Clone)]
 pub struct Engine {
     frequency_hz: f64,
-    sets: Vec<(Topology, CaseSet)>,
+    without: Vec<Arc<str>>,
+    pub(super) sets: Vec<(Topology, CaseSet)>,
     sensitivity: Option<Sensitivity>,
-    scratch: Admittance,
+    pub(super) scratch: Admittance,
 }
 
 /// Topologies kept: the present one and those of the actions at hand, for both directions.
@@ -106,7 +112,14 @@ const SETS_KEPT: usize = 24;
 impl Engine {
     /// For a corridor of a grid of this frequency, Hz.
     pub fn new(frequency_hz: f64) -> Self {
-        Self { frequency_hz, sets: Vec::new(), sensitivity: None, scratch: Admittance::new(2) }
+        let (without, sets) = (Vec::new(), Vec::new());
+        Self { frequency_hz, without, sets, sensitivity: None, scratch: Admittance::new(2) }
+    }
+
+    /// Reckoning no longer with the outages of these names.
+    #[must_use]
+    pub fn without(self, outages: Vec<Arc<str>>) -> Self {
+        Self { without: outages, sets: Vec::new(), ..self }
     }
 
     /// Takes a state in, before it is judged.
@@ -165,6 +178,7 @@ impl Engine {
             actions: Vec::new(),
             reclose,
             picture: Picture { curve: stress.swing_curve(&point), p_m_mw: point.p_m_mw, angle_rad: point.angle_rad },
+            footing: Footing { stress, angle_rad: angle },
         };
         self.sensitivity = Some(sensitivity);
         let actions = self.actions(corridor, now.topology, exporter, loads, &stress, stress.p_m_mw(angle));
@@ -189,14 +203,14 @@ impl Engine {
         (flows, sent_mw)
     }
 
-    fn find(&mut self, corridor: &Corridor, topology: &Topology, exporter: BusIndex) -> usize {
+    pub(super) fn find(&mut self, corridor: &Corridor, topology: &Topology, exporter: BusIndex) -> usize {
         let known = self.sets.iter().position(|(known, set)| set.exporter == exporter && known == topology);
         known.unwrap_or_else(|| {
             if self.sets.len() == SETS_KEPT {
                 self.sets.clear();
                 self.sensitivity = None;
             }
-            self.sets.push((topology.clone(), CaseSet::new(corridor, topology, exporter)));
+            self.sets.push((topology.clone(), CaseSet::new(corridor, topology, exporter, &self.without)));
             self.sets.len() - 1
         })
     }
@@ -245,7 +259,7 @@ impl Engine {
         for (action, after) in insert.chain(close) {
             let index = self.prepare(corridor, &after, exporter, loads);
             let set = &self.sets[index].1;
-            let stress = Stress::new(&set.present, stress.sources, stress.machine, loads[0]);
+            let stress = stress.in_network(&set.present);
             let headroom_mw = stress.settled.curve.rising_rad(p_m_mw).map(|angle| {
                 let scene = Scene { corridor, set, machine: stress.machine, loads, terminals: [C64::default(); 2] };
                 scene.tightest(&stress, angle).limit_mw - stress.transfer_at(angle)
@@ -256,7 +270,7 @@ impl Engine {
     }
 }
 
-fn separated(name: std::sync::Arc<str>, corridor: &Corridor) -> OutageRecord {
+fn separated(name: Arc<str>, corridor: &Corridor) -> OutageRecord {
     OutageRecord {
         name,
         separates: true,

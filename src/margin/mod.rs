@@ -4,6 +4,7 @@ mod case;
 mod engine;
 mod equal_area;
 mod face;
+mod footing;
 mod machine;
 mod outage;
 mod picture;
@@ -19,6 +20,7 @@ mod trend;
 mod view;
 
 pub use engine::{Behind, CircuitFlow, Engine, Judgement, Present, Seated};
+pub use footing::Footing;
 pub use machine::Machine;
 pub use picture::{OutagePicture, Picture};
 pub use power_angle::PowerAngle;

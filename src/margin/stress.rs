@@ -91,6 +91,25 @@ impl Stress {
         Self { sources, machine, load, settled, swing, start_rad, end_rad }
     }
 
+    /// The same sources round another network with the same loads.
+    pub fn in_network(&self, present: &Case) -> Self {
+        Self::new(present, self.sources, self.machine, self.load)
+    }
+
+    /// The internal angle that transfers so many MW more than another one, on the rising side of the curve, which
+    /// goes on through zero transfer; `None` beyond it.
+    pub fn shifted_rad(&self, angle_rad: f64, shift_mw: f64) -> Option<f64> {
+        if shift_mw == 0.0 {
+            return Some(angle_rad);
+        }
+        let transfer = PowerAngle::from(self.settled.transfer);
+        let angle = transfer.rising_rad(self.transfer_at(angle_rad) + shift_mw)?;
+        let lowest = self.end_rad - PI;
+        // A turn that has the rising side in its middle.
+        let above_lowest = (angle - lowest + FRAC_PI_2).rem_euclid(2.0 * PI) - FRAC_PI_2;
+        (0.0..=PI).contains(&above_lowest).then_some(lowest + above_lowest)
+    }
+
     /// Settled P_m at an internal angle, MW.
     pub fn p_m_mw(&self, angle_rad: f64) -> f64 {
         self.settled.curve.at(angle_rad)

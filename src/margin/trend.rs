@@ -32,7 +32,8 @@ impl Trend {
 
     /// Takes a headroom in, MW; more often than every ten seconds adds nothing.
     pub fn push(&mut self, time: DateTime<Utc>, headroom_mw: f64) {
-        if self.samples.back().is_some_and(|(last, _)| time - *last < INTERVAL) {
+        let too_soon = self.samples.back().is_some_and(|(last, _)| time - *last < INTERVAL);
+        if too_soon || !headroom_mw.is_finite() {
             return;
         }
         self.samples.push_back((time, headroom_mw));

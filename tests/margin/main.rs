@@ -2,6 +2,8 @@
 
 mod bench;
 mod cases;
+mod changes;
 mod edges;
 mod properties;
 mod published;
+mod what_if;

@@ -12,20 +12,20 @@ use super::bench::{Values, assess};
 
 /// A corridor of parallel circuits at random, and the voltages and loads of its frame.
 #[derive(Debug, Clone)]
-struct Invented {
-    circuits: Vec<(f64, Option<f64>)>,
+pub struct Invented {
+    pub circuits: Vec<(f64, Option<f64>)>,
     sources: [[f64; 3]; 2],
     stored_energy: [f64; 2],
     fault: (&'static str, f64, f64),
     require: (f64, f64),
     rating_a: f64,
     kv: [f64; 2],
-    angle_deg: f64,
+    pub angle_deg: f64,
     loads: [[f64; 2]; 2],
 }
 
-fn invented() -> impl Strategy<Value = Invented> {
-    let circuit = (80.0..320.0, prop::option::of(5.0..25.0));
+pub fn invented() -> impl Strategy<Value = Invented> {
+    let circuit = (80.0..320.0, prop::option::of(5.0..24.0));
     let source = [0.3..2.0, 6.0..30.0, 0.0..10.0];
     let fault = (prop_oneof![Just("three-phase"), Just("phase-phase"), Just("phase-earth")], 0.0..1.0, 50.0..150.0);
     let load = [0.0..900.0, -50.0..200.0];
@@ -45,7 +45,7 @@ fn invented() -> impl Strategy<Value = Invented> {
 
 impl Invented {
     /// The configuration; `swapped` turns the corridor round, circuits, faults and all.
-    fn config(&self, swapped: bool) -> String {
+    pub fn config(&self, swapped: bool) -> String {
         let (kind, at, clear_ms) = self.fault;
         let side = |name: &str, index: usize| {
             let [r, x, swing_x] = self.sources[index];
@@ -80,7 +80,7 @@ impl Invented {
     }
 
     /// The exact frame: voltages, loads and the flows at both ends.
-    fn values(&self, swapped: bool) -> Values {
+    pub fn values(&self, swapped: bool) -> Values {
         let config = Config::parse(&self.config(swapped), "config.toml").unwrap_or_else(|errors| panic!("{errors}"));
         let corridor = &config.grid.corridors[0];
         let complete = Topology::complete(corridor);
@@ -321,7 +321,7 @@ fn two_equal_circuits_are_one_of_half_the_impedance() {
 }
 
 /// Three measured circuits that carry a good deal.
-fn three_circuits() -> Invented {
+pub fn three_circuits() -> Invented {
     Invented {
         circuits: vec![(200.0, None), (220.0, Some(15.0)), (240.0, None)],
         sources: [[1.0, 20.0, 0.0], [1.0, 15.0, 0.0]],

@@ -15,6 +15,7 @@ use clap::Args;
 use super::{Failure, assess::Sources, progress};
 use crate::{
     config::Config,
+    desk::Alternative,
     feed::Channels,
     review::{Day, Done, Part, PartError, Review, Run, Stretch, Task, Terms},
 };
@@ -29,8 +30,15 @@ pub struct Options {
     #[arg(required_unless_present = "merge", value_name = "FILES")]
     files: Vec<PathBuf>,
     /// Put reviewed days together that --parts has kept: files, or folders of them
-    #[arg(long, value_name = "PARTS", num_args = 1.., conflicts_with_all = ["files", "config", "parts", "share", "carry", "sources"])]
+    #[arg(long, value_name = "PARTS", num_args = 1.., conflicts_with_all = ["files", "config", "parts", "share", "carry", "sources", "with", "without"])]
     merge: Vec<PathBuf>,
+    /// Compare with what would have been: "close SV3", "open SV1", "insert SV2-SC", "bypass SV2-SC", or "transfer
+    /// Skarn-Velm -200" (MW, + is more in the direction of the transfer); any number of times
+    #[arg(long, value_name = "CHANGE")]
+    with: Vec<String>,
+    /// Compare with what would have been had an outage not been reckoned with; any number of times
+    #[arg(long, value_name = "OUTAGE")]
+    without: Vec<String>,
     /// Keep each reviewed day in this folder, and go on from what is there
     #[arg(long, value_name = "DIR")]
     parts: Option<PathBuf>,
@@ -86,12 +94,13 @@ fn review(options: &Options) -> Result<(Review, Config), Failure> {
     let terms = Terms {
         program: env!("CARGO_PKG_VERSION").into(),
         configuration: text.into(),
-        changes: Vec::new(),
+        changes: options.changes(),
         learning: options.sources.map(|sources| sources == Sources::Learned),
         carried: options.carry,
     };
     let stretches = options.stretches()?;
-    let task = Task { channels: Arc::new(Channels::new(&config)), config: Arc::new(config) };
+    let alternatives = Alternative::parse(&options.with, &options.without, &config.grid)?;
+    let task = Task { channels: Arc::new(Channels::new(&config)), config: Arc::new(config), alternatives };
     if let Some(folder) = &options.parts {
         fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()))?;
     }
@@ -129,6 +138,12 @@ fn known(folder: &Path, terms: &Terms, stretch: &Stretch, date: NaiveDate) -> Op
 }
 
 impl Options {
+    /// What was asked for, in the order of the command's help.
+    fn changes(&self) -> Vec<String> {
+        let with = self.with.iter().map(|change| format!("with {change}"));
+        with.chain(self.without.iter().map(|outage| format!("without {outage}"))).collect()
+    }
+
     /// The files in stretches, or this job's share of them.
     fn stretches(&self) -> Result<Vec<Stretch>, Failure> {
         let progress = progress::bar("looking through ");

@@ -7,7 +7,7 @@ use super::{Beginning, CorridorDay, Day, FileNote, SourceNote};
 use crate::{
     alarm::{CorridorBoard, Transition},
     config::Config,
-    desk::{Assessment, CorridorDesk, Desk, State},
+    desk::{Alternative, Assessment, CorridorDesk, Desk, State},
     events::{Event, EventKind, Teller, gap},
     feed::{Channels, Frame, Holder, Snapshot},
 };
@@ -22,6 +22,8 @@ pub struct Task {
     pub config: Arc<Config>,
     /// What its corridors read.
     pub channels: Arc<Channels>,
+    /// Changes that were asked for, corridor by corridor.
+    pub alternatives: Vec<Option<Alternative>>,
 }
 
 /// Takes every assessment as it is made, one for each corridor: to write it down in full.
@@ -44,7 +46,7 @@ pub struct Bench<R> {
     beginning: Beginning,
     span: Option<(DateTime<Utc>, DateTime<Utc>)>,
     frames: u64,
-    covered_ms: i64,
+    silent_ms: i64,
     gaps: Vec<Event>,
 }
 
@@ -57,11 +59,20 @@ struct Seat<R> {
     rows: R,
     teller: Option<Teller>,
     last: Option<Assessment>,
+    what_if: Option<WhatIf>,
     first_sources: Option<[SourceNote; 2]>,
     day: CorridorDay,
     events: Vec<Event>,
     left_out: u64,
     transitions: Vec<Transition>,
+}
+
+/// What a corridor would be with a change.
+#[derive(Debug)]
+struct WhatIf {
+    alternative: Alternative,
+    board: CorridorBoard,
+    last: Option<Assessment>,
 }
 
 impl<R: Rows> Bench<R> {
@@ -70,9 +81,10 @@ impl<R: Rows> Bench<R> {
         let config = &task.config;
         let max_age = config.feed.max_age();
         let desks = Desk::new(config, &task.channels).corridors.into_iter();
-        let seats = desks.zip(&config.alarms).zip(rows).map(|((desk, alarms), rows)| {
+        let seats = desks.zip(&config.alarms).zip(&task.alternatives).zip(rows);
+        let seats = seats.map(|(((desk, alarms), alternative), rows)| {
             let board = CorridorBoard::new(desk.corridor(), alarms);
-            Seat::new(desk, board, rows, max_age)
+            Seat::new(desk, board, alternative.clone(), rows, max_age)
         });
         Self {
             max_age,
@@ -81,7 +93,7 @@ impl<R: Rows> Bench<R> {
             beginning: Beginning::Configured,
             span: None,
             frames: 0,
-            covered_ms: 0,
+            silent_ms: 0,
             gaps: Vec::new(),
         }
     }
@@ -101,7 +113,7 @@ impl<R: Rows> Bench<R> {
             self.span = Some((time, time));
             return;
         };
-        self.covered_ms += lasted_ms(last, time, self.max_age);
+        self.silent_ms += silent_ms(last, time, self.max_age);
         if self.gaps.len() < MOST_EVENTS {
             self.gaps.extend(gap(last, time, self.max_age));
         }
@@ -124,7 +136,6 @@ impl<R: Rows> Bench<R> {
     pub fn finish(&mut self, files: Vec<FileNote>, findings: Vec<String>) -> Option<Day> {
         let (first, last) = self.span.take()?;
         let midnight = midnight_after(last.date_naive());
-        let covered_ms = std::mem::take(&mut self.covered_ms) + lasted_ms(last, midnight, self.max_age);
         let mut events = std::mem::take(&mut self.gaps);
         let mut events_left_out = 0;
         let corridors =
@@ -138,7 +149,7 @@ impl<R: Rows> Bench<R> {
             first,
             last,
             frames: std::mem::take(&mut self.frames),
-            covered_ms,
+            silent_ms: std::mem::take(&mut self.silent_ms),
             findings,
             events,
             events_left_out,
@@ -148,10 +159,19 @@ impl<R: Rows> Bench<R> {
 }
 
 impl<R: Rows> Seat<R> {
-    fn new(desk: CorridorDesk, board: CorridorBoard, rows: R, max_age: TimeDelta) -> Self {
+    fn new(
+        desk: CorridorDesk,
+        board: CorridorBoard,
+        alternative: Option<Alternative>,
+        rows: R,
+        max_age: TimeDelta,
+    ) -> Self {
+        let what_if = |alternative| WhatIf { alternative, board: board.clone(), last: None };
+        let what_if = alternative.map(what_if);
         Self {
             max_age,
-            day: CorridorDay::new(desk.corridor().name.clone()),
+            day: CorridorDay::new(desk.corridor().name.clone(), what_if.is_some()),
+            what_if,
             desk,
             board,
             rows,
@@ -165,19 +185,36 @@ impl<R: Rows> Seat<R> {
     }
 
     fn take(&mut self, snapshot: &Snapshot) {
-        let assessment = self.desk.assess(snapshot);
-        if let Some(last) = self.last.take() {
-            self.stood(&last, assessment.time);
-        }
-        self.rows.take(&assessment, None);
+        let (assessment, altered) = match &mut self.what_if {
+            None => (self.desk.assess(snapshot), None),
+            Some(what_if) => {
+                let (assessment, altered) = self.desk.assess_with(snapshot, &mut what_if.alternative);
+                (assessment, Some(altered))
+            }
+        };
+        self.stood_until(assessment.time);
+        self.rows.take(&assessment, altered.as_ref());
         self.day.was.take(self.desk.corridor(), &assessment);
         self.tell(&assessment);
         self.last = Some(assessment);
+        if let Some((altered, (what_if, course))) = altered.zip(self.what_if.as_mut().zip(self.day.what_if.as_mut())) {
+            course.take(self.desk.corridor(), &altered);
+            what_if.board.observe(&altered, &mut self.transitions);
+            course.count(&self.transitions);
+            self.transitions.clear();
+            what_if.last = Some(altered);
+        }
     }
 
-    fn stood(&mut self, assessment: &Assessment, until: DateTime<Utc>) {
+    /// Takes in that what was seen last stood until a time.
+    fn stood_until(&mut self, until: DateTime<Utc>) {
+        let Some(assessment) = &self.last else { return };
         let ms = lasted_ms(assessment.time, until, self.max_age);
         self.day.was.stood(self.desk.corridor(), assessment, ms);
+        let altered = self.what_if.as_ref().and_then(|what_if| what_if.last.as_ref());
+        if let Some((altered, course)) = altered.zip(self.day.what_if.as_mut()) {
+            course.stood(self.desk.corridor(), altered, ms);
+        }
         for channel in &assessment.fit.missing {
             self.day.meter(channel).missing_ms += ms;
         }
@@ -215,11 +252,14 @@ impl<R: Rows> Seat<R> {
     }
 
     fn finish(&mut self, midnight: DateTime<Utc>, events: &mut Vec<Event>, left_out: &mut u64) -> Option<CorridorDay> {
+        self.stood_until(midnight);
         let last = self.last.take()?;
-        self.stood(&last, midnight);
+        if let Some(what_if) = &mut self.what_if {
+            what_if.last = None;
+        }
         events.append(&mut self.events);
         *left_out += std::mem::take(&mut self.left_out);
-        let next = CorridorDay::new(self.day.corridor.clone());
+        let next = CorridorDay::new(self.day.corridor.clone(), self.what_if.is_some());
         let mut day = std::mem::replace(&mut self.day, next);
         let end = SourceNote::both(&last);
         day.sources = Some([self.first_sources.take().unwrap_or_else(|| end.clone()), end]);
@@ -230,6 +270,11 @@ impl<R: Rows> Seat<R> {
 /// For how long what was seen at one time stands until the next, ms.
 fn lasted_ms(from: DateTime<Utc>, until: DateTime<Utc>, max_age: TimeDelta) -> i64 {
     (until.timestamp_millis() - from.timestamp_millis()).min(max_age.num_milliseconds())
+}
+
+/// For how long nothing stood between two frames, ms.
+pub(super) fn silent_ms(from: DateTime<Utc>, until: DateTime<Utc>, max_age: TimeDelta) -> i64 {
+    until.timestamp_millis() - from.timestamp_millis() - lasted_ms(from, until, max_age)
 }
 
 fn midnight_after(date: NaiveDate) -> DateTime<Utc> {

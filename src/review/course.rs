@@ -25,6 +25,8 @@ pub struct Course {
     pub energy_mwh: f64,
     /// Time with a known transfer.
     pub transfer_ms: i64,
+    /// When and for how long there was no balance at all, with the change that was asked for: worse than any headroom.
+    pub unbalanced: Option<Unbalanced>,
     /// The lowest headroom; the earliest of equals.
     pub least: Option<Least>,
     /// Time for which each outage and criterion set the headroom.
@@ -35,6 +37,15 @@ pub struct Course {
     pub series: Series,
     /// How often each alarm was raised.
     pub alarms: Vec<AlarmCount>,
+}
+
+/// A time without any balance.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Unbalanced {
+    /// When it was first so.
+    pub first: DateTime<Utc>,
+    /// For how long altogether, ms.
+    pub ms: i64,
 }
 
 /// How often an alarm was raised.
@@ -120,8 +131,12 @@ impl Course {
             self.energy_mwh += mw * ms as f64 / HOUR_MS;
             self.transfer_ms += ms;
         }
-        if let Some(mw) = assessment.headroom_mw {
-            self.durations.add(mw, ms);
+        match assessment.headroom_mw {
+            Some(mw) => self.durations.add(mw, ms),
+            None if assessment.state == State::Spent => {
+                self.unbalanced.get_or_insert(Unbalanced { first: assessment.time, ms: 0 }).ms += ms;
+            }
+            None => {}
         }
         if let Some(binding) = Binding::of(assessment) {
             self.binding_ms.add(binding, ms);
@@ -155,6 +170,10 @@ impl Course {
         let headroom_mw = |least: &Option<Least>| least.as_ref().map_or(f64::INFINITY, |least| least.headroom_mw);
         if headroom_mw(&later.least) < headroom_mw(&self.least) {
             self.least.clone_from(&later.least);
+        }
+        if let Some(later) = later.unbalanced {
+            let Unbalanced { ms, .. } = self.unbalanced.get_or_insert(Unbalanced { ms: 0, ..later });
+            *ms += later.ms;
         }
         self.binding_ms.merge(&later.binding_ms);
         self.durations.merge(&later.durations);

@@ -25,8 +25,9 @@ pub struct Day {
     pub last: DateTime<Utc>,
     /// Frames.
     pub frames: u64,
-    /// Time for which there were data: until the next frame, but no longer than a value stands, nor past midnight.
-    pub covered_ms: i64,
+    /// Time between the first and the last frame without data: a frame's values stand until the next one, but no longer than
+    /// their age, ms.
+    pub silent_ms: i64,
     /// What the day's files said of it that a reader should know.
     pub findings: Vec<String>,
     /// What happened, in order.
@@ -102,8 +103,9 @@ pub struct MeterNote {
 }
 
 impl CorridorDay {
-    pub(super) fn new(corridor: Arc<str>) -> Self {
-        Self { corridor, was: Course::default(), what_if: None, sources: None, meters: BTreeMap::new() }
+    pub(super) fn new(corridor: Arc<str>, with_change: bool) -> Self {
+        let what_if = with_change.then(Course::default);
+        Self { corridor, was: Course::default(), what_if, sources: None, meters: BTreeMap::new() }
     }
 
     pub(super) fn meter(&mut self, channel: &Arc<str>) -> &mut MeterNote {

@@ -17,7 +17,7 @@ mod whole;
 
 pub use archive::{Archive, ArchiveError, ArchiveKey, Deferred, Follow, Stretch};
 pub use bench::{Bench, Rows, Task};
-pub use course::{AlarmCount, Binding, Course, Least};
+pub use course::{AlarmCount, Binding, Course, Least, Unbalanced};
 pub use day::{Beginning, CorridorDay, Day, FileNote, MeterNote, SourceNote};
 pub use durations::Durations;
 pub use part::{Part, PartError, Terms};

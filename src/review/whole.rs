@@ -6,7 +6,7 @@ use std::{
 use chrono::{DateTime, NaiveDate, TimeDelta, Utc};
 use serde::Serialize;
 
-use super::{Beginning, Course, Day, FileNote, Least, MeterNote, SourceNote, Tallied};
+use super::{Beginning, Course, Day, FileNote, Least, MeterNote, SourceNote, Tallied, bench::silent_ms};
 use crate::{
     desk::State,
     events::{Event, EventKind, gap},
@@ -38,8 +38,8 @@ pub struct Review {
     pub span: Option<(DateTime<Utc>, DateTime<Utc>)>,
     /// Frames.
     pub frames: u64,
-    /// Time for which there were data, ms.
-    pub covered_ms: i64,
+    /// Time between the first and the last frame without data, ms.
+    pub silent_ms: i64,
     /// What it was read from.
     pub files: Vec<FileNote>,
     /// What a reader should know, with the day it is about.
@@ -79,8 +79,10 @@ pub struct DayFigures {
     pub beginning: Beginning,
     /// Frames.
     pub frames: u64,
-    /// Time for which there were data, ms.
-    pub covered_ms: i64,
+    /// Time between the day's first and last frame.
+    pub span_ms: i64,
+    /// Of it without data.
+    pub silent_ms: i64,
     /// Each corridor, as it was and as it would have been.
     pub corridors: Vec<(Brief, Option<Brief>)>,
 }
@@ -122,7 +124,7 @@ impl Review {
             max_age,
             span: None,
             frames: 0,
-            covered_ms: 0,
+            silent_ms: 0,
             files: Vec::new(),
             findings: Vec::new(),
             events: Vec::new(),
@@ -136,11 +138,12 @@ impl Review {
     /// Adds a day, which is later than all before it.
     pub fn add(&mut self, day: Day) {
         if let Some((_, last)) = self.span {
+            self.silent_ms += silent_ms(last, day.first, self.max_age);
             self.events.extend(gap(last, day.first, self.max_age));
         }
         self.span = Some((self.span.map_or(day.first, |(first, _)| first), day.last));
         self.frames += day.frames;
-        self.covered_ms += day.covered_ms;
+        self.silent_ms += day.silent_ms;
         self.findings.extend(day.findings.into_iter().map(|finding| (day.date, finding)));
         day.files.into_iter().for_each(|file| self.note(file));
         self.events_left_out += day.events_left_out;
@@ -150,7 +153,8 @@ impl Review {
             date: day.date,
             beginning: day.beginning,
             frames: day.frames,
-            covered_ms: day.covered_ms,
+            span_ms: span_ms(day.first, day.last),
+            silent_ms: day.silent_ms,
             corridors: day
                 .corridors
                 .iter()
@@ -187,13 +191,12 @@ impl Review {
 
     /// Time between the first and the last frame, ms.
     pub fn span_ms(&self) -> i64 {
-        self.span.map_or(0, |(first, last)| last.timestamp_millis() - first.timestamp_millis())
+        self.span.map_or(0, |(first, last)| span_ms(first, last))
     }
+}
 
-    /// Time between the first and the last frame without data, ms.
-    pub fn without_data_ms(&self) -> i64 {
-        (self.span_ms() - self.covered_ms).max(0)
-    }
+fn span_ms(first: DateTime<Utc>, last: DateTime<Utc>) -> i64 {
+    last.timestamp_millis() - first.timestamp_millis()
 }
 
 impl From<super::CorridorDay> for CorridorReview {

@@ -68,7 +68,7 @@ impl Bed {
         let stretches = Stretch::all(files, &|file| Box::new(file), |_| {}).unwrap();
         let channels = Arc::new(Channels::new(&self.config));
         let run = Run {
-            task: &Task { config: Arc::new(self.config.clone()), channels },
+            task: &Task { config: Arc::new(self.config.clone()), channels, alternatives: vec![None; 2] },
             stretches: &stretches,
             threads: NonZeroUsize::new(threads),
             carry,

@@ -4,3 +4,4 @@ mod bed;
 mod figures;
 mod files;
 mod parts;
+mod what_if;

@@ -7,7 +7,7 @@ use std::sync::Arc;
 
 pub use crate::margin::{Action, Binding, Criterion, Intact, IntactLimits, OutageLimits, OutageRecord, Reclose};
 pub use assessment::{Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, Learned, SourceRecord, State};
-pub use corridor::CorridorDesk;
+pub use corridor::{CorridorDesk, CorridorMemory};
 
 use crate::{
     config::Config,

@@ -6,7 +6,8 @@
 //! 2. [`desk`] takes each corridor of a frame through [`fit`] (measurements to a state), [`source`] (what
 //!    stands behind each terminal) and [`margin`] (every outage, the headroom), on top of [`network`]
 //!    (two-ports, admittance, reduction),
-//! 3. [`alarm`] watches them, [`journal`] keeps what the alarms did, and [`events`] puts what happened into words,
+//! 3. [`alarm`] watches them, [`journal`] keeps what the alarms did, [`recording`] the frames, and [`events`] puts what
+//!    happened into words,
 //! 4. [`screen`] and [`report`] show the assessments, and [`command`] ties a feed, a desk and one of these together.
 //!
 //! [`grid`] says what a corridor is, [`config`] reads one from a file, and [`drill`] makes feeds with known truth.
@@ -44,6 +45,7 @@ pub mod grid;
 pub mod journal;
 pub mod margin;
 pub mod network;
+pub mod recording;
 pub mod report;
 pub mod review;
 pub mod screen;

@@ -1,12 +1,15 @@
 use chrono::{DateTime, Utc};
+use serde::{Deserialize, Serialize};
 
 use super::{Definition, Event, reading::Reading};
+use crate::feed::stamp;
 
 /// Whether an alarm's condition holds, after deadband and delays.
-#[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub(super) struct Condition {
     pub active: bool,
     /// Since when the value asks for the other.
+    #[serde(with = "stamp::optional")]
     pending: Option<DateTime<Utc>>,
 }
 

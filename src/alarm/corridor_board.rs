@@ -1,6 +1,7 @@
 use std::sync::Arc;
 
 use chrono::{DateTime, TimeDelta, Utc};
+use serde::{Deserialize, Serialize};
 
 use super::{
     Action, Definition, Event, Kind, Note, Refusal, Restored, State, Suppression, Transition,
@@ -9,16 +10,16 @@ use super::{
     reading::{Reader, Reading},
     state::Standpoint,
 };
-use crate::{desk::Assessment, grid::Corridor};
+use crate::{desk::Assessment, feed::stamp, grid::Corridor};
 
 /// The alarms of one corridor: shares nothing with the others, so that each may be kept on its own thread.
 #[derive(Debug, Clone)]
 pub struct CorridorBoard {
-    corridor: Arc<str>,
-    reader: Reader,
-    alarms: Vec<Alarm>,
+    pub(super) corridor: Arc<str>,
+    pub(super) reader: Reader,
+    pub(super) alarms: Vec<Alarm>,
     /// Time of the last frame.
-    latest: Option<DateTime<Utc>>,
+    pub(super) latest: Option<DateTime<Utc>>,
 }
 
 /// One alarm and how it stands.
@@ -28,24 +29,27 @@ pub struct Alarm {
     pub definition: Arc<Definition>,
     /// How it stands.
     pub standing: Standing,
-    condition: Condition,
-    suppressed: bool,
+    pub(super) condition: Condition,
+    pub(super) suppressed: bool,
 }
 
 /// How an alarm stands: what is kept beyond the end of the program.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Standing {
     /// Its state.
     pub state: State,
     /// Since when; `None`: from the beginning.
+    #[serde(with = "stamp::optional")]
     pub since: Option<DateTime<Utc>>,
     /// When it was raised last.
+    #[serde(with = "stamp::optional")]
     pub raised: Option<DateTime<Utc>>,
     /// The watched value then.
     pub value: Option<f64>,
     /// What that value was of.
     pub about: Option<Arc<str>>,
     /// End of the shelving.
+    #[serde(with = "stamp::optional")]
     pub until: Option<DateTime<Utc>>,
     /// Why it is shelved or out of service.
     pub reason: Option<Arc<str>>,

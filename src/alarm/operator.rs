@@ -1,10 +1,11 @@
 use std::sync::Arc;
 
 use chrono::{DateTime, TimeDelta, Utc};
+use serde::{Deserialize, Serialize};
 use thiserror::Error;
 
 use super::{Event, State};
-use crate::config::wording::printable;
+use crate::{config::wording::printable, feed::stamp};
 
 /// An alarm may be shelved for so long at a time: what must be away for longer goes out of service.
 pub const LONGEST_SHELVING: TimeDelta = TimeDelta::hours(24);
@@ -12,13 +13,15 @@ pub const LONGEST_SHELVING: TimeDelta = TimeDelta::hours(24);
 const LONGEST_TEXT: usize = 500;
 
 /// What an operator does with an alarm.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
 pub enum Action {
     /// Says that he has seen it.
     Acknowledge,
     /// Puts it aside for a time, with a reason.
     Shelve {
         /// Its end, in the frames' time.
+        #[serde(with = "stamp")]
         until: DateTime<Utc>,
         /// Why.
         reason: String,
@@ -32,6 +35,40 @@ pub enum Action {
     },
     /// Brings it back into service.
     ReturnToService,
+}
+
+/// What was done to alarms between two frames: who does the same has the same.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Act {
+    /// When, in the frames' time.
+    #[serde(with = "stamp")]
+    pub time: DateTime<Utc>,
+    /// Who did it, where the program was told.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub by: Option<Arc<str>>,
+    /// What.
+    pub deed: Deed,
+}
+
+/// What may happen to alarms between two frames.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Deed {
+    /// Time passed without a frame, and alarms noticed it.
+    Silence,
+    /// An operator's action.
+    Action(Target, Action),
+    /// An operator's note.
+    Note(Target, Arc<str>),
+}
+
+/// One alarm by its names.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Target {
+    /// The corridor's name.
+    pub corridor: Arc<str>,
+    /// The definition's name.
+    pub alarm: Arc<str>,
 }
 
 /// Why an action cannot be done.

@@ -35,7 +35,7 @@ pub(super) struct Reader {
     state_spreads: f64,
     configured: [ConfiguredSource; 2],
     /// Sides whose spread was once much narrower than configured.
-    narrowed: [bool; 2],
+    pub narrowed: [bool; 2],
 }
 
 impl Reader {

@@ -3,8 +3,11 @@
 
 use std::fmt;
 
+use serde::{Deserialize, Serialize};
+
 /// State of an alarm; the letter is that of the standards' diagram.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
 pub enum State {
     /// A: nothing to tell.
     Normal,

@@ -16,8 +16,8 @@ use tokio::{runtime, signal::ctrl_c};
 use super::Failure;
 use crate::{
     config::Config,
-    drill::{Drill, FrameText, Invented, Invention, Output, Scenario, Truth},
-    feed::{Channels, Frame},
+    drill::{Drill, Invented, Invention, Output, Scenario, Truth},
+    feed::{Channels, Frame, FrameText},
 };
 
 /// Options of `drill`.

@@ -17,7 +17,8 @@ use crate::{
     config::Config,
     desk::Alternative,
     feed::Channels,
-    review::{Day, Done, Part, PartError, Review, Run, Stretch, Task, Terms},
+    report::change,
+    review::{Done, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
 };
 
 /// Options of `review`.
@@ -89,7 +90,7 @@ pub fn run(options: &Options) -> Result<(), Failure> {
 
 fn review(options: &Options) -> Result<(Review, Config), Failure> {
     let path = options.config.as_deref().unwrap_or(Path::new(""));
-    let (mut config, text) = Config::load_with_text(path)?;
+    let (mut config, text) = Config::read(path)?;
     Sources::choose(options.sources, &mut config);
     let terms = Terms {
         program: env!("CARGO_PKG_VERSION").into(),
@@ -100,7 +101,13 @@ fn review(options: &Options) -> Result<(Review, Config), Failure> {
     };
     let stretches = options.stretches()?;
     let alternatives = Alternative::parse(&options.with, &options.without, &config.grid)?;
-    let task = Task { channels: Arc::new(Channels::new(&config)), config: Arc::new(config), alternatives };
+    let task = Task {
+        channels: Arc::new(Channels::new(&config)),
+        config: Arc::new(config),
+        configuration: terms.configuration.clone(),
+        alternatives,
+        differences: change::lines,
+    };
     if let Some(folder) = &options.parts {
         fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()))?;
     }
@@ -118,13 +125,13 @@ fn review(options: &Options) -> Result<(Review, Config), Failure> {
     };
     let mut review = Review::new(task.config.feed.max_age());
     run.go(|done: Done| -> Result<(), Failure> {
-        let mut day = done.day;
+        let mut reviewed = done.reviewed;
         if let Some(folder) = options.parts.as_deref().filter(|_| !done.was_known) {
-            let part = Part::new(terms.clone(), stretches[done.stretch].keys(), day);
+            let part = Part::new(terms.clone(), stretches[done.stretch].keys(), reviewed);
             part.save(folder)?;
-            day = part.day;
+            reviewed = part.reviewed();
         }
-        review.add(day);
+        review.add(reviewed.day);
         Ok(())
     })?;
     progress.finish_and_clear();
@@ -132,9 +139,9 @@ fn review(options: &Options) -> Result<(Review, Config), Failure> {
 }
 
 /// A day that was reviewed before, from the same files and under the same terms.
-fn known(folder: &Path, terms: &Terms, stretch: &Stretch, date: NaiveDate) -> Option<Day> {
+fn known(folder: &Path, terms: &Terms, stretch: &Stretch, date: NaiveDate) -> Option<Reviewed> {
     let part = Part::load(&Part::path(folder, date)).ok()?;
-    (part.terms == *terms && part.archives == stretch.keys()).then_some(part.day)
+    (part.terms == *terms && part.archives == stretch.keys()).then(|| part.reviewed())
 }
 
 impl Options {

@@ -16,6 +16,7 @@ use crate::{
     config::Config,
     desk::Desk,
     feed::{Channels, Feed, Input, Patience},
+    recording::{RecordError, Recorder},
     screen::connection::{Duty, Keeper, Live, Revision},
 };
 
@@ -39,11 +40,14 @@ pub struct Options {
     /// Begin with the configured sources, and keep nothing
     #[arg(long)]
     no_state: bool,
+    /// Record every frame in this folder, one file a day [default: as the configuration says]
+    #[arg(long, value_name = "DIR")]
+    record: Option<PathBuf>,
 }
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
-    let mut config = Config::load(&options.config)?;
+    let (mut config, text) = Config::read(&options.config)?;
     Sources::choose(options.sources, &mut config);
     let inputs = inputs::chosen(&options.input, &config)?;
     let state_file = options.state_file(&config)?;
@@ -52,6 +56,7 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let (mut desk, holder) = (Desk::detailed(&config, &channels), inputs::holder(&config, &channels));
 
     let runtime = stage::runtime()?;
+    let recorder = options.recorder(&config, &text, &channels)?;
     let feed = runtime.block_on(Feed::open(&inputs, &channels, Patience::new(&config.feed)))?;
     let keeper = state_file.map(|path| Keeper::open(path, &mut desk));
     keeper.iter().flat_map(Keeper::findings).for_each(say);
@@ -60,19 +65,17 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     let (orders, taken) = mpsc::channel(stage::ORDERS_WAITING);
     let sources = options.sources;
     let adjust = move |config: &mut Config| Sources::choose(sources, config);
-    let revision = Revision::new(&options.config, config.clone(), adjust);
-    let live = Live { feed, desk, holder, channels, revision, duty, keeper, parcels: sender, orders: taken };
+    let revision = Revision::new(&options.config, config.clone(), text, adjust);
+    let live = Live { feed, desk, holder, channels, revision, duty, keeper, recorder, parcels: sender, orders: taken };
     let handle = runtime.handle().clone();
     let connection = thread::spawn(move || handle.block_on(live.run()));
     let ending = stage::show(&runtime, &config, parcels, move |order| orders.try_send(order).is_ok());
-    // It ends with the screen, once the journal is closed and what was learned is kept.
+    // It ends with the screen, once the journal and the recording are closed and what was learned is kept.
     let kept = connection.join();
     // A thread that waits for standard input cannot be stopped, nor need it be waited for.
     runtime.shutdown_background();
     ending?;
-    if let Some(trouble) = kept.map_err(|_| stage::fault())? {
-        say(&trouble);
-    }
+    kept.map_err(|_| stage::fault())?.iter().for_each(|trouble| say(trouble));
     Ok(())
 }
 
@@ -82,6 +85,12 @@ fn say(what: &str) {
 }
 
 impl Options {
+    fn recorder(&self, config: &Config, text: &str, channels: &Arc<Channels>) -> Result<Option<Recorder>, RecordError> {
+        let beside = |folder: &PathBuf| self.config.parent().unwrap_or(Path::new("")).join(folder);
+        let folder = self.record.clone().or_else(|| config.recording.folder.as_ref().map(beside));
+        folder.map(|folder| Recorder::open(&folder, config, text, channels)).transpose()
+    }
+
     fn state_file(&self, config: &Config) -> Result<Option<PathBuf>, Failure> {
         if self.no_state || !config.learning.enabled {
             return Ok(None);

@@ -14,6 +14,7 @@ pub(crate) mod given;
 mod journal;
 pub(crate) mod limits;
 mod names;
+mod recording;
 mod screen;
 pub(crate) mod section;
 pub(crate) mod wording;
@@ -25,6 +26,7 @@ use chrono_tz::{TZ_VARIANTS, Tz};
 
 pub use error::{ConfigError, ConfigErrors};
 pub use journal::JournalSettings;
+pub use recording::RecordingSettings;
 pub use screen::ScreenSettings;
 
 use crate::{alarm::Definition, grid::Grid};
@@ -58,6 +60,8 @@ pub struct Config {
     pub alarms: Vec<Vec<Definition>>,
     /// Where the journal is kept.
     pub journal: JournalSettings,
+    /// Whether and how frames are recorded.
+    pub recording: RecordingSettings,
     /// How the screen calls for attention.
     pub screen: ScreenSettings,
     /// Where `watch` keeps what it learned, from this file's folder (`[learning] state_file`).
@@ -151,11 +155,11 @@ impl Default for LearningSettings {
 impl Config {
     /// Reads a configuration file.
     pub fn load(path: &Path) -> Result<Self, ConfigErrors> {
-        Ok(Self::load_with_text(path)?.0)
+        Ok(Self::read(path)?.0)
     }
 
-    /// The same, and the text it was read from.
-    pub fn load_with_text(path: &Path) -> Result<(Self, String), ConfigErrors> {
+    /// The same, with its text.
+    pub fn read(path: &Path) -> Result<(Self, String), ConfigErrors> {
         let name = path.display().to_string();
         let text = file::read(path).map_err(|error| ConfigErrors::one(&name, error))?;
         Ok((Self::parse(&text, &name)?, text))
@@ -191,6 +195,7 @@ fn read(mut root: Section<'_>) -> Config {
         channel_names: channels::read(root.section("channels"), &grid, &names),
         alarms: alarm::all(&mut root, &grid, alarms),
         journal: journal::read(root.section("journal")),
+        recording: recording::read(root.section("recording")),
         screen: screen::read(root.section("screen")),
         learning: learning(learned),
         state_file,

@@ -1,17 +1,19 @@
 use std::sync::Arc;
 
+use serde::{Deserialize, Serialize};
+
 use super::{
     Alternative, Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Learned, Reclose,
     SourceRecord, State, Switch, SwitchKind,
 };
 use crate::{
-    config::Config,
-    feed::{Channels, Slot, Snapshot},
+    config::{Config, LearningSettings, MeasurementSettings},
+    feed::{Channels, Slot, Snapshot, Start},
     fit::{Fit, FittedState, Fitter, Standing},
     grid::{Circuit, Corridor, FROM, TO},
     margin::{Behind, Engine, Footing, Judgement, Present, Seated, Trend},
     network::Topology,
-    source::{Estimate, Learner, Observation, Step},
+    source::{Estimate, Learner, Observation, Step, store::StoreError},
 };
 
 /// One corridor with what is remembered of it.
@@ -29,6 +31,32 @@ pub struct CorridorDesk {
     switchings: u64,
     detailed: bool,
     learned: Arc<Learned>,
+    settings: Settings,
+}
+
+/// What of a configuration decides about every corridor.
+#[derive(Debug, Clone, PartialEq)]
+struct Settings {
+    frequency_hz: f64,
+    measurement: MeasurementSettings,
+    learning: LearningSettings,
+}
+
+impl Settings {
+    fn of(config: &Config) -> Self {
+        // Whether anything is learned may be said on the command line, too; it makes no other corridor.
+        let learning = LearningSettings { enabled: true, ..config.learning };
+        Self { frequency_hz: config.grid.frequency_hz, measurement: config.measurement, learning }
+    }
+}
+
+/// What is remembered of a corridor, as far as what follows depends on it.
+#[derive(Debug, Serialize, Deserialize)]
+pub struct CorridorMemory {
+    learner: Learner,
+    trend: Trend,
+    topology: Option<Topology>,
+    switchings: u64,
 }
 
 impl CorridorDesk {
@@ -44,6 +72,7 @@ impl CorridorDesk {
             switchings: 0,
             detailed: false,
             learned: Arc::default(),
+            settings: Settings::of(config),
             channels: channels.clone(),
             corridor,
         }
@@ -128,7 +157,51 @@ impl CorridorDesk {
         }
     }
 
+    /// What is remembered of it, to be taken up where a recording starts.
+    pub fn memory(&self) -> CorridorMemory {
+        CorridorMemory {
+            learner: self.learner.kept(),
+            trend: self.trend.clone(),
+            topology: self.topology.clone(),
+            switchings: self.switchings,
+        }
+    }
+
+    /// Goes on as a recording says that this corridor stood. What is only quicker to keep is forgotten, so that who goes on
+    /// from here has the same as who was here before.
+    fn begin(&mut self, start: &Start) {
+        let name = self.corridor.name.clone();
+        let Some(CorridorMemory { learner, trend, topology, switchings }) = start.desk(&name) else { return };
+        let is_same = start.config().is_some_and(|config| {
+            Settings::of(config) == self.settings && config.grid.corridors.contains(&*self.corridor)
+        });
+        let resumed = if is_same { self.learner.resume(learner) } else { self.begin_anew(&learner) };
+        if let Err(error) = resumed {
+            start.doubt(&name, &error);
+        }
+        self.engine = Engine::new(self.settings.frequency_hz);
+        (self.trend, self.topology, self.switchings) = match topology {
+            Some(topology) if is_same && topology.is_of(&self.corridor) => (trend, Some(topology), switchings),
+            _ => (Trend::default(), None, 0),
+        };
+        self.switches = self.topology.as_ref().map_or_else(Arc::default, |topology| switches(&self.corridor, topology));
+        self.show_learned();
+    }
+
+    /// Another corridor than the one recorded: what was learned holds for it too where its configured sources are the same.
+    fn begin_anew(&mut self, recorded: &Learner) -> Result<(), StoreError> {
+        let learning = LearningSettings { enabled: self.learner.is_enabled(), ..self.settings.learning };
+        self.learner = Learner::new(&self.corridor.sides.map(|side| side.source), learning);
+        match recorded.memory() {
+            Some(memory) if self.learner.is_enabled() => self.learner.recall(&memory),
+            _ => Ok(()),
+        }
+    }
+
     fn fit(&mut self, snapshot: &Snapshot) -> Fit {
+        if let Some(start) = snapshot.start() {
+            self.begin(start);
+        }
         let fit = self.fitter.fit(snapshot);
         if self.topology.as_ref() != Some(&fit.topology) {
             // A trend does not reach across a switching.
@@ -206,12 +279,18 @@ impl CorridorDesk {
             fit_ok: fit.chi2.zip(fit.limit).is_none_or(|(chi2, limit)| chi2 <= limit),
         });
         if self.detailed && (step.is_some() || self.learner.history().next_back() != self.learned.history.last()) {
+            self.show_learned();
+        }
+        step
+    }
+
+    fn show_learned(&mut self) {
+        if self.detailed {
             self.learned = Arc::new(Learned {
                 steps: self.learner.steps().copied().collect(),
                 history: self.learner.history().copied().collect(),
             });
         }
-        step
     }
 
     /// Closed circuits do not join the terminals, or too little is known to say.

@@ -13,7 +13,7 @@ pub use assessment::{
     Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, Learned, SourceRecord, State, Switch, SwitchKind,
 };
 pub use change::ChangeErrors;
-pub use corridor::CorridorDesk;
+pub use corridor::{CorridorDesk, CorridorMemory};
 
 use crate::{
     config::Config,

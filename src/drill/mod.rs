@@ -29,7 +29,7 @@ mod world;
 
 pub use invent::{Invented, Invention};
 pub use output::{Output, OutputError};
-pub use play::{Drill, FrameText};
+pub use play::Drill;
 pub use scenario::{
     Action, Change, CorridorTruth, Dispatch, Event, FalseMeter, Gap, LoadTruth, Metering, PerKind, RandomSteps,
     Scenario, SideTruth, Span, Wander,

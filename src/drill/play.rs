@@ -1,8 +1,8 @@
 //! Plays a scenario.
 
-use std::{io::Write, sync::Arc, time::Duration};
+use std::{sync::Arc, time::Duration};
 
-use chrono::{DateTime, SecondsFormat, TimeDelta, Utc};
+use chrono::{DateTime, TimeDelta, Utc};
 
 use super::{CorridorTruth, Scenario, Truth, corridor_feed::CorridorFeed, truth::rounded};
 use crate::{
@@ -69,38 +69,9 @@ impl Iterator for Drill {
                 self.truth.push(Truth { time: self.time(at_s), corridor, what });
             }
             if !readings.is_empty() {
-                return Some(Frame { time: self.time(index as f64 * self.interval_s), readings });
+                return Some(Frame { time: self.time(index as f64 * self.interval_s), readings, aside: None });
             }
         }
         None
-    }
-}
-
-/// Writes frames as JSON Lines.
-#[derive(Debug, Clone)]
-pub struct FrameText {
-    /// `"name":` by slot.
-    keys: Vec<String>,
-}
-
-impl FrameText {
-    /// With the names that the channels have in the feed.
-    pub fn new(config: &Config, channels: &Channels) -> Self {
-        let key = |slot| {
-            let name = &**channels.name(slot);
-            let name = config.channel_names.get(name).map_or(name, String::as_str);
-            format!("{}:", serde_json::Value::from(name))
-        };
-        Self { keys: (0..channels.len()).map(key).collect() }
-    }
-
-    /// Adds one line.
-    pub fn write(&self, frame: &Frame, line: &mut impl Write) -> std::io::Result<()> {
-        write!(line, "{{\"time\":\"{}\",\"values\":{{", frame.time.to_rfc3339_opts(SecondsFormat::AutoSi, true))?;
-        for (place, (slot, reading)) in frame.readings.iter().enumerate() {
-            let comma = if place > 0 { "," } else { "" };
-            write!(line, "{comma}{}{}", self.keys[*slot], reading.value)?;
-        }
-        line.write_all(b"}}\n")
     }
 }

@@ -9,7 +9,7 @@ pub(super) struct Draft {
     places: Places,
 }
 
-const INVALID: Reading = Reading { value: f64::NAN, quality: Quality::Invalid };
+pub(super) const INVALID: Reading = Reading { value: f64::NAN, quality: Quality::Invalid };
 
 impl Draft {
     pub fn new(channels: &Channels) -> Self {
@@ -45,6 +45,6 @@ impl Draft {
     pub fn finish(&mut self, time: DateTime<Utc>) -> Frame {
         let readings = self.readings.clone();
         self.readings.clear();
-        Frame { time, readings }
+        Frame { time, readings, aside: None }
     }
 }

@@ -1,6 +1,8 @@
+use std::sync::Arc;
+
 use chrono::{DateTime, Utc};
 
-use super::Slot;
+use super::{Aside, Slot};
 
 /// A time and the values reported for it.
 #[derive(Debug, Clone, PartialEq)]
@@ -9,6 +11,8 @@ pub struct Frame {
     pub time: DateTime<Utc>,
     /// What the frame says, in its own order; a slot appears at most once.
     pub readings: Vec<(Slot, Reading)>,
+    /// What a recording says besides; a frame of any other source has none.
+    pub aside: Option<Arc<Aside>>,
 }
 
 /// One measured value.
@@ -32,6 +36,15 @@ pub enum Quality {
 }
 
 impl Quality {
+    /// The word a feed uses.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Good => "good",
+            Self::Questionable => "questionable",
+            Self::Invalid => "invalid",
+        }
+    }
+
     /// From the word a feed uses; any other word is invalid, since its source had something to object.
     pub fn from_word(word: &str) -> Self {
         match word {

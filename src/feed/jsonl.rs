@@ -8,7 +8,7 @@ use serde::{
 };
 use serde_json::value::RawValue;
 
-use super::{Channels, Frame, Quality, Tally, draft::Draft, line_error::LineError, rfc3339};
+use super::{Aside, Channels, Frame, Quality, Tally, draft::Draft, line_error::LineError, rfc3339};
 
 /// Reads the frame on one line.
 pub(super) fn frame(
@@ -41,6 +41,8 @@ struct Object<'a> {
     values: Entries<'a>,
     #[serde(borrow)]
     quality: Option<Entries<'a>>,
+    #[serde(borrow)]
+    tautline: Option<&'a RawValue>,
 }
 
 impl Object<'_> {
@@ -57,7 +59,8 @@ impl Object<'_> {
                 draft.quality(slot, Quality::from_word(quality.get().trim_matches('"')));
             }
         }
-        Ok(draft.finish(time))
+        let aside = self.tautline.and_then(|text| Aside::read(text.get(), channels, &tally.untaken));
+        Ok(Frame { aside, ..draft.finish(time) })
     }
 }
 

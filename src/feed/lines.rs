@@ -1,5 +1,6 @@
-/// Longest line that is looked at; a longer one is skipped to its end without being held.
-pub(super) const MAX_LINE_BYTES: usize = 1 << 20;
+/// Longest line that is looked at; a longer one is skipped to its end without being held. The frame with which a recorded
+/// day of some eighty corridors starts fits in.
+pub(crate) const MAX_LINE_BYTES: usize = 8 << 20;
 
 /// Cuts a stream of bytes into lines, whatever the pieces it comes in.
 #[derive(Debug, Default)]

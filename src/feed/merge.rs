@@ -64,6 +64,9 @@ impl Merger {
 
     /// Adds the readings of another frame; of two for one channel the better stands, or else the first.
     fn join(&mut self, merged: &mut Frame, other: &Frame) {
+        if merged.aside.is_none() {
+            merged.aside.clone_from(&other.aside);
+        }
         let readings = std::mem::take(&mut merged.readings);
         for (slot, reading) in readings.into_iter().chain(other.readings.iter().copied()) {
             match self.places.find(&mut merged.readings, slot) {

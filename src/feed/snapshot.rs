@@ -1,6 +1,8 @@
+use std::sync::Arc;
+
 use chrono::{DateTime, TimeDelta, Utc};
 
-use super::{Channels, Frame, Quality, Reading, Slot};
+use super::{Aside, Channels, Frame, Quality, Reading, Slot, Start};
 
 /// What stands at the time of a frame: its own values, and earlier ones that are not too old.
 #[derive(Debug, Clone, PartialEq)]
@@ -9,12 +11,19 @@ pub struct Snapshot {
     pub time: DateTime<Utc>,
     /// By slot; `None`: missing.
     pub readings: Vec<Option<Reading>>,
+    /// What a recording says besides the frame.
+    pub aside: Option<Arc<Aside>>,
 }
 
 impl Snapshot {
     /// The reading, unless it is missing or invalid.
     pub fn usable(&self, slot: Slot) -> Option<Reading> {
         self.readings[slot].filter(|reading| reading.quality != Quality::Invalid)
+    }
+
+    /// How everything stood before the frame, if it says so.
+    pub fn start(&self) -> Option<&Start> {
+        self.aside.as_ref()?.start.as_ref()
     }
 }
 
@@ -51,13 +60,22 @@ impl Holder {
             return None;
         }
         self.latest = Some(frame.time);
+        if let Some(start) = frame.aside.as_ref().and_then(|aside| aside.start.as_ref()) {
+            self.last.fill(None);
+            start.held.iter().for_each(|(slot, held)| self.last[*slot] = Some(*held));
+        }
         for &(slot, reading) in &frame.readings {
             // An invalid status says nothing new: the circuit stays as last known.
             if !(self.is_status[slot] && reading.quality == Quality::Invalid) {
                 self.last[slot] = Some((frame.time, reading));
             }
         }
-        self.snapshot()
+        Some(Snapshot { aside: frame.aside.clone(), ..self.snapshot()? })
+    }
+
+    /// The last value of each channel, and when it came.
+    pub(super) fn held(&self) -> impl Iterator<Item = (Slot, (DateTime<Utc>, Reading))> {
+        self.last.iter().enumerate().filter_map(|(slot, last)| Some((slot, (*last)?)))
     }
 
     /// What stands at the time of the latest frame; `None` before the first.
@@ -71,6 +89,6 @@ impl Holder {
                 last.filter(|(since, _)| *is_status || time - *since <= self.max_age).map(|(_, reading)| reading)
             })
             .collect();
-        Some(Snapshot { time, readings })
+        Some(Snapshot { time, readings, aside: None })
     }
 }

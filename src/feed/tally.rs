@@ -1,6 +1,6 @@
 use std::{collections::BTreeSet, fmt, sync::Arc};
 
-use super::line_error::LineError;
+use super::{Untaken, line_error::LineError};
 use crate::config::wording::is_unprintable;
 
 /// Names and reasons kept of each sort: the first few show what is wrong.
@@ -29,6 +29,8 @@ pub struct Tally {
     pub overrun: u64,
     /// Connections opened again.
     pub reconnects: u64,
+    /// What a recording says besides its frames, and could not be taken up.
+    pub untaken: Untaken,
     /// What went wrong last outside the frames themselves: a broken archive, a refused connection.
     pub trouble: Option<String>,
 }
@@ -68,6 +70,7 @@ impl Tally {
     /// What could not be used, in one line each; nothing when all could.
     pub fn findings(&self) -> Vec<String> {
         let reasons = self.reasons.iter().map(|(line, reason)| format!("line {line}: {reason}"));
+        let untaken = self.untaken.named();
         let counts = [
             (self.malformed, "malformed lines skipped", such_as(reasons)),
             (self.unknown.count, "values of unknown channels ignored", such_as(self.unknown.names.iter())),
@@ -76,6 +79,7 @@ impl Tally {
             (self.ahead, "frames dropped, far ahead of the clock and of the frame before them", String::new()),
             (self.overrun, "frames dropped, more than could be used in time", String::new()),
             (self.reconnects, "connections opened again", String::new()),
+            (untaken.count, "facts of a recording not taken up", such_as(untaken.names.iter())),
         ];
         let counted = counts.into_iter().filter(|(count, ..)| *count > 0);
         counted.map(|(count, what, which)| format!("{count} {what}{which}")).chain(self.trouble.clone()).collect()

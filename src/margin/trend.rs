@@ -4,9 +4,12 @@
 use std::collections::VecDeque;
 
 use chrono::{DateTime, TimeDelta, Utc};
+use serde::{Deserialize, Serialize};
 
 const SPAN: TimeDelta = TimeDelta::minutes(10);
 const INTERVAL: TimeDelta = TimeDelta::seconds(10);
+/// More than fit into the span.
+const MOST_SAMPLES: usize = 64;
 const FEWEST_SAMPLES: usize = 8;
 /// A slope over less is not looked at.
 const SHORTEST: TimeDelta = TimeDelta::seconds(110);
@@ -16,11 +19,34 @@ const SIGNIFICANCE: f64 = 2.576;
 const LONGEST_MINUTES: f64 = 720.0;
 
 /// The headroom's course over the last ten minutes.
-#[derive(Debug, Clone, Default)]
+#[derive(Debug, Clone, Default, Serialize, Deserialize)]
+#[serde(try_from = "Course")]
 pub struct Trend {
     samples: VecDeque<(DateTime<Utc>, f64)>,
+    #[serde(skip)]
     slopes: Vec<f64>,
+    #[serde(skip)]
     mw_per_minute: Option<f64>,
+}
+
+/// What of a trend is kept.
+#[derive(Deserialize)]
+struct Course {
+    samples: VecDeque<(DateTime<Utc>, f64)>,
+}
+
+impl TryFrom<Course> for Trend {
+    type Error = &'static str;
+
+    fn try_from(Course { samples }: Course) -> Result<Self, Self::Error> {
+        let apart = |((earlier, _), (later, _)): (&(DateTime<Utc>, f64), &(DateTime<Utc>, f64))| earlier < later;
+        if samples.len() > MOST_SAMPLES || !samples.iter().zip(samples.iter().skip(1)).all(apart) {
+            return Err("no course that a headroom can have taken");
+        }
+        let mut trend = Self { samples, ..Self::default() };
+        trend.mw_per_minute = trend.slope();
+        Ok(trend)
+    }
 }
 
 impl Trend {

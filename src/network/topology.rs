@@ -1,9 +1,11 @@
 //! Which switches are closed, and what that joins.
 
+use serde::{Deserialize, Serialize};
+
 use crate::grid::{BankIndex, BusIndex, Corridor, FROM, TO};
 
 /// Statuses of a corridor's circuits and banks.
-#[derive(Debug, Clone, PartialEq, Eq, Hash)]
+#[derive(Debug, Clone, PartialEq, Eq, Hash, Serialize, Deserialize)]
 pub struct Topology {
     /// By circuit: in service.
     pub closed: Vec<bool>,
@@ -18,6 +20,13 @@ impl Topology {
             closed: vec![true; corridor.circuits.len()],
             inserted: corridor.circuits.iter().map(|c| vec![true; c.banks.len()]).collect(),
         }
+    }
+
+    /// Whether it is one of a corridor's.
+    pub fn is_of(&self, corridor: &Corridor) -> bool {
+        let complete = Self::complete(corridor);
+        let banks = |topology: &Self| topology.inserted.iter().map(Vec::len).collect::<Vec<_>>();
+        self.closed.len() == complete.closed.len() && banks(self) == banks(&complete)
     }
 
     /// With circuits out and banks bypassed.

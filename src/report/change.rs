@@ -152,8 +152,19 @@ fn of_alarm(corridor: &str, alarm: &Definition, say: &mut impl FnMut(String, &'s
 }
 
 fn of_settings(config: &Config, say: &mut impl FnMut(String, &'static str, String)) {
-    let Config { grid, time_zone, measurement, feed, channel_names, learning, journal, screen, state_file, .. } =
-        config;
+    let Config {
+        grid,
+        time_zone,
+        measurement,
+        feed,
+        channel_names,
+        learning,
+        journal,
+        recording,
+        screen,
+        state_file,
+        ..
+    } = config;
     say("grid".into(), "frequency, Hz", grid.frequency_hz.to_string());
     say("grid".into(), "time zone", time_zone.name().into());
     say("measurement".into(), "kV σ, %", measurement.kv_sigma_pct.to_string());
@@ -175,6 +186,11 @@ fn of_settings(config: &Config, say: &mut impl FnMut(String, &'static str, Strin
     say("learning".into(), "kept in (at the next start)", or_none(state_file.as_ref()));
     say("journal".into(), "file (at the next start)", or_none(journal.file.as_ref().map(|file| file.display())));
     say("journal".into(), "kept for, days (at the next start)", journal.keep_days.to_string());
+    let folder = or_none(recording.folder.as_ref().map(|folder| folder.display()));
+    say("recording".into(), "folder (at the next start)", folder);
+    say("recording".into(), "flushed every, s (at the next start)", recording.flush_s.to_string());
+    say("recording".into(), "kept for, days (at the next start)", or_none(recording.keep_days));
+    say("recording".into(), "kept up to, GB (at the next start)", or_none(recording.keep_gb));
     say("screen".into(), "blink", screen.blink.to_string());
     let bell: Vec<_> = screen.bell.iter().map(|priority| priority.word()).collect();
     say("screen".into(), "bell", bell.join(", "));

@@ -17,8 +17,8 @@ pub struct Understood<'a>(pub &'a Config);
 
 impl fmt::Display for Understood<'_> {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let Config { grid, time_zone, measurement, feed, channel_names, learning, alarms, journal, screen, state_file } =
-            self.0;
+        let Config { grid, time_zone, measurement, feed, channel_names, alarms, screen, .. } = self.0;
+        let Config { learning, journal, recording, state_file, .. } = self.0;
         writeln!(f, "{} at {} Hz", counted(grid.corridors.len(), "corridor"), grid.frequency_hz)?;
         for (corridor, alarms) in grid.corridors.iter().zip(alarms) {
             write!(f, "\n{}", UnderstoodCorridor(corridor))?;
@@ -35,6 +35,16 @@ impl fmt::Display for Understood<'_> {
             measurement.kv_sigma_pct, measurement.angle_sigma_deg, measurement.power_sigma_pct
         )?;
         writeln!(f, "    journal: entries are kept for {} days", journal.keep_days)?;
+        if let Some(folder) = &recording.folder {
+            let most = [
+                recording.keep_days.map(|days| format!("{days} days")),
+                recording.keep_gb.map(|gb| format!("{gb} GB")),
+            ];
+            let most: Vec<_> = most.into_iter().flatten().collect();
+            let most =
+                if most.is_empty() { "without a limit".to_owned() } else { format!("up to {}", most.join(" and ")) };
+            writeln!(f, "    frames are recorded in {}, {most}", folder.display())?;
+        }
         let bell: Vec<_> = screen.bell.iter().map(|priority| priority.word()).collect();
         let bell =
             if bell.is_empty() { "no alarm".to_owned() } else { format!("alarms of priority {}", bell.join(", ")) };

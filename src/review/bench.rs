@@ -1,7 +1,8 @@
 use std::sync::Arc;
 
-use chrono::{DateTime, NaiveDate, NaiveTime, TimeDelta, Utc};
+use chrono::{DateTime, NaiveDate, NaiveTime, SecondsFormat, TimeDelta, Utc};
 use rayon::prelude::*;
+use serde_json::value::RawValue;
 
 use super::{Beginning, CorridorDay, Day, FileNote, SourceNote};
 use crate::{
@@ -9,19 +10,27 @@ use crate::{
     config::Config,
     desk::{Alternative, Assessment, CorridorDesk, Desk, State},
     events::{Event, EventKind, Teller, gap},
-    feed::{Channels, Frame, Holder, Snapshot},
+    feed::{Aside, Channels, Frame, FrameText, Holder, Kept, Present, Snapshot, Start, Why},
 };
 
 /// Events of a corridor and a day; more than a reader would go through.
 const MOST_EVENTS: usize = 1000;
+
+/// What is said of recorded configurations on a day, and of each.
+const MOST_FINDINGS: usize = 20;
+const MOST_DIFFERENCES: usize = 8;
 
 /// What is to be reviewed, and how.
 #[derive(Debug, Clone)]
 pub struct Task {
     /// Corridors, alarms, settings.
     pub config: Arc<Config>,
+    /// Its text.
+    pub configuration: Arc<str>,
     /// What its corridors read.
     pub channels: Arc<Channels>,
+    /// Says what differs between a recording's configuration and the one it is reviewed with.
+    pub differences: fn(&Config, &Config) -> Vec<String>,
     /// Changes that were asked for, corridor by corridor.
     pub alternatives: Vec<Option<Alternative>>,
 }
@@ -40,6 +49,8 @@ impl Rows for () {
 /// One day at work: frames in, a [`Day`] out.
 #[derive(Debug)]
 pub struct Bench<R> {
+    config: Arc<Config>,
+    differences: fn(&Config, &Config) -> Vec<String>,
     max_age: TimeDelta,
     holder: Holder,
     seats: Vec<Seat<R>>,
@@ -48,6 +59,7 @@ pub struct Bench<R> {
     frames: u64,
     silent_ms: i64,
     gaps: Vec<Event>,
+    findings: Vec<String>,
 }
 
 /// One corridor, which shares nothing with the others.
@@ -87,6 +99,8 @@ impl<R: Rows> Bench<R> {
             Seat::new(desk, board, alternative.clone(), rows, max_age)
         });
         Self {
+            config: config.clone(),
+            differences: task.differences,
             max_age,
             holder: Holder::new(&task.channels, max_age),
             seats: seats.collect(),
@@ -95,6 +109,7 @@ impl<R: Rows> Bench<R> {
             frames: 0,
             silent_ms: 0,
             gaps: Vec::new(),
+            findings: Vec::new(),
         }
     }
 
@@ -103,8 +118,44 @@ impl<R: Rows> Bench<R> {
         let snapshots: Vec<Snapshot> = frames.iter().filter_map(|frame| self.holder.take(frame)).collect();
         for snapshot in &snapshots {
             self.note(snapshot.time);
+            if let Some(start) = snapshot.start() {
+                self.begin(start, snapshot.time);
+            }
         }
         self.seats.par_iter_mut().for_each(|seat| snapshots.iter().for_each(|snapshot| seat.take(snapshot)));
+    }
+
+    /// Every corridor takes up by itself how it stood; here is what there is to say of it.
+    fn begin(&mut self, start: &Start, time: DateTime<Utc>) {
+        match self.beginning {
+            Beginning::Carried if self.frames == 1 => return,
+            _ if self.frames == 1 => self.beginning = Beginning::Recorded,
+            _ => {}
+        }
+        if self.findings.len() >= MOST_FINDINGS {
+            return;
+        }
+        let stamp = time.to_rfc3339_opts(SecondsFormat::AutoSi, true);
+        let differences = match start.config() {
+            Some(recorded) => (self.differences)(recorded, &self.config),
+            None => vec!["it cannot be read".into()],
+        };
+        if !differences.is_empty() {
+            let some = differences.iter().take(MOST_DIFFERENCES).map(String::as_str).collect::<Vec<_>>().join("; ");
+            let more = differences.len().saturating_sub(MOST_DIFFERENCES);
+            let more = if more > 0 { format!("; and {more} more") } else { String::new() };
+            self.findings.push(format!(
+                "recorded from {stamp} with another configuration than it is reviewed with: {some}{more}"
+            ));
+        }
+        if let Some(what) = match start.why {
+            Why::Start => Some("the recording program was started"),
+            Why::Configuration => Some("another configuration came into force"),
+            Why::Gap => Some("frames before this one could not be recorded"),
+            Why::Day => None,
+        } {
+            self.gaps.push(Event::of_program(time, what.into()));
+        }
     }
 
     fn note(&mut self, time: DateTime<Utc>) {
@@ -120,11 +171,28 @@ impl<R: Rows> Bench<R> {
         self.span = Some((first, time));
     }
 
-    /// The same, taking down what comes in others.
-    #[must_use]
-    pub fn with_rows(mut self, rows: impl IntoIterator<Item = R>) -> Self {
-        self.seats.iter_mut().zip(rows).for_each(|(seat, rows)| seat.rows = rows);
-        self
+    /// Goes on from the end of another day, unless the first frame says itself how everything stood.
+    pub fn carry(&mut self, end: &RawValue, task: &Task, first: &mut Frame) {
+        if first.aside.as_ref().is_some_and(|aside| aside.start.is_some()) {
+            return;
+        }
+        if let Some(aside) = Aside::with_start(end, &task.channels) {
+            self.beginning = Beginning::Carried;
+            first.aside = Some(aside);
+        }
+    }
+
+    /// How everything stands, for the next day to go on from.
+    pub fn end(&self, task: &Task) -> Option<Box<RawValue>> {
+        let stands = |seat: &Seat<R>| Kept { desk: seat.desk.memory(), alarms: seat.board.memory() };
+        let present = Present {
+            why: Why::Day,
+            configuration: &task.configuration,
+            holder: &self.holder,
+            corridors: self.seats.iter().map(|seat| (&*seat.day.corridor, stands(seat))).collect(),
+        };
+        let text = present.write(&FrameText::new(&task.config, &task.channels)).ok()?;
+        RawValue::from_string(text).ok()
     }
 
     /// What was taken down of each corridor.
@@ -132,8 +200,9 @@ impl<R: Rows> Bench<R> {
         self.seats.iter_mut().map(|seat| &mut seat.rows)
     }
 
-    /// Ends the day; `None` when there was not a single frame. The bench is ready for the next one, with everything it has learned.
-    pub fn finish(&mut self, files: Vec<FileNote>, findings: Vec<String>) -> Option<Day> {
+    /// Ends the day; `None` when there was not a single frame.
+    pub fn finish(mut self, files: Vec<FileNote>, mut findings: Vec<String>) -> Option<Day> {
+        findings.append(&mut self.findings);
         let (first, last) = self.span.take()?;
         let midnight = midnight_after(last.date_naive());
         let mut events = std::mem::take(&mut self.gaps);
@@ -144,7 +213,7 @@ impl<R: Rows> Bench<R> {
         events.sort_by_key(|event| event.time);
         Some(Day {
             date: first.date_naive(),
-            beginning: std::mem::replace(&mut self.beginning, Beginning::Carried),
+            beginning: self.beginning,
             files,
             first,
             last,
@@ -195,10 +264,13 @@ impl<R: Rows> Seat<R> {
         self.stood_until(assessment.time);
         self.rows.take(&assessment, altered.as_ref());
         self.day.was.take(self.desk.corridor(), &assessment);
-        self.tell(&assessment);
+        self.tell(snapshot.aside.as_deref(), &assessment);
         self.last = Some(assessment);
         if let Some((altered, (what_if, course))) = altered.zip(self.what_if.as_mut().zip(self.day.what_if.as_mut())) {
             course.take(self.desk.corridor(), &altered);
+            if let Some(aside) = &snapshot.aside {
+                what_if.board.take_up(aside, &mut self.transitions);
+            }
             what_if.board.observe(&altered, &mut self.transitions);
             course.count(&self.transitions);
             self.transitions.clear();
@@ -223,7 +295,7 @@ impl<R: Rows> Seat<R> {
         }
     }
 
-    fn tell(&mut self, assessment: &Assessment) {
+    fn tell(&mut self, aside: Option<&Aside>, assessment: &Assessment) {
         self.first_sources.get_or_insert_with(|| SourceNote::both(assessment));
         if self.day.was.frames == 1 && assessment.state != State::Ample {
             self.keep(Event::first(assessment));
@@ -234,6 +306,9 @@ impl<R: Rows> Seat<R> {
             self.keep(event);
         }
         let mut transitions = std::mem::take(&mut self.transitions);
+        if let Some(aside) = aside {
+            self.board.take_up(aside, &mut transitions);
+        }
         self.board.observe(assessment, &mut transitions);
         self.day.was.count(&transitions);
         transitions.drain(..).for_each(|transition| self.keep(Event::of_alarm(&transition)));

@@ -21,7 +21,7 @@ pub use course::{AlarmCount, Binding, Course, Least, Unbalanced};
 pub use day::{Beginning, CorridorDay, Day, FileNote, MeterNote, SourceNote};
 pub use durations::Durations;
 pub use part::{Part, PartError, Terms};
-pub use run::{Done, Output, Run};
+pub use run::{Done, Output, Reviewed, Run};
 pub use series::{Series, Slot};
 pub use tallied::{Share, Tallied};
 pub use whole::{Brief, CorridorReview, DayFigures, Review};

@@ -11,9 +11,10 @@ use std::{
 
 use chrono::NaiveDate;
 use serde::{Deserialize, Serialize};
+use serde_json::value::RawValue;
 use thiserror::Error;
 
-use super::{ArchiveKey, Day};
+use super::{ArchiveKey, Day, Reviewed};
 
 const VERSION: u32 = 1;
 const ENDING: &str = ".review.json.zst";
@@ -21,7 +22,7 @@ const ENDING: &str = ".review.json.zst";
 const LARGEST_BYTES: u64 = 1 << 30;
 
 /// A reviewed day with what it was made by.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Part {
     version: u32,
@@ -31,6 +32,7 @@ pub struct Part {
     pub archives: Vec<ArchiveKey>,
     /// The day.
     pub day: Day,
+    end: Option<Box<RawValue>>,
 }
 
 /// How a day was reviewed: only days under the same terms go together.
@@ -98,8 +100,13 @@ pub enum PartError {
 
 impl Part {
     /// A day as it was reviewed.
-    pub fn new(terms: Terms, archives: Vec<ArchiveKey>, day: Day) -> Self {
-        Self { version: VERSION, terms, archives, day }
+    pub fn new(terms: Terms, archives: Vec<ArchiveKey>, Reviewed { day, end }: Reviewed) -> Self {
+        Self { version: VERSION, terms, archives, day, end }
+    }
+
+    /// The day alone.
+    pub fn reviewed(self) -> Reviewed {
+        Reviewed { day: self.day, end: self.end }
     }
 
     /// Where the part of a day is kept.

@@ -15,6 +15,7 @@ use std::{
 
 use chrono::NaiveDate;
 use rayon::{ThreadPool, ThreadPoolBuilder};
+use serde_json::value::RawValue;
 
 use super::{Bench, Day, Follow, Rows, Stretch, Task};
 use crate::feed::{Frame, Recorded};
@@ -49,15 +50,30 @@ pub struct Run<'a, O> {
     /// Where rows go.
     pub output: &'a O,
     /// A day that was reviewed before.
-    pub known: &'a (dyn Fn(&Stretch, NaiveDate) -> Option<Day> + Sync),
+    pub known: &'a (dyn Fn(&Stretch, NaiveDate) -> Option<Reviewed> + Sync),
     /// Follows the reading.
     pub follow: &'a Follow,
+}
+
+/// A day that is done, and how everything stood at its end where the next day is to go on from there.
+#[derive(Debug, Clone)]
+pub struct Reviewed {
+    /// The day.
+    pub day: Day,
+    /// Its end, as a recording says how a day starts.
+    pub end: Option<Box<RawValue>>,
+}
+
+/// What the day before left.
+struct Before {
+    end: Option<Box<RawValue>>,
+    was_known: bool,
 }
 
 /// A day that is done.
 pub struct Done {
     /// The day.
-    pub day: Day,
+    pub reviewed: Reviewed,
     /// Its stretch, by place.
     pub stretch: usize,
     /// Whether it was known before.
@@ -103,11 +119,11 @@ impl<O: Output> Run<'_, O> {
     }
 
     fn work(&self, pool: &ThreadPool, jobs: &Mutex<Receiver<Job>>) {
-        let mut carried = None;
+        let mut before = Before { end: None, was_known: true };
         loop {
             let job = jobs.lock().unwrap_or_else(PoisonError::into_inner).recv();
-            let Ok((stretch, days)) = job else { return };
-            if let Err(error) = self.stretch(stretch, pool, &mut carried, &days) {
+            let Ok((place, days)) = job else { return };
+            if let Err(error) = self.stretch(place, pool, &mut before, &days) {
                 // Nobody listens any more when the whole run has failed already.
                 let _unheard = days.send(Err(error));
             }
@@ -118,19 +134,19 @@ impl<O: Output> Run<'_, O> {
         &self,
         place: usize,
         pool: &ThreadPool,
-        carried: &mut Option<Bench<O::Rows>>,
+        before: &mut Before,
         days: &SyncSender<io::Result<Done>>,
     ) -> io::Result<()> {
         let stretch = &self.stretches[place];
-        let send = |day, was_known| days.send(Ok(Done { day, stretch: place, was_known })).is_ok();
+        let send = |reviewed, was_known| days.send(Ok(Done { reviewed, stretch: place, was_known })).is_ok();
+        let known = |date| (self.known)(stretch, date);
         if let Some((first, last)) = stretch.days
             && !self.carry
-            && (self.known)(stretch, last).is_some()
+            && known(last).is_some()
         {
             // The last day is done after all others.
-            let known =
-                first.iter_days().take_while(|date| *date <= last).filter_map(|date| (self.known)(stretch, date));
-            let _all_heard = known.map(|day| send(day, true)).all(|heard| heard);
+            let mut done = first.iter_days().take_while(|date| *date <= last).filter_map(known);
+            let _all_heard = done.all(|reviewed| send(reviewed, true));
             return Ok(());
         }
         let recorded = stretch.open(&self.task.channels, self.follow);
@@ -138,38 +154,54 @@ impl<O: Output> Run<'_, O> {
         let mut frames = recorded.peekable();
         let mut findings = stretch.findings.clone();
         while let Some(date) = frames.peek().map(|frame| frame.time.date_naive()) {
-            if let Some(day) = (self.known)(stretch, date).filter(|_| !self.carry) {
+            // What is carried over is known only as long as everything before it is.
+            let reviewed = known(date).filter(|_| !self.carry || before.was_known);
+            before.was_known = reviewed.is_some();
+            let reviewed = if let Some(reviewed) = reviewed {
                 while !batch(&mut frames, date).is_empty() {}
-                if !send(day, true) {
-                    return Ok(());
-                }
-                continue;
-            }
-            let (mut book, rows) = self.output.open(date)?;
-            let mut bench = match carried.take() {
-                Some(bench) => bench.with_rows(rows),
-                None => Bench::new(self.task, rows),
+                reviewed
+            } else {
+                let carried = before.end.take().filter(|_| self.carry);
+                let bench = self.day(date, carried, pool, &mut frames)?;
+                let files = stretch.notes(date, frames.peek().is_none(), &monitor);
+                let end = self.carry.then(|| bench.end(self.task)).flatten();
+                let Some(day) = bench.finish(files, std::mem::take(&mut findings)) else { continue };
+                Reviewed { day, end }
             };
-            let mut now = batch(&mut frames, date);
-            while !now.is_empty() {
-                let mut next = Vec::new();
-                pool.in_place_scope(|scope| {
-                    scope.spawn(|_| bench.take(&now));
-                    next = batch(&mut frames, date);
-                });
-                bench.rows().try_for_each(|rows| self.output.turn(&mut book, rows, false))?;
-                now = next;
-            }
-            bench.rows().try_for_each(|rows| self.output.turn(&mut book, rows, true))?;
-            self.output.close(book)?;
-            let files = stretch.notes(date, frames.peek().is_none(), &monitor);
-            let day = bench.finish(files, std::mem::take(&mut findings));
-            *carried = self.carry.then_some(bench);
-            if !day.is_none_or(|day| send(day, false)) {
+            before.end.clone_from(&reviewed.end);
+            if !send(reviewed, before.was_known) {
                 return Ok(());
             }
         }
         Ok(())
+    }
+
+    /// Takes all frames of a day.
+    fn day(
+        &self,
+        date: NaiveDate,
+        carried: Option<Box<RawValue>>,
+        pool: &ThreadPool,
+        frames: &mut Peekable<Recorded>,
+    ) -> io::Result<Bench<O::Rows>> {
+        let (mut book, rows) = self.output.open(date)?;
+        let mut bench = Bench::new(self.task, rows);
+        let mut now = batch(frames, date);
+        if let (Some(end), Some(first)) = (carried, now.first_mut()) {
+            bench.carry(&end, self.task, first);
+        }
+        while !now.is_empty() {
+            let mut next = Vec::new();
+            pool.in_place_scope(|scope| {
+                scope.spawn(|_| bench.take(&now));
+                next = batch(frames, date);
+            });
+            bench.rows().try_for_each(|rows| self.output.turn(&mut book, rows, false))?;
+            now = next;
+        }
+        bench.rows().try_for_each(|rows| self.output.turn(&mut book, rows, true))?;
+        self.output.close(book)?;
+        Ok(bench)
     }
 }
 

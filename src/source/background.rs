@@ -3,8 +3,12 @@
 use std::collections::VecDeque;
 
 use nalgebra::SMatrix;
+use serde::{Deserialize, Serialize};
 
-use super::terminal::{Measured, MeasuredCovariance};
+use super::{
+    kept::or_never,
+    terminal::{Measured, MeasuredCovariance},
+};
 
 /// Samples kept over the background's time.
 const SAMPLES: usize = 128;
@@ -20,13 +24,15 @@ const LEAST_PART_OF_CLASS: f64 = 0.2;
 const CUT_AT: f64 = 3.0;
 
 /// Quiet changes of the measurements: from bin to bin, and from window to window.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Serialize, Deserialize)]
 pub(super) struct Background {
     spacing_s: f64,
+    #[serde(deserialize_with = "or_never")]
     sampled_s: f64,
     since_evaluation: usize,
     bin_changes: VecDeque<Measured>,
     window_changes: VecDeque<Measured>,
+    #[serde(skip)]
     scratch: Vec<f64>,
     /// Covariance of the noise of one bin.
     pub(super) noise: MeasuredCovariance,
@@ -46,6 +52,11 @@ impl Background {
             noise: MeasuredCovariance::zeros(),
             spread: None,
         }
+    }
+
+    /// Whether it is no more than it could be by itself.
+    pub(super) fn is_possible(&self) -> bool {
+        self.bin_changes.len().max(self.window_changes.len()) <= SAMPLES
     }
 
     /// Takes the changes at `time_s` if a sample is due, and says whether the background was evaluated anew.

@@ -1,9 +1,12 @@
 //! Finds sudden steps: what the measurements were just before, and just after.
 
+use serde::{Deserialize, Serialize};
+
 use super::{
     Observation,
     background::Background,
     hypothesis::Moment,
+    kept::{or_ever, or_never},
     terminal::{Impedances, Measured, Terminal, behind, state_covariance},
     window::{Bin, Recent, Window},
 };
@@ -19,7 +22,7 @@ const GAP_BEFORE: f64 = 0.25;
 const LEAST_WANDER: f64 = 0.05;
 
 /// Finds steps in the measurements of one corridor.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Serialize, Deserialize)]
 pub(super) struct Detector {
     window_s: f64,
     gap_s: f64,
@@ -37,15 +40,17 @@ pub(super) struct Detector {
     /// What a change of each measurement does to the voltages behind the impedances.
     gains: [Measured; 2],
     /// How much these voltages change when nothing happens, kV.
+    #[serde(deserialize_with = "or_ever")]
     e_spread: [f64; 2],
     candidate: Option<Candidate>,
     switched: Option<Onset>,
     /// Where the last step has settled.
+    #[serde(deserialize_with = "or_never")]
     quiet_from_s: f64,
 }
 
 /// A step that may still be outdone by a larger one nearby.
-#[derive(Debug, Clone, Copy)]
+#[derive(Debug, Clone, Copy, Serialize, Deserialize)]
 struct Candidate {
     time_s: f64,
     score: f64,
@@ -54,7 +59,7 @@ struct Candidate {
 }
 
 /// The last instant before a step and the first after it.
-#[derive(Debug, Clone, Copy)]
+#[derive(Debug, Clone, Copy, Serialize, Deserialize)]
 pub(super) struct Onset {
     pub(super) before_s: f64,
     pub(super) after_s: f64,
@@ -100,6 +105,22 @@ impl Detector {
             switched: None,
             quiet_from_s: f64::NEG_INFINITY,
         }
+    }
+
+    /// What of it future frames are compared with: windows reach no further back.
+    pub(super) fn kept(&self) -> Self {
+        let reach_s = 3.0 * (self.length_s() + self.gap_s.max(1.5 * self.frame_s));
+        Self { recent: self.recent.since(self.last_s.map_or(0.0, |last_s| last_s - reach_s)), ..self.clone() }
+    }
+
+    /// Whether it is one that these settings can lead to.
+    pub(super) fn is_possible(&self, settings: &LearningSettings) -> bool {
+        let new = Self::new(settings);
+        let own = |detector: &Self| [detector.window_s, detector.gap_s, detector.threshold, detector.bin_s];
+        own(self) == own(&new)
+            && self.recent.is_possible()
+            && self.open.as_ref().is_none_or(Bin::is_possible)
+            && self.background.is_possible()
     }
 
     /// Takes a frame; `None` while its bin is still open. `z` is what is known of the impedances.

@@ -1,12 +1,13 @@
 //! What is known of both impedances: a normal distribution, and what remains of it where R ≥ 0 and X > 0.
 
 use nalgebra::{Complex, Matrix4, Vector4};
+use serde::{Deserialize, Serialize};
 use statrs::function::erf::erfc;
 
 use crate::grid::ConfiguredSource;
 
 /// Both sides' Thevenin impedances as they are known now: R `from`, X `from`, R `to`, X `to`, ohm.
-#[derive(Debug, Clone, Copy, PartialEq)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
 pub struct Estimate {
     /// Mean.
     pub mean: Vector4<f64>,
@@ -40,7 +41,7 @@ impl Estimate {
 }
 
 /// A normal distribution of the four, not yet cut off at zero: the cut is knowledge from elsewhere, to be applied once.
-#[derive(Debug, Clone, Copy, PartialEq)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
 pub(super) struct Belief {
     pub(super) mean: Vector4<f64>,
     pub(super) covariance: Matrix4<f64>,

@@ -3,6 +3,7 @@
 use std::collections::VecDeque;
 
 use chrono::{DateTime, TimeDelta, Utc};
+use serde::{Deserialize, Serialize};
 
 use super::{
     Estimate, Observation, SpreadPoint, Step,
@@ -15,9 +16,9 @@ use super::{
 use crate::{config::LearningSettings, grid::ConfiguredSource};
 
 /// Steps kept in the log.
-const LOGGED: usize = 64;
+pub(super) const LOGGED: usize = 64;
 /// Points of the spread's history: a day at five minutes.
-const HISTORY: usize = 288;
+pub(super) const HISTORY: usize = 288;
 const HISTORY_EVERY_S: f64 = 300.0;
 const DAY_S: f64 = 86_400.0;
 /// Frames that come again are no older than this; further back they are another run of events.
@@ -39,20 +40,21 @@ const BOTH_USUAL: f64 = 0.3;
 const BOTH_DOUBT: f64 = 3.0;
 
 /// Learns both sides' impedances of one corridor.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Serialize, Deserialize)]
 pub struct Learner {
-    settings: LearningSettings,
-    configured: Belief,
-    belief: Belief,
-    aged_s: Option<f64>,
+    #[serde(skip)]
+    pub(super) settings: LearningSettings,
+    pub(super) configured: Belief,
+    pub(super) belief: Belief,
+    pub(super) aged_s: Option<f64>,
     /// What was recalled had been learned from frames up to here.
-    recalled_s: Option<f64>,
-    estimate: Estimate,
-    detector: Detector,
-    watch: [Watch; 2],
-    both: f64,
-    steps: VecDeque<Step>,
-    history: VecDeque<SpreadPoint>,
+    pub(super) recalled_s: Option<f64>,
+    pub(super) estimate: Estimate,
+    pub(super) detector: Detector,
+    pub(super) watch: [Watch; 2],
+    pub(super) both: f64,
+    pub(super) steps: VecDeque<Step>,
+    pub(super) history: VecDeque<SpreadPoint>,
 }
 
 impl Learner {

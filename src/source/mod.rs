@@ -20,6 +20,7 @@ mod background;
 mod detector;
 mod estimate;
 mod hypothesis;
+mod kept;
 mod learner;
 mod log;
 pub mod store;

@@ -1,5 +1,7 @@
 //! Whether what was learned still holds: a grid that changed contradicts it step after step.
 
+use serde::{Deserialize, Serialize};
+
 use super::{
     estimate::Belief,
     hypothesis::{Event, Verdict},
@@ -19,7 +21,7 @@ const ALARM: f64 = 12.0;
 const MOST: f64 = 2.0;
 
 /// Watches over one side's impedance.
-#[derive(Debug, Clone, Copy, Default)]
+#[derive(Debug, Clone, Copy, Default, Serialize, Deserialize)]
 pub(super) struct Watch {
     /// When a step contradicted it, and what it would be after that step.
     doubt: Option<(f64, Belief)>,

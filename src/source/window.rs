@@ -3,6 +3,7 @@
 use std::collections::VecDeque;
 
 use nalgebra::{Complex, Matrix2};
+use serde::{Deserialize, Serialize};
 
 use super::terminal::{Measured, Observation};
 
@@ -10,7 +11,7 @@ use super::terminal::{Measured, Observation};
 const CAPACITY: usize = 160;
 
 /// Mean of the frames of a fraction of a second, or one frame where frames are rarer.
-#[derive(Debug, Clone, Copy)]
+#[derive(Debug, Clone, Copy, Serialize, Deserialize)]
 pub(super) struct Bin {
     start_s: f64,
     pub(super) time_s: f64,
@@ -29,6 +30,11 @@ impl Bin {
     /// Whether a frame at `time_s` still belongs here.
     pub(super) fn holds(&self, time_s: f64, segment: u64, length_s: f64) -> bool {
         segment == self.segment && time_s - self.start_s < length_s
+    }
+
+    /// Whether it can be added to.
+    pub(super) fn is_possible(&self) -> bool {
+        (1..u32::MAX / 2).contains(&self.count)
     }
 
     pub(super) fn add(&mut self, time_s: f64, seen: &Observation) {
@@ -52,7 +58,8 @@ pub(super) struct Window {
 }
 
 /// The recent bins, oldest first.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Serialize, Deserialize)]
+#[serde(transparent)]
 pub(super) struct Recent {
     bins: VecDeque<Bin>,
 }
@@ -60,6 +67,16 @@ pub(super) struct Recent {
 impl Recent {
     pub(super) fn new() -> Self {
         Self { bins: VecDeque::with_capacity(CAPACITY) }
+    }
+
+    /// Without what lies before a time.
+    pub(super) fn since(&self, from_s: f64) -> Self {
+        Self { bins: self.bins.iter().filter(|bin| bin.time_s >= from_s).copied().collect() }
+    }
+
+    /// Whether it is no more than it could be by itself.
+    pub(super) fn is_possible(&self) -> bool {
+        self.bins.len() <= CAPACITY && self.bins.iter().all(Bin::is_possible)
     }
 
     pub(super) fn push(&mut self, bin: Bin) {

@@ -58,15 +58,15 @@ fn empty_lines_carriage_returns_and_byte_order_marks_are_nothing() {
 
 #[test]
 fn a_huge_line_is_skipped_to_its_end() {
-    for piece in [1 << 10, (1 << 20) - 1, 1 << 20, 3 << 20] {
+    for piece in [1 << 10, (8 << 20) - 1, 8 << 20, 10 << 20] {
         let (mut frames, mut tally) = (Vec::new(), Tally::default());
         let mut decoder = Decoder::new(Format::JsonLines, channels());
-        let stream = [lines([1]).into_bytes(), vec![b'{'; 3 << 20], b"\n".to_vec(), lines([2]).into_bytes()].concat();
+        let stream = [lines([1]).into_bytes(), vec![b'{'; 10 << 20], b"\n".to_vec(), lines([2]).into_bytes()].concat();
         for piece in stream.chunks(piece) {
             decoder.push(piece, &mut tally, &mut frames);
         }
         assert_eq!(seconds(&frames), [1, 2], "in pieces of {piece}");
-        assert_eq!(tally.reasons, [(2, "longer than 1048576 bytes".to_owned())]);
+        assert_eq!(tally.reasons, [(2, "longer than 8388608 bytes".to_owned())]);
     }
 }
 

@@ -17,7 +17,7 @@ fn snapshot(channels: &Channels, values: &serde_json::Value) -> Snapshot {
         let slot = channels.in_feed(name).unwrap();
         readings[slot] = Some(Reading { value: value.as_f64().unwrap(), quality: Quality::Good });
     }
-    Snapshot { time: DateTime::UNIX_EPOCH, readings }
+    Snapshot { time: DateTime::UNIX_EPOCH, readings, aside: None }
 }
 
 fn fits_exactly(case: &Path) {

@@ -98,7 +98,7 @@ proptest! {
         let mut readings = readings;
         readings.resize(channels.len(), None);
         readings.truncate(truncate.unwrap_or(usize::MAX));
-        let snapshot = Snapshot { time: DateTime::UNIX_EPOCH, readings };
+        let snapshot = Snapshot { time: DateTime::UNIX_EPOCH, readings, aside: None };
         let mut fitter = Fitter::new(corridor.into(), &channels, &MeasurementSettings::default());
         let fit = fitter.fit(&snapshot);
         assert_sane(&fit);

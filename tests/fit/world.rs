@@ -169,7 +169,8 @@ impl World {
 
     /// All channels, exact.
     pub fn exact(&self) -> Snapshot {
-        let mut snapshot = Snapshot { time: DateTime::UNIX_EPOCH, readings: vec![None; self.channels.len()] };
+        let mut snapshot =
+            Snapshot { time: DateTime::UNIX_EPOCH, readings: vec![None; self.channels.len()], aside: None };
         for point in self.points() {
             self.set(&mut snapshot, point, self.value(point));
         }

@@ -11,8 +11,9 @@ use std::{
 use chrono::NaiveDate;
 use tautline::{
     config::Config,
-    drill::{Drill, FrameText, Invention},
-    feed::Channels,
+    desk::Alternative,
+    drill::{Drill, Invention},
+    feed::{Channels, FrameText},
     review::{Day, Review, Run, Stretch, Task},
 };
 use tempfile::TempDir;
@@ -21,6 +22,7 @@ use tempfile::TempDir;
 pub struct Bed {
     pub folder: TempDir,
     pub config: Config,
+    configuration: String,
     pub lines: Vec<String>,
 }
 
@@ -41,7 +43,7 @@ impl Bed {
         }
         let folder = tempfile::tempdir().unwrap();
         fs::write(folder.path().join("config.toml"), &invented.config).unwrap();
-        Self { folder, config, lines }
+        Self { folder, config, configuration: invented.config, lines }
     }
 
     pub fn path(&self, name: &str) -> PathBuf {
@@ -63,12 +65,21 @@ impl Bed {
         &self.lines[360 * hours.start..(360 * hours.end).min(self.lines.len())]
     }
 
+    pub fn task(&self, alternatives: Vec<Option<Alternative>>) -> Task {
+        Task {
+            config: Arc::new(self.config.clone()),
+            configuration: self.configuration.as_str().into(),
+            channels: Arc::new(Channels::new(&self.config)),
+            differences: tautline::report::change::lines,
+            alternatives,
+        }
+    }
+
     /// The days in these files.
     pub fn days(&self, files: &[PathBuf], threads: usize, carry: bool) -> Vec<Day> {
         let stretches = Stretch::all(files, &|file| Box::new(file), |_| {}).unwrap();
-        let channels = Arc::new(Channels::new(&self.config));
         let run = Run {
-            task: &Task { config: Arc::new(self.config.clone()), channels, alternatives: vec![None; 2] },
+            task: &self.task(vec![None; 2]),
             stretches: &stretches,
             threads: NonZeroUsize::new(threads),
             carry,
@@ -78,7 +89,7 @@ impl Bed {
         };
         let mut days = Vec::new();
         run.go(|done| -> std::io::Result<()> {
-            days.push(done.day);
+            days.push(done.reviewed.day);
             Ok(())
         })
         .unwrap();

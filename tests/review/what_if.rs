@@ -1,11 +1,8 @@
 //! What-ifs on recorded days.
 
-use std::sync::Arc;
-
 use tautline::{
     desk::{Alternative, State},
-    feed::Channels,
-    review::{Course, Run, Stretch, Task},
+    review::{Course, Run, Stretch},
 };
 
 use crate::bed::Bed;
@@ -15,9 +12,8 @@ fn compared(bed: &Bed, with: &[&str], without: &[&str]) -> Vec<(Course, Option<C
     let texts = |texts: &[&str]| texts.iter().map(|text| (*text).to_owned()).collect::<Vec<_>>();
     let alternatives = Alternative::parse(&texts(with), &texts(without), &bed.config.grid).unwrap();
     let stretches = Stretch::all(&[bed.file("day.jsonl", &bed.lines)], &|file| Box::new(file), |_| {}).unwrap();
-    let channels = Arc::new(Channels::new(&bed.config));
     let run = Run {
-        task: &Task { config: Arc::new(bed.config.clone()), channels, alternatives },
+        task: &bed.task(alternatives),
         stretches: &stretches,
         threads: None,
         carry: false,
@@ -27,7 +23,7 @@ fn compared(bed: &Bed, with: &[&str], without: &[&str]) -> Vec<(Course, Option<C
     };
     let mut courses = Vec::new();
     run.go(|done| -> std::io::Result<()> {
-        courses.extend(done.day.corridors.into_iter().map(|corridor| (corridor.was, corridor.what_if)));
+        courses.extend(done.reviewed.day.corridors.into_iter().map(|corridor| (corridor.was, corridor.what_if)));
         Ok(())
     })
     .unwrap();

@@ -6,9 +6,10 @@ use std::{
 use chrono::{DateTime, TimeDelta, Utc};
 
 use crate::{
-    alarm::{Action, Alarm, AlarmId, Board, Priority, Refusal, Transition},
+    alarm::{Act, Action, Alarm, AlarmId, Board, Deed, Priority, Refusal, Target, Transition},
     config::Config,
     desk::Assessment,
+    feed::Aside,
     journal::{Entry, Status},
 };
 
@@ -92,6 +93,23 @@ pub struct AlarmReport {
     pub unwritten: Arc<HashSet<AlarmKey>>,
     /// The history asked for last, from the journal.
     pub history: Option<Arc<(AlarmKey, Vec<Entry>)>>,
+}
+
+impl Wish {
+    /// What was done, going by the entry that tells of it.
+    pub(super) fn act(&self, entry: &Entry) -> Option<Act> {
+        let target = Target { corridor: entry.corridor.clone()?, alarm: entry.alarm.clone()? };
+        let deed = match self {
+            Self::Acknowledge(_) => Deed::Action(target, Action::Acknowledge),
+            Self::Shelve { reason, .. } => {
+                Deed::Action(target, Action::Shelve { until: entry.until?, reason: reason.clone() })
+            }
+            Self::Act(_, action) => Deed::Action(target, action.clone()),
+            Self::Note(_, text) => Deed::Note(target, text.as_str().into()),
+            Self::History(_) => return None,
+        };
+        Some(Act { time: entry.time, by: entry.by.clone(), deed })
+    }
 }
 
 impl AlarmKey {
@@ -180,6 +198,12 @@ impl Alarms {
     pub fn reconfigure(&mut self, config: &Config, time: DateTime<Utc>) -> Vec<Entry> {
         let transitions = Arc::make_mut(&mut self.board).reconfigure(config, time);
         self.tell(&transitions)
+    }
+
+    /// Takes up what a recording says before a frame.
+    pub fn take_up(&mut self, aside: &Aside) {
+        let transitions = Arc::make_mut(&mut self.board).take_up(aside);
+        self.tell(&transitions);
     }
 
     /// One alarm; `None` once it is defined no longer.

@@ -6,9 +6,10 @@ use chrono::{DateTime, Utc};
 
 use super::{AlarmKey, AlarmOrder, AlarmReport, Alarms, Wish};
 use crate::{
-    alarm::{Board, State},
+    alarm::{Act, Board, Deed, State},
     config::{Config, wording::printable},
     desk::Assessment,
+    feed::Start,
     journal::{Entry, Journal, JournalError, ReadOnly},
 };
 
@@ -49,14 +50,22 @@ impl Duty {
     }
 
     /// Takes in that time has passed without a frame.
-    pub fn elapse(&mut self, now: DateTime<Utc>) {
+    pub fn elapse(&mut self, now: DateTime<Utc>) -> Option<Act> {
         let entries = self.report.alarms.elapse(now);
+        let act = (!entries.is_empty()).then_some(Act { time: now, by: None, deed: Deed::Silence });
         self.write(entries);
+        act
     }
 
-    /// Does what the operator asks for.
-    pub fn obey(&mut self, order: &AlarmOrder) {
+    /// Goes on as a recording says that the alarms stood: its own, so that a replay has the same.
+    pub fn begin_at(&mut self, start: &Start) {
+        Arc::make_mut(&mut self.report.alarms.board).begin(start);
+    }
+
+    /// Does what the operator asks for; what was done.
+    pub fn obey(&mut self, order: &AlarmOrder) -> Vec<Act> {
         let outcome = self.report.alarms.obey(&order.wish, self.by.as_deref());
+        let acts = outcome.iter().flatten().filter_map(|entry| order.wish.act(entry)).collect();
         let read = match &order.wish {
             Wish::History(key) => self.read(key),
             _ => Ok(()),
@@ -67,6 +76,7 @@ impl Duty {
             .and(read.map_err(|e| e.to_string()))
             .err();
         self.report.answered = order.number;
+        acts
     }
 
     fn read(&mut self, key: &AlarmKey) -> Result<(), JournalError> {

@@ -14,6 +14,7 @@ use crate::{
     desk::Desk,
     events::Event,
     feed::{Channels, Feed, Frame, Holder},
+    recording::{Present, Recorder},
     screen::state::Chronicle,
 };
 
@@ -38,6 +39,8 @@ pub struct Live {
     pub duty: Duty,
     /// Keeps what is learned.
     pub keeper: Option<Keeper>,
+    /// Records the frames.
+    pub recorder: Option<Recorder>,
     /// Where what came of it goes.
     pub parcels: watch::Sender<Option<Parcel>>,
     /// What the operator asks for.
@@ -71,19 +74,22 @@ enum Woken {
 }
 
 impl Live {
-    /// Watches until the screen is gone; returns why what was learned could not be kept.
-    pub async fn run(mut self) -> Option<String> {
+    /// Watches until the screen is gone; returns why something could not be kept.
+    pub async fn run(mut self) -> Vec<String> {
         let mut second = interval(LOOK_AGAIN);
         second.set_missed_tick_behavior(MissedTickBehavior::Skip);
         let mut sofar = Sofar::default();
         loop {
             match self.wait(&mut second, sofar.feed.ended).await {
                 Woken::Left => break,
-                Woken::Order(Order::Alarm(order)) => self.duty.obey(&order),
+                Woken::Order(Order::Alarm(order)) => {
+                    let acts = self.duty.obey(&order);
+                    self.recorder.iter_mut().for_each(|recorder| recorder.act(acts.clone()));
+                }
                 Woken::Order(Order::Apply(number)) => self.apply(number, &mut sofar),
                 Woken::Order(_) => {}
                 Woken::Frames(None) => sofar.feed.ended = true,
-                Woken::Frames(Some(frames)) => self.take(&mut sofar, &frames),
+                Woken::Frames(Some(frames)) => self.take(&mut sofar, frames),
                 Woken::Time => {
                     self.let_time_pass(&sofar);
                     self.look(&mut sofar);
@@ -94,7 +100,9 @@ impl Live {
             self.send(&sofar);
         }
         self.duty.end();
-        self.keeper?.save(&self.desk).map(Into::into)
+        let learned = self.keeper.and_then(|mut keeper| keeper.save(&self.desk).map(Into::into));
+        let recorded = self.recorder.and_then(|recorder| recorder.end().trouble);
+        learned.into_iter().chain(recorded).collect()
     }
 
     /// Orders first: a flood of frames must not keep the operator waiting.
@@ -108,12 +116,22 @@ impl Live {
         }
     }
 
-    fn take(&mut self, sofar: &mut Sofar, frames: &[Frame]) {
+    /// A frame as its recording has it, where there is one. What an input says besides frames is not taken up.
+    fn recorded(&mut self, frame: Frame) -> Frame {
+        let frame = Frame { aside: None, ..frame };
+        let Some(recorder) = &mut self.recorder else { return frame };
+        let board = &self.duty.report().alarms.board;
+        recorder.take(&frame, &Present { holder: &self.holder, desk: &self.desk, board })
+    }
+
+    fn take(&mut self, sofar: &mut Sofar, frames: Vec<Frame>) {
         let mut entries = Vec::new();
         for frame in frames {
             sofar.feed.frames += 1;
             sofar.feed.arrived = Some(Instant::now());
-            if let Some(snapshot) = self.holder.take(frame) {
+            let frame = self.recorded(frame);
+            if let Some(snapshot) = self.holder.take(&frame) {
+                snapshot.start().into_iter().for_each(|start| self.duty.begin_at(start));
                 let assessments = self.desk.assess(&snapshot);
                 entries.extend(self.duty.observe(&assessments));
                 sofar.chronicle.take(assessments);
@@ -127,7 +145,10 @@ impl Live {
         let passed = sofar.feed.arrived.map(|arrived| arrived.elapsed()).filter(|passed| *passed >= LOOK_AGAIN);
         let passed = passed.and_then(|passed| TimeDelta::from_std(passed).ok());
         match sofar.chronicle.time().zip(passed).and_then(|(time, passed)| time.checked_add_signed(passed)) {
-            Some(now) => self.duty.elapse(now),
+            Some(now) => {
+                let act = self.duty.elapse(now);
+                self.recorder.iter_mut().for_each(|recorder| recorder.act(act.clone()));
+            }
             None => self.duty.write(Vec::new()),
         }
     }
@@ -162,6 +183,9 @@ impl Live {
             sofar.chronicle.reconfigure(self.desk.clone().assess(&snapshot));
         }
         self.duty.reconfigure(config, &change.lines);
+        if let Some(recorder) = &mut self.recorder {
+            recorder.reconfigure(config, self.revision.text(), &self.channels);
+        }
         sofar.setting = Some(Arc::new(Setting {
             grid: Arc::new(config.grid.clone()),
             zone: config.time_zone,
@@ -171,8 +195,15 @@ impl Live {
         sofar.tell(format!("the configuration has changed: {}", change.lines.join("; ")));
     }
 
-    /// Keeps what was learned, and passes on what there is to say of it once there is a time to say it at.
+    /// Keeps what was learned, and passes on what there is to say of it, and of the recording, once there is a time to say
+    /// it at.
     fn keep(&mut self, sofar: &mut Sofar) {
+        if let Some(recorder) = &mut self.recorder {
+            sofar.feed.recorded = Some(report::recording(recorder));
+            if sofar.chronicle.time().is_some() {
+                recorder.take_news().into_iter().for_each(|text| sofar.tell(text));
+            }
+        }
         let Some(keeper) = &mut self.keeper else { return };
         if sofar.feed.ended && !sofar.kept {
             sofar.kept = true;

@@ -63,6 +63,8 @@ pub struct FeedReport {
     pub inputs: Vec<InputReport>,
     /// The file that keeps what is learned, where there is one.
     pub kept: Option<InputReport>,
+    /// The folder that frames are recorded in, where there is one.
+    pub recorded: Option<InputReport>,
     /// Frames taken so far.
     pub frames: u64,
     /// When the last frame came, by this computer's clock.
@@ -72,10 +74,11 @@ pub struct FeedReport {
 }
 
 impl FeedReport {
-    /// Every input and the file that keeps what is learned, each with what it is.
+    /// Every input, the file that keeps what is learned and the recording, each with what it is.
     pub fn reports(&self) -> impl Iterator<Item = (&'static str, &InputReport)> {
         let inputs = self.inputs.iter().map(|input| ("input", input));
-        inputs.chain(self.kept.iter().map(|kept| ("what is learned, in", kept)))
+        let kept = self.kept.iter().map(|kept| ("what is learned, in", kept));
+        inputs.chain(kept).chain(self.recorded.iter().map(|recorded| ("recording, in", recorded)))
     }
 }
 

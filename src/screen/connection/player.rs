@@ -100,6 +100,7 @@ impl Player {
         here.time = Some(frame.time);
         if let Some(snapshot) = here.holder.take(&frame) {
             let assessments = here.desk.assess(&snapshot);
+            snapshot.aside.iter().for_each(|aside| here.alarms.take_up(aside));
             here.alarms.observe(&assessments);
             here.chronicle.take(assessments);
             if let Some(worst) = here.chronicle.worst() {

@@ -1,9 +1,29 @@
 use super::InputReport;
-use crate::feed::{InputState, InputStatus, Monitor};
+use crate::{
+    feed::{InputState, InputStatus, Monitor},
+    recording::{Recorder, Status},
+};
 
 /// Every input in words.
 pub(super) fn inputs(monitor: &Monitor) -> Vec<InputReport> {
     monitor.inputs().into_iter().map(report).collect()
+}
+
+/// A recording in words.
+pub(super) fn recording(recorder: &Recorder) -> InputReport {
+    let Status { file, recorded, lost, trouble, .. } = recorder.status();
+    let file = file.as_ref().and_then(|file| file.file_name()).map(|name| name.to_string_lossy().into_owned());
+    let standing = match (&trouble, file) {
+        (Some(_), _) => "NOT WRITTEN".into(),
+        (None, Some(file)) => format!("{file}, {recorded} frames"),
+        (None, None) => "nothing recorded yet".into(),
+    };
+    let lost = (lost > 0).then(|| format!("{lost} frames are not in the recording"));
+    InputReport {
+        name: recorder.folder().display().to_string().into(),
+        standing,
+        findings: trouble.into_iter().chain(lost).collect(),
+    }
 }
 
 fn report(input: InputStatus) -> InputReport {

@@ -24,11 +24,13 @@ pub struct Revision {
     /// What the command line has to say on top of a file.
     adjust: Box<dyn Fn(&mut Config) + Send>,
     running: Config,
+    /// Its text.
+    text: String,
     /// Of the file as it was read last.
     read: Option<Stamp>,
     /// Of the file as it was seen last.
     seen: Option<Stamp>,
-    offered: Option<Config>,
+    offered: Option<(Config, String)>,
     change: Option<Arc<Change>>,
     count: u64,
 }
@@ -46,12 +48,13 @@ pub struct Change {
 
 impl Revision {
     /// Begins with the configuration that the file had just now.
-    pub fn new(path: &Path, running: Config, adjust: impl Fn(&mut Config) + Send + 'static) -> Self {
+    pub fn new(path: &Path, running: Config, text: String, adjust: impl Fn(&mut Config) + Send + 'static) -> Self {
         let stamp = stamp(path);
         Self {
             path: path.to_owned(),
             adjust: Box::new(adjust),
             running,
+            text,
             read: stamp,
             seen: stamp,
             offered: None,
@@ -63,6 +66,11 @@ impl Revision {
     /// The configuration in force.
     pub fn running(&self) -> &Config {
         &self.running
+    }
+
+    /// The text of the configuration in force.
+    pub fn text(&self) -> &str {
+        &self.text
     }
 
     /// What the file would change, if it is another than the one in force.
@@ -81,16 +89,16 @@ impl Revision {
         }
         self.read = now;
         self.count += 1;
-        let outcome = Config::load(&self.path).map(|mut config| {
+        let outcome = Config::read(&self.path).map(|(mut config, text)| {
             (self.adjust)(&mut config);
-            config
+            (config, text)
         });
         let change = |is_sound, lines| Some(Arc::new(Change { number: self.count, is_sound, lines }));
         (self.offered, self.change) = match outcome {
-            Ok(config) if config == self.running => (None, None),
-            Ok(config) => {
+            Ok((config, _)) if config == self.running => (None, None),
+            Ok((config, text)) => {
                 let lines = change::lines(&self.running, &config);
-                (Some(config), change(true, lines))
+                (Some((config, text)), change(true, lines))
             }
             Err(errors) => (None, change(false, told(&errors))),
         };
@@ -101,8 +109,9 @@ impl Revision {
     /// else by now.
     pub fn apply(&mut self, number: u64) -> Option<Config> {
         let fits = self.change.as_ref().is_some_and(|change| change.number == number);
-        let config = self.offered.take_if(|_| fits)?;
+        let (config, text) = self.offered.take_if(|_| fits)?;
         self.change = None;
+        self.text = text;
         Some(std::mem::replace(&mut self.running, config))
     }
 }

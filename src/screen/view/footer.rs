@@ -6,6 +6,7 @@ use crate::screen::state::{App, Page, Prompt, Typing};
 
 /// What is being typed, else the keys of this page that fit.
 pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
+    let nothing = String::new();
     let prompt = match &app.typing {
         Some(Typing::Filter) => Some(("show names with, or states", &app.filter, "Enter keeps it, Esc drops it")),
         Some(Typing::Time(text)) => {
@@ -21,6 +22,13 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
             Some(("out of service because", text, "Enter does, Esc does not"))
         }
         Some(Typing::Alarm(Prompt::Note, text)) => Some(("note", text, "Enter keeps it, Esc does not")),
+        Some(Typing::Events) => {
+            Some(("show those with", &app.events.filter, "Enter keeps it, Esc drops it; a kind’s word, names, texts"))
+        }
+        Some(Typing::Mark(mark)) => Some(("note", &mark.note, "Enter sets the mark, Esc does not")),
+        Some(Typing::Export) => {
+            Some(("to a file", &nothing, "j record as JSON · t page as text · s page as SVG · Esc nothing"))
+        }
         None => None,
     };
     if let Some((what, typed, then)) = prompt {
@@ -66,14 +74,33 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
             ("Esc", "back"),
             ("?", "help"),
         ],
+        Page::Events => &[
+            ("Enter", "go there"),
+            ("n", "mark, mend"),
+            ("v", "kinds"),
+            ("/", "find"),
+            ("Del", "take mark away"),
+            ("Esc", "back"),
+            ("?", "help"),
+        ],
+        Page::Compare => &[
+            ("A", "hold now"),
+            ("[ ]", "corridor"),
+            ("↑↓", "scroll"),
+            ("Esc", "back"),
+            ("p", "to a file"),
+            ("?", "help"),
+        ],
         Page::Change => &[("Enter", "apply it"), ("Esc", "back"), ("↑↓", "scroll"), ("q", "quit")],
         Page::Messages | Page::Help => &[("Esc", "back"), ("↑↓", "scroll"), ("q", "quit")],
     };
     let replay: &[(&str, &str)] = match app.playback() {
         Some(playback) if playback.playing => {
-            &[("Space", "pause"), ("+ -", "speed"), ("t", "go to time"), (". ,", "step")]
+            &[("Space", "pause"), ("e", "events"), ("+ -", "speed"), ("t", "go to time"), (". ,", "step")]
         }
-        Some(_) => &[("Space", "play"), (". ,", "step"), ("t", "go to time"), ("+ -", "speed")],
+        Some(_) => {
+            &[("Space", "play"), ("e", "events"), ("w W", "next, previous"), (". ,", "step"), ("t", "go to time")]
+        }
         None => &[],
     };
     let mut spans = Vec::new();

@@ -58,15 +58,15 @@ pub struct Start {
 pub fn run(options: &Options) -> Result<(), Failure> {
     let mut config = Config::load(&options.config)?;
     Sources::choose(options.sources, &mut config);
-    play(&config, Recording::Files(options.files.clone()), &options.start)
+    play(&config, &Recording::Files(options.files.clone()), &options.start)
 }
 
 /// Plays a recording on the screen; where there is none to draw on, prints its summary.
-pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Result<(), Failure> {
+pub(super) fn play(config: &Config, recording: &Recording, start: &Start) -> Result<(), Failure> {
     let channels = Arc::new(Channels::new(config));
     let (desk, holder) = (Desk::detailed(config, &channels), inputs::holder(config, &channels));
     if !stdout().is_terminal() {
-        return summarise(config, &recording, &channels, desk, holder);
+        return summarise(config, recording, &channels, desk, holder);
     }
     let mut player = Player::new(recording.clone(), channels, holder, desk, Board::new(config))?;
     let Some(first) = player.next_time() else {

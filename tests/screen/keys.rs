@@ -146,15 +146,29 @@ fn every_key_of_the_help_page_works() {
                     single => single,
                 };
                 // Somewhere, from among a few starting points, the key changes the screen or gives an order.
-                let works = ["", "j", "/s <enter>", "<enter> ]", "<enter> ] k", "<enter> <tab>", "m", "a", "e", "e n x <enter>", "x", "A", "/"].iter().any(
-                    |start| {
-                        let mut app = app();
-                        press(&mut app, start);
-                        let before = crate::stage::text(&draw(&mut app, 80, 24, true));
-                        let orders = press(&mut app, key);
-                        !orders.is_empty() || app.leaving || before != crate::stage::text(&draw(&mut app, 80, 24, true))
-                    },
-                );
+                let works = [
+                    "",
+                    "j",
+                    "/s <enter>",
+                    "<enter> ]",
+                    "<enter> ] k",
+                    "<enter> <tab>",
+                    "m",
+                    "a",
+                    "e",
+                    "e n x <enter>",
+                    "x",
+                    "A",
+                    "/",
+                ]
+                .iter()
+                .any(|start| {
+                    let mut app = app();
+                    press(&mut app, start);
+                    let before = crate::stage::text(&draw(&mut app, 80, 24, true));
+                    let orders = press(&mut app, key);
+                    !orders.is_empty() || app.leaving || before != crate::stage::text(&draw(&mut app, 80, 24, true))
+                });
                 assert!(works, "{name}: {what}");
                 tried += 1;
             }

@@ -187,7 +187,7 @@ impl Player {
 }
 
 #[cfg(test)]
-mod tests {
+pub(super) mod tests {
     use std::{fmt::Write, fs, path::PathBuf};
 
     use chrono::TimeDelta;
@@ -213,7 +213,7 @@ mod tests {
         })
     }
 
-    fn player(name: &str) -> (Player, PathBuf) {
+    pub fn player(name: &str) -> (Player, PathBuf) {
         let config = Config::parse(
             r#"
             [grid]

@@ -309,3 +309,48 @@ impl Clock {
         recorded.to_std().map_or(Duration::ZERO, |recorded| recorded / speed.max(1))
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use std::{fs, sync::mpsc::sync_channel, thread};
+
+    use chrono_tz::Tz;
+    use futures::executor::block_on;
+
+    use super::*;
+    use crate::screen::connection::{Mark, MarkWish, Surveyor, player::tests::player};
+
+    #[test]
+    fn a_visit_leads_to_the_frame_and_stays_there_and_marks_are_kept() {
+        let (player, path) = player("visit");
+        let survey = Surveyor::new(player.beginning(), TimeDelta::seconds(10), Tz::UTC).start();
+        let (sender, mut parcels) = watch::channel(None);
+        let (orders, taken) = sync_channel(8);
+        let mut replay = Replay::new(player, survey, sender, taken);
+        let running = thread::spawn(move || {
+            replay.begin(None, 3600, true);
+            replay.run();
+        });
+        let start: DateTime<Utc> = "2031-03-14T05:00:00Z".parse().unwrap();
+        let (frame, between) = (start + TimeDelta::seconds(1200), start + TimeDelta::seconds(1201));
+        for time in [frame, between, frame] {
+            orders.send(Order::Visit(time)).unwrap();
+            let there = |parcel: &Option<Parcel>| {
+                let Some(Parcel { origin: Origin::Replay(playback), .. }) = parcel else { return false };
+                !playback.playing && playback.seeking.is_none() && playback.now == Some(frame)
+            };
+            block_on(parcels.wait_for(there)).unwrap();
+        }
+        let mark = Mark { time: frame, corridor: None, note: "here".into() };
+        orders.send(Order::Mark(MarkWish::Set(mark.clone()))).unwrap();
+        let marked = |parcel: &Option<Parcel>| {
+            let Some(Parcel { origin: Origin::Replay(playback), .. }) = parcel else { return false };
+            *playback.marks.marks == [mark.clone()] && playback.survey.ended
+        };
+        block_on(parcels.wait_for(marked)).unwrap();
+        drop(orders);
+        running.join().unwrap();
+        fs::remove_file(path.with_extension("marks.json")).unwrap();
+        fs::remove_file(path).unwrap();
+    }
+}

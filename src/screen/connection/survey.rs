@@ -168,7 +168,7 @@ impl Dips {
         let Some(headroom_mw) = assessment.headroom_mw else { return found };
         let time = assessment.time;
         if let Some(stretch) = self.stretch.take_if(|stretch| time - stretch.last > DIPS_APART) {
-            found.extend(self.unless_of_day(stretch.low));
+            found.push(stretch.low.moment);
         }
         let date = time.with_timezone(&zone).date_naive();
         if let Some((_, low)) = self.day.take_if(|(day, _)| *day != date) {
@@ -204,59 +204,105 @@ impl Dips {
 
     /// Those that are lowest so far.
     fn open(&self) -> impl Iterator<Item = Moment> {
-        let stretch = self.stretch.as_ref().and_then(|stretch| self.unless_of_day(stretch.low.clone()));
+        let stretch = self.stretch.as_ref().map(|stretch| stretch.low.moment.clone());
         stretch.into_iter().chain(self.day.iter().map(|(_, low)| low.moment.clone()))
-    }
-
-    /// The lowest of the day need not be told twice.
-    fn unless_of_day(&self, low: Low) -> Option<Moment> {
-        let is_of_day = self.day.as_ref().is_some_and(|(_, day)| day.moment.time == low.moment.time);
-        (!is_of_day).then_some(low.moment)
     }
 }
 
 #[cfg(test)]
 mod tests {
-    use super::*;
-    use crate::screen::state::sample;
+    use std::fs;
 
-    /// Times and headrooms of the lows of a course, and whether of the day.
+    use futures::executor::block_on;
+
+    use super::*;
+    use crate::{
+        events::EventKind,
+        screen::{connection::player::tests::player, state::sample},
+    };
+
+    #[test]
+    fn it_finds_what_playing_through_would_find() {
+        let (mut player, path) = player("survey");
+        let mut survey = Surveyor::new(player.beginning(), TimeDelta::seconds(10), Tz::UTC).start();
+        let survey = block_on(survey.wait_for(|survey| survey.ended)).unwrap().clone();
+        let first = player.next_time().unwrap();
+        while player.step() {}
+        let here = player.here();
+        assert_eq!(survey.extent, Some((first, here.time.unwrap())));
+        assert!(survey.until == here.time && survey.trouble.is_none());
+        let told: Vec<_> = here.chronicle.events.iter().cloned().map(Moment::from).collect();
+        let is_told = |moment: &&Arc<Moment>| {
+            !matches!(moment.kind, MomentKind::Raised(_) | MomentKind::Low { .. })
+                && !matches!(moment.kind, MomentKind::Event(EventKind::Alarm | EventKind::Step))
+        };
+        assert_eq!(survey.moments.iter().filter(is_told).map(|moment| Moment::clone(moment)).collect::<Vec<_>>(), told);
+        assert!(told.len() > 5, "the frames should tell of switching");
+        let raised = survey.moments.iter().filter(|moment| matches!(moment.kind, MomentKind::Raised(_))).count();
+        assert_eq!(raised as u64, here.alarms.raised.iter().sum::<u64>());
+        assert_eq!(survey.states, [here.chronicle.tracks[0].strip.clone()]);
+        let lowest = survey.moments.iter().find(|moment| matches!(moment.kind, MomentKind::Low { of_day: true, .. }));
+        assert!(lowest.is_some_and(|lowest| lowest.text.starts_with("lowest of the day: ")), "{lowest:?}");
+        fs::remove_file(path).unwrap();
+    }
+
+    #[test]
+    fn it_ends_when_nobody_wants_to_know() {
+        let (player, path) = player("survey-left");
+        let mut surveyor = Surveyor::new(player.beginning(), TimeDelta::seconds(10), Tz::UTC);
+        let (sender, _) = watch::channel(Arc::default());
+        surveyor.go_through(&sender).unwrap();
+        assert_eq!((surveyor.survey.extent, surveyor.survey.until), (None, None));
+        fs::remove_file(path).unwrap();
+    }
+
+    #[test]
+    fn what_cannot_be_read_is_told() {
+        let (player, path) = player("survey-gone");
+        fs::remove_file(path).unwrap();
+        let mut survey = Surveyor::new(player.beginning(), TimeDelta::seconds(10), Tz::UTC).start();
+        let survey = block_on(survey.wait_for(|survey| survey.ended)).unwrap().clone();
+        assert!(survey.trouble.is_some() && survey.moments.is_empty());
+    }
+
+    /// Seconds into the sample day at which the headroom of a course is lowest, and whether of the day.
     fn lows(seconds: i64, course: impl Fn(i64) -> f64) -> Vec<(i64, bool)> {
-        let mut dips = Dips::default();
-        let mut found: Vec<_> = (0..seconds)
-            .step_by(10)
-            .flat_map(|second| dips.take(&sample::at(second, course(second)), Tz::UTC))
-            .collect();
-        found.extend(dips.open());
+        let (mut dips, mut survey) = (Dips::default(), Survey::default());
+        for second in (0..seconds).step_by(10) {
+            dips.take(&sample::at(second, course(second)), Tz::UTC).into_iter().for_each(|low| survey.add(low));
+        }
+        dips.open().for_each(|low| survey.add(low));
         let of_day = |low: &Moment| matches!(low.kind, MomentKind::Low { of_day: true, .. });
-        found.iter().map(|low| ((low.time - sample::time(0)).num_seconds(), of_day(low))).collect()
+        survey.moments.iter().map(|low| ((low.time - sample::time(0)).num_seconds(), of_day(low))).collect()
+    }
+
+    /// A dip of a thousand seconds around a time.
+    fn dip(second: i64, around: i64, lowest_mw: f64) -> Option<f64> {
+        let away_s = (second - around).abs();
+        (away_s < 500).then(|| lowest_mw + away_s as f64 / 100.0)
     }
 
     #[test]
     fn every_dip_has_one_lowest_point_and_every_day_one() {
-        assert_eq!(lows(3600, |second| 300.0 - second as f64 / 100.0), [(3590, true)]);
-        let two_dips = |second: i64| match second {
-            1000..2000 => 50.0 + (second - 1500).abs() as f64 / 100.0,
-            4000..5000 => 20.0 + (second - 4500).abs() as f64 / 100.0,
-            _ => 300.0,
-        };
-        assert_eq!(lows(7200, two_dips), [(1500, false), (4500, true)]);
-        // Five hours later it is another day; the sample begins at five in the morning.
-        let hours = 19 * 3600;
-        assert_eq!(
-            lows(hours + 3600, |second| two_dips(second - hours + 3600)),
-            [(0, true), (hours, true)].map(|(second, of_day)| if second == 0 {
-                (hours - 3600 + 1500, of_day)
-            } else {
-                (second + 900, of_day)
-            })
-        );
+        assert_eq!(lows(3600, |second| 300.0 - second as f64 / 100.0), [(3590, true)], "without a dip");
+        let falling = |second| dip(second, 1500, 50.0).or(dip(second, 4500, 20.0)).unwrap_or(300.0);
+        assert_eq!(lows(7200, falling), [(1500, false), (4500, true)]);
+        let rising = |second| dip(second, 1500, 20.0).or(dip(second, 4500, 50.0)).unwrap_or(300.0);
+        assert_eq!(lows(7200, rising), [(1500, true), (4500, false)]);
+    }
+
+    #[test]
+    fn days_end_at_midnight_and_dips_do_not() {
+        // The sample day begins at five in the morning.
+        let midnight = 19 * 3600;
+        let over_midnight = |second| dip(second, midnight - 100, 50.0).unwrap_or(300.0);
+        assert_eq!(lows(midnight + 3600, over_midnight), [(midnight - 100, true), (midnight, true)]);
     }
 
     #[test]
     fn hovering_at_the_threshold_is_one_dip() {
-        let hovering =
-            |second: i64| 100.0 + 8.0 * (second as f64 * 0.05).sin() - if second == 1800 { 20.0 } else { 0.0 };
+        let deepest = |second| if second == 1800 { 20.0 } else { 0.0 };
+        let hovering = |second: i64| 100.0 + 8.0 * (second as f64 * 0.05).sin() - deepest(second);
         assert_eq!(lows(3600, hovering), [(1800, true)]);
     }
 }

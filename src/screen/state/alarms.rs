@@ -126,6 +126,8 @@ impl App {
 
     /// An order found no way out: nothing of it was done.
     pub fn refused(&mut self) {
+        self.events.asked = None;
+        self.jumps.landed = None;
         self.alarms.pending.retain(|(number, _)| *number != self.alarms.ordered);
         self.notice = Some("That was not done: too much is waiting. Press it again.".into());
     }

@@ -23,7 +23,7 @@ pub struct EventPage {
     /// The mark taken away last, which can be brought back.
     removed: Option<Mark>,
     /// What was asked for with marks, in words, until it is answered.
-    asked: Option<String>,
+    pub(super) asked: Option<String>,
     /// Answers seen.
     answered: u64,
 }
@@ -156,7 +156,7 @@ impl App {
         let rows = self.event_rows();
         let under = rows.get(self.event_cursor(&rows)).cloned();
         let order = match code {
-            KeyCode::Enter => under.and_then(|moment| self.go_to_listed(&moment)),
+            KeyCode::Enter => under.map(|moment| self.go_to_listed(&moment)),
             KeyCode::Char('v') => self.list(self.events.kinds.turned(1)),
             KeyCode::Char('V') => self.list(self.events.kinds.turned(Kinds::ORDER.len() - 1)),
             KeyCode::Char('/') => self.ask(Typing::Events),
@@ -182,7 +182,7 @@ impl App {
     }
 
     /// Goes to a moment and shows the corridor that it is about.
-    pub(super) fn go_to_listed(&mut self, moment: &Arc<Moment>) -> Option<Order> {
+    pub(super) fn go_to_listed(&mut self, moment: &Moment) -> Order {
         self.events.chosen = None;
         if self.select(moment.corridor.as_ref()) {
             self.filter.clear();

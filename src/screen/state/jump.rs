@@ -11,7 +11,7 @@ use crate::{events::EventKind, screen::connection::Order};
 #[derive(Debug, Default)]
 pub struct Jumps {
     /// What was jumped to last, as long as nothing else has moved us since.
-    landed: Option<DateTime<Utc>>,
+    pub(super) landed: Option<DateTime<Utc>>,
     /// Where the last jump set out.
     set_out: Option<DateTime<Utc>>,
 }
@@ -27,9 +27,10 @@ pub(super) enum Sought {
 
 impl Sought {
     fn fits(self, kind: MomentKind) -> bool {
-        use EventKind::{Act, Alarm, Program, Step};
+        use EventKind::{Act, Alarm, Meter, Program, Step};
         match kind {
-            MomentKind::Event(Act | Alarm | Program | Step) => false,
+            // These come by the hundred, or follow from others.
+            MomentKind::Event(Act | Alarm | Meter | Program | Step) => false,
             MomentKind::Event(_) => self == Self::Event,
             MomentKind::Raised(_) => self == Self::Raised,
             MomentKind::Low { .. } => self == Self::Low,
@@ -105,7 +106,7 @@ impl App {
         let together =
             moments.iter().filter(|moment| sought.fits(moment.kind) && moment.time == found.time).count() - 1;
         let more = if together > 0 { format!(" (and {together} more)") } else { String::new() };
-        self.visit_moment(found, &more)
+        Some(self.visit_moment(found, &more))
     }
 
     fn jump_to_lowest(&mut self) -> Option<Order> {
@@ -120,7 +121,7 @@ impl App {
             return None;
         };
         let more = self.so_far();
-        self.visit_moment(lowest, &more)
+        Some(self.visit_moment(lowest, &more))
     }
 
     fn jump_back(&mut self) -> Option<Order> {
@@ -128,24 +129,26 @@ impl App {
             self.said = Some("There was no jump to come back from.".into());
             return None;
         };
-        (self.jumps.set_out, self.jumps.landed) = (self.present(), Some(back));
+        (self.jumps.set_out, self.jumps.landed) = (self.here(), Some(back));
         self.said = Some("Back to where the last jump set out.".into());
         Some(Order::Visit(back))
     }
 
     /// Goes to a moment, and says what it is.
-    pub(super) fn visit_moment(&mut self, moment: &Moment, more: &str) -> Option<Order> {
+    pub(super) fn visit_moment(&mut self, moment: &Moment, more: &str) -> Order {
         if self.page != Page::Corridor {
             self.select(moment.corridor.as_ref());
         }
         self.events.chosen = None;
-        self.jumps.set_out = self.present();
+        if self.here() != Some(moment.time) {
+            self.jumps.set_out = self.here();
+        }
         self.jumps.landed = Some(moment.time);
         let time = moment.time.with_timezone(&self.zone).format("%H:%M:%S");
         let corridor = moment.corridor.as_ref().map_or(String::new(), |name| format!(" {name}"));
         let text = if moment.text.is_empty() { String::new() } else { format!(": {}", moment.text) };
         self.said = Some(format!("{time}{corridor}, {}{text}{more}", moment.kind.word()));
-        Some(Order::Visit(moment.time))
+        Order::Visit(moment.time)
     }
 
     fn reach(&self) -> String {

@@ -52,7 +52,7 @@ pub const KEYS: [(&str, &[(&str, &str)]); 5] = [
             ("e", "events and marks of the whole recording"),
             (
                 "w W",
-                "next, previous event: on a corridor’s page of this corridor, elsewhere of all, as with the next four",
+                "next, previous switching, state, direction or gap: on a corridor’s page its own, elsewhere all; so below",
             ),
             ("r R", "next, previous alarm raised"),
             ("d D", "next, previous lowest headroom: of a dip below the thin threshold, or of a day"),
@@ -339,7 +339,7 @@ impl App {
             Page::Overview => {}
             Page::Corridor => self.page = Page::Overview,
             Page::Alarms | Page::Events | Page::Compare | Page::Change | Page::Messages | Page::Help => {
-                self.page = self.under
+                self.page = self.under;
             }
         }
     }

@@ -73,8 +73,8 @@ impl App {
             Target::Moment(moment) if self.page == Page::Events && self.events.chosen.as_ref() != Some(&moment) => {
                 self.events.chosen = Some(moment);
             }
-            Target::Moment(moment) if self.page == Page::Events => return self.go_to_listed(&moment),
-            Target::Moment(moment) => return self.visit_moment(&moment, ""),
+            Target::Moment(moment) if self.page == Page::Events => return Some(self.go_to_listed(&moment)),
+            Target::Moment(moment) => return Some(self.visit_moment(&moment, "")),
             Target::Time(from, until) => {
                 let share = f64::from(position.x - area.x) / f64::from(area.width.max(1));
                 let whole_ms = (until - from).num_milliseconds() as f64;

@@ -91,6 +91,19 @@ impl From<Event> for Moment {
 impl Survey {
     /// Adds a moment in its place, unless there are too many of its kind.
     pub fn add(&mut self, moment: Moment) {
+        if let MomentKind::Low { of_day, .. } = moment.kind {
+            let is_low = |other: &Moment| matches!(other.kind, MomentKind::Low { .. });
+            let from_then = self.moments.iter_mut().rev().take_while(|other| other.time >= moment.time);
+            let mut same = from_then
+                .filter(|other| other.time == moment.time && other.corridor == moment.corridor && is_low(other));
+            // The lowest of a day may be that of a dip, too.
+            if let Some(same) = same.next() {
+                if of_day {
+                    *same = Arc::new(moment);
+                }
+                return;
+            }
+        }
         let count = self.counts.entry(moment.kind.word()).or_default();
         if *count == KEPT_OF_A_KIND {
             self.left_out += 1;

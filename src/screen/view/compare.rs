@@ -83,7 +83,7 @@ fn corridors(app: &App, held: &Held, now: &Held, theme: Theme, area: Rect) -> Ve
     let line = |&(index, was, is): &(usize, &Assessment, &Assessment)| {
         let chosen = index == app.selected;
         let [before, after] = [was, is].map(|a| text::left(&theme.word(a.state), 5));
-        let change = change_mw(was, is).map_or(String::new(), |change| {
+        let change = change_mw(was, is).filter(|change| *change != 0.0).map_or(String::new(), |change| {
             let sign = if change > 0.0 { "+" } else { "" };
             format!("{sign}{} MW", figures::mw(Some(change)))
         });

@@ -7,7 +7,7 @@ use super::{
     row::{headroom, set_by},
 };
 use crate::{
-    alarm::{Board, State as Standing},
+    alarm::{Board, CorridorBoard, State as Standing},
     desk::{Assessment, Criterion, OutageRecord, SourceRecord, SwitchKind},
     screen::state::Held,
 };
@@ -34,9 +34,9 @@ impl Difference {
     }
 
     /// Numbers with what is said besides each; the change is that of the numbers as they are shown.
-    fn numbers(what: impl Into<String>, values: [(Option<f64>, String); 2], decimals: usize) -> Self {
+    fn numbers(what: impl Into<String>, values: &[(Option<f64>, String); 2], decimals: usize) -> Self {
         let scale = 10f64.powi(i32::try_from(decimals).unwrap_or(0));
-        let shown = [0, 1].map(|side| values[side].0.map(|value: f64| (value * scale).round() / scale));
+        let shown = [0, 1].map(|side| values[side].0.map(|value: f64| (value * scale).round_ties_even() / scale));
         let change = match shown {
             [Some(one), Some(other)] if one.to_bits() != other.to_bits() => {
                 let sign = if other > one { "+" } else { "" };
@@ -49,7 +49,7 @@ impl Difference {
     }
 
     fn plain(what: impl Into<String>, values: [Option<f64>; 2], decimals: usize) -> Self {
-        Self::numbers(what, values.map(|value| (value, String::new())), decimals)
+        Self::numbers(what, &values.map(|value| (value, String::new())), decimals)
     }
 }
 
@@ -117,7 +117,7 @@ fn switches(pair: [&Assessment; 2]) -> impl Iterator<Item = Difference> {
 fn alarms(boards: [&Board; 2], corridor: &str) -> Vec<Difference> {
     let [was, is] = boards.map(|board| {
         let boards = board.corridors.iter().filter(|board| **board.corridor() == *corridor);
-        let alarms = boards.flat_map(|board| board.alarms());
+        let alarms = boards.flat_map(CorridorBoard::alarms);
         alarms.map(|alarm| (alarm.definition.name.clone(), alarm.standing.state)).collect::<Vec<_>>()
     });
     let names = union(was.iter().map(|(name, _)| name), is.iter().map(|(name, _)| name));
@@ -143,7 +143,7 @@ fn outages(pair: [&Assessment; 2]) -> impl Iterator<Item = Difference> {
         });
         let margin = outages.map(|outage| outage.and_then(|outage| outage.angle_margin_deg));
         let critical = outages.map(|outage| outage.and_then(|outage| outage.critical_ms));
-        let limit = Difference::numbers(format!("{name} out: limit, MW"), limit, 0);
+        let limit = Difference::numbers(format!("{name} out: limit, MW"), &limit, 0);
         let margin = Difference::plain(format!("{name} out: margin, °"), margin, 1);
         let clearing = Difference::plain(format!("{name} out: clearing, ms"), critical, 0);
         let has_clearing = critical != [None, None];
@@ -172,7 +172,7 @@ fn sources(pair: [&Assessment; 2]) -> impl Iterator<Item = Difference> {
         let spread = |source: &SourceRecord| format!(" ±{}", figures::number(Some(source.x_sd), 2));
         [
             Difference::plain(format!("{bus}: E, kV"), sources.map(|source| source.e_kv), 1),
-            Difference::numbers(format!("{bus}: X, Ω"), sources.map(|source| (Some(source.x_ohm), spread(source))), 2),
+            Difference::numbers(format!("{bus}: X, Ω"), &sources.map(|source| (Some(source.x_ohm), spread(source))), 2),
         ]
     })
 }

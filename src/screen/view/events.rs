@@ -111,7 +111,9 @@ fn about_lines(app: &App, moment: &Moment, theme: Theme, width: usize) -> Vec<Li
     lines.extend(paragraph(&words, width).into_iter().take(2));
     if let Some(playback) = app.playback() {
         let marks = &playback.marks;
-        let words = format!(" {} marks, {}", marks.marks.len(), marks.place);
+        let kept = marks.trouble.as_ref().unwrap_or(&marks.place);
+        let count = marks.marks.len();
+        let words = format!(" {count} mark{}, {kept}", if count == 1 { "" } else { "s" });
         lines.resize(usize::from(ABOUT) - 1, Line::default());
         lines.push(Line::styled(text::cut(&words, width), theme.quiet()));
     }

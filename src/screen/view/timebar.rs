@@ -131,9 +131,9 @@ impl Bar {
             }
             let is_near = moment.corridor.is_none() || moment.corridor.as_ref() == here;
             let Some(cell) = cells.get_mut(self.cell(moment.time)) else { continue };
-            let heavier = |sign: &Sign| (is_near, weight(&moment)) > (sign.is_near, weight(&sign.moment));
-            if cell.as_ref().is_none_or(heavier) {
-                *cell = Some(Sign { moment, is_near });
+            let sign = Sign { moment, is_near };
+            if cell.as_ref().is_none_or(|other| sign.weight() > other.weight()) {
+                *cell = Some(sign);
             }
         }
         cells
@@ -168,6 +168,11 @@ impl Bar {
 }
 
 impl Sign {
+    /// What is near is worth more, but a trip elsewhere is worth more than a meter here.
+    fn weight(&self) -> u8 {
+        weight(&self.moment) + if self.is_near { 5 } else { 0 }
+    }
+
     fn span(&self, theme: Theme) -> Span<'static> {
         let (sign, style) = theme.sign(self.moment.kind);
         Span::styled(sign, if self.is_near { style.patch(theme.strong()) } else { theme.quiet() })

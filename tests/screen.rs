@@ -10,6 +10,8 @@ mod stage;
 mod alarms;
 #[path = "screen/drawings.rs"]
 mod drawings;
+#[path = "screen/instrument.rs"]
+mod instrument;
 #[path = "screen/keys.rs"]
 mod keys;
 #[cfg(unix)]

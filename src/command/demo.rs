@@ -14,5 +14,5 @@ const SPEED: u32 = 120;
 pub fn run() -> Result<(), Failure> {
     let config = Config::parse(CONFIG, "config/demo.toml")?;
     let start = replay::Start { speed: SPEED, at: None, paused: false };
-    replay::play(&config, Recording::Within { name: "the demo day", bytes: DAY }, &start)
+    replay::play(&config, &Recording::Within { name: "the demo day", bytes: DAY }, &start)
 }

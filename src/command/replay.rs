@@ -19,7 +19,7 @@ use crate::{
     report::summary::Summary,
     screen::{
         Ending,
-        connection::{Player, Recording, Replay},
+        connection::{Player, Recording, Replay, Surveyor},
         state::parse_time,
     },
 };
@@ -58,17 +58,17 @@ pub struct Start {
 pub fn run(options: &Options) -> Result<(), Failure> {
     let mut config = Config::load(&options.config)?;
     Sources::choose(options.sources, &mut config);
-    play(&config, Recording::Files(options.files.clone()), &options.start)
+    play(&config, &Recording::Files(options.files.clone()), &options.start)
 }
 
 /// Plays a recording on the screen; where there is none to draw on, prints its summary.
-pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Result<(), Failure> {
+pub(super) fn play(config: &Config, recording: &Recording, start: &Start) -> Result<(), Failure> {
     let channels = Arc::new(Channels::new(config));
     let (desk, holder) = (Desk::detailed(config, &channels), inputs::holder(config, &channels));
     if !stdout().is_terminal() {
-        return summarise(config, &recording, &channels, desk, holder);
+        return summarise(config, recording, &channels, desk, holder);
     }
-    let mut player = Player::new(recording.clone(), channels.clone(), holder, desk, Board::new(config))?;
+    let mut player = Player::new(recording.clone(), channels, holder, desk, Board::new(config))?;
     let Some(first) = player.next_time() else {
         let findings = player.monitor().inputs().into_iter().flat_map(|input| input.tally.findings());
         let findings: Vec<_> = findings.collect();
@@ -80,7 +80,8 @@ pub(super) fn play(config: &Config, recording: Recording, start: &Start) -> Resu
 
     let (sender, parcels) = watch::channel(None);
     let (orders, taken) = sync_channel(stage::ORDERS_WAITING);
-    let mut replay = Replay::new(player, recording, &channels, sender, taken);
+    let survey = Surveyor::new(player.beginning(), inputs::max_age(config), config.time_zone).start();
+    let mut replay = Replay::new(player, survey, sender, taken);
     let (speed, playing) = (start.speed, !start.paused);
     let connection = thread::spawn(move || {
         replay.begin(at, speed, playing);

@@ -98,6 +98,11 @@ impl CorridorDesk {
         Self { detailed: true, ..self }
     }
 
+    /// Brings nothing but the record.
+    pub(super) fn plain(self) -> Self {
+        Self { detailed: false, ..self }
+    }
+
     /// This corridor at a snapshot.
     pub fn assess(&mut self, snapshot: &Snapshot) -> Assessment {
         let fit = self.fit(snapshot);

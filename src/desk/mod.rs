@@ -39,6 +39,12 @@ impl Desk {
         Self { corridors: Self::new(config, channels).corridors.into_iter().map(CorridorDesk::detailed).collect() }
     }
 
+    /// The same as it stands, bringing only what is part of the record.
+    #[must_use]
+    pub fn plain(self) -> Self {
+        Self { corridors: self.corridors.into_iter().map(CorridorDesk::plain).collect() }
+    }
+
     /// Goes on under another configuration, with channels that came from its own by [`Channels::extended`]. A corridor
     /// that is the same in it goes on as if nothing had happened; of another, what was learned stays where its configured
     /// sources are the same.

@@ -137,7 +137,7 @@ pub fn gap(before: DateTime<Utc>, time: DateTime<Utc>, max_age: TimeDelta) -> Op
 }
 
 /// Why a corridor is in its state, after a colon; empty where nobody can tell.
-pub(super) fn reason(assessment: &Assessment) -> String {
+pub(crate) fn reason(assessment: &Assessment) -> String {
     match (&assessment.binding, assessment.headroom_mw) {
         (Some(binding), Some(headroom)) => {
             let outage = binding.outage.as_deref().map_or("nothing lost".into(), |outage| format!("{outage} out"));

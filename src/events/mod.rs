@@ -4,5 +4,6 @@ mod event;
 mod flutter;
 mod teller;
 
+pub(crate) use event::reason;
 pub use event::{Event, EventKind, gap};
 pub use teller::Teller;

@@ -14,6 +14,7 @@ use tokio::{
 
 use super::{
     connection::{Order, Parcel},
+    export,
     pace::{Pace, Why},
     state::App,
     terminal::{self, Screen},
@@ -75,13 +76,18 @@ pub async fn run(
                 app.clock = std::time::Instant::now();
                 app.size = screen.terminal.size()?;
                 let mut drawn = None;
-                screen.terminal.draw(|frame| drawn = Some(view::draw(frame, &app, theme)))?;
+                let page = screen.terminal.draw(|frame| drawn = Some(view::draw(frame, &app, theme)))?;
                 app.drawn = drawn.unwrap_or_default();
+                let exported = app.export.take().map(|what| export::export(&app, page.buffer, what));
                 if app.rings() {
                     stdout().write_all(b"\x07")?;
                     stdout().flush()?;
                 }
                 pace.done(std::time::Instant::now());
+                if let Some(outcome) = exported {
+                    app.exported(outcome);
+                    pace.want(Why::Key);
+                }
                 continue;
             }
             changed = parcels.changed() => {

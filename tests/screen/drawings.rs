@@ -17,7 +17,7 @@ pub fn snapshot(name: &str, app: App) {
     snapshot_at(name, app, &SIZES);
 }
 
-fn snapshot_at(name: &str, mut app: App, sizes: &[(u16, u16)]) {
+pub fn snapshot_at(name: &str, mut app: App, sizes: &[(u16, u16)]) {
     for &(width, height) in sizes {
         let drawing = text(&draw(&mut app, width, height, true));
         let mut settings = insta::Settings::clone_current();

@@ -7,11 +7,14 @@ use chrono_tz::Tz;
 use crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
 use ratatui::{Terminal, backend::TestBackend, buffer::Buffer};
 use tautline::{
-    alarm::{Board, CorridorBoard, Definition, Kind, built_in},
-    desk::Assessment,
+    alarm::{Board, CorridorBoard, Definition, Kind, Priority, built_in},
+    desk::{Assessment, State},
+    events::EventKind,
     screen::{
-        connection::{AlarmReport, Alarms, FeedReport, InputReport, Order, Origin, Parcel, Playback, Scene},
-        state::{App, Chronicle, Strip},
+        connection::{
+            AlarmReport, Alarms, FeedReport, InputReport, Mark, MarkReport, Order, Origin, Parcel, Playback, Scene,
+        },
+        state::{App, Chronicle, Moment, MomentKind, Strip, Survey},
         view::{self, Theme},
     },
 };
@@ -34,22 +37,62 @@ pub fn live(assessments: Vec<Assessment>) -> App {
 pub fn replay(assessments: Vec<Assessment>) -> App {
     let mut app = live(assessments);
     let parcel = app.parcel.as_mut().unwrap();
-    let mut seen = Strip::default();
-    for minute in 0..=HISTORY_S / 60 {
-        let state = parcel.chronicle.worst().unwrap();
-        seen.take(sample::time(60 * minute), if minute % 40 < 30 { tautline::desk::State::Ample } else { state });
-    }
     parcel.origin = Origin::Replay(Playback {
         playing: true,
         speed: 60,
         now: parcel.chronicle.time(),
-        extent: Some((sample::time(0), sample::time(86_400))),
         taken: 3600,
         seeking: None,
         at_end: false,
-        seen: Arc::new(seen),
+        survey: Arc::new(survey(&parcel.chronicle)),
+        marks: MarkReport {
+            marks: Arc::new(vec![mark(5400, "before the works at Velm"), mark(40_000, "")]),
+            place: "in days/day.marks.json".into(),
+            ..MarkReport::default()
+        },
     });
     app
+}
+
+pub fn mark(second: i64, note: &str) -> Mark {
+    Mark { time: sample::time(second), corridor: Some("Skarn-Velm".into()), note: note.into() }
+}
+
+/// A day of which three quarters are gone through: abnormal for ten minutes of every forty, with a moment of each kind.
+fn survey(chronicle: &Chronicle) -> Survey {
+    let (mut worst, mut states) = (Strip::default(), Vec::new());
+    states.resize_with(chronicle.tracks.len(), Strip::default);
+    for minute in 0..=18 * 60 {
+        let time = sample::time(60 * minute);
+        for (strip, track) in states.iter_mut().zip(&chronicle.tracks) {
+            let state = if minute % 40 < 30 { State::Ample } else { track.latest.state };
+            strip.take(time, state);
+            worst.take(time, state);
+        }
+    }
+    let mut survey = Survey::default();
+    survey.extent = Some((sample::time(0), sample::time(86_400)));
+    survey.until = Some(sample::time(64_800));
+    (survey.worst, survey.states) = (worst, states);
+    let (low, of_day) = (|headroom_mw, of_day| MomentKind::Low { headroom_mw, of_day }, true);
+    for (second, corridor, kind, text) in [
+        (1800, Some("Skarn-Velm"), MomentKind::Event(EventKind::Trip), "SV3 opened"),
+        (1800, Some("Skarn-Velm"), MomentKind::Raised(Priority::High), "headroom thin (high): alarm, 80.0"),
+        (2700, Some("Skarn-Velm"), MomentKind::Event(EventKind::Return), "SV3 closed"),
+        (3000, Some("Skarn-Velm"), MomentKind::Event(EventKind::Alarm), "headroom thin (high): return to normal"),
+        (12_000, Some("Orrin-Tesk"), low(-40.0, of_day), "lowest of the day: −40 ±36 MW (SV2 out, angle)"),
+        (14_000, Some("Skarn-Velm"), low(20.0, of_day), "lowest of the day: +20 ±36 MW (SV2 out, angle)"),
+        (20_000, Some("Skarn-Velm"), low(60.0, !of_day), "lowest of this dip: +60 ±36 MW (SV2 out, angle)"),
+        (30_000, None, MomentKind::Event(EventKind::Gap), "no frame for 3 min"),
+        (33_000, Some("Orrin-Tesk"), MomentKind::Event(EventKind::Bypass), "SV2-SC bypassed"),
+        (36_000, Some("Orrin-Tesk"), MomentKind::Event(EventKind::Insertion), "SV2-SC inserted"),
+        (50_000, Some("Hald-Brenn"), MomentKind::Event(EventKind::Meter), "Velm.kv is missing"),
+        (60_000, Some("Skarn-Velm"), MomentKind::Event(EventKind::Step), "step: Velm moved by −12.4 kV (99 %)"),
+    ] {
+        let (time, corridor, text) = (sample::time(second), corridor.map(Into::into), text.into());
+        survey.add(Moment { time, corridor, kind, state: None, text });
+    }
+    survey
 }
 
 const HISTORY_S: i64 = 7200;
@@ -145,6 +188,7 @@ pub fn press(app: &mut App, keys: &str) -> Vec<Order> {
             "<end>" => KeyCode::End,
             "<page-up>" => KeyCode::PageUp,
             "<page-down>" => KeyCode::PageDown,
+            "<delete>" => KeyCode::Delete,
             "<backspace>" => KeyCode::Backspace,
             word => {
                 for char in word.chars() {

@@ -85,6 +85,41 @@ fn it_can_be_suspended_and_brought_back() {
 }
 
 #[test]
+fn marks_and_exports_are_where_the_screen_says() {
+    let (config, frames) = files();
+    let folder = tempfile::tempdir().unwrap();
+    let day = folder.path().join("day.jsonl");
+    fs::copy(frames, &day).unwrap();
+    let mut command = tautline();
+    command.arg("replay").arg("--paused").arg("--config").arg(&config).arg(&day).current_dir(folder.path());
+    let mut stage = Stage::new(command);
+    stage.wait_for("headroom");
+    stage.press("nodd\r");
+    stage.wait_for_redrawn("day.marks.json");
+    for key in ["pj", "pj", "pt", "ps"] {
+        stage.press(key);
+        stage.wait_for_redrawn("Written:");
+    }
+    stage.keyboard.write_all(b"q").unwrap();
+    assert!(stage.wait_for_end().success());
+
+    let records = tautline().arg("assess").arg("--config").arg(&config).arg(&day).output().unwrap().stdout;
+    let mut names: Vec<_> = fs::read_dir(folder.path()).unwrap().map(|entry| entry.unwrap().file_name()).collect();
+    names.sort_unstable();
+    let names: Vec<_> = names.iter().map(|name| name.to_str().unwrap()).collect();
+    let [record, again, ..] = names[..] else { panic!("{names:?}") };
+    assert!(record.ends_with("Z-2.json") && again.ends_with("Z.json"), "{names:?}");
+    assert_eq!(fs::read(folder.path().join(record)).unwrap(), records);
+    assert!(names.contains(&"day.marks.json"), "{names:?}");
+    let of = |ending: &str| {
+        let name = names.iter().find(|name| name.ends_with(ending)).unwrap_or_else(|| panic!("{names:?}"));
+        fs::read_to_string(folder.path().join(name)).unwrap()
+    };
+    assert!(of(".marks.json").contains("\"note\": \"odd\""));
+    assert!(of(".txt").starts_with("tautline") && of(".svg").starts_with("<svg "));
+}
+
+#[test]
 fn a_panic_gives_the_terminal_back_before_it_speaks() {
     let mut command = Command::new(std::env::current_exe().unwrap());
     command.args(["--ignored", "--exact", "terminal::panics_on_purpose", "--nocapture"]).env("RUST_BACKTRACE", "0");

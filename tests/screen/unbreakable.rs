@@ -44,7 +44,7 @@ proptest! {
         keys in prop::collection::vec(
             prop::sample::select(vec![
                 "j", "k", "<enter>", "<esc>", "<tab>", "<back-tab>", "s", "/a", "<backspace>", "?", "m", "]", "[", "b", "t",
-                "14:03", "<space>", "+", "<page-down>", "<page-up>", "<end>", "<home>", "<left>", "g", "G", "}", ",", "a", "v", "y", "Y", "z", "o", "n", "u", "30m x",
+                "14:03", "<space>", "+", "<page-down>", "<page-up>", "<end>", "<home>", "<left>", "g", "G", "}", ",", "a", "v", "y", "Y", "z", "o", "n", "u", "30m x", "e", "w", "W", "r", "d", "x", "X", "'", "\"", "A", "B", "p", "<delete>", "v",
             ]),
             0..12,
         ),
@@ -63,7 +63,7 @@ proptest! {
 fn the_smallest_sizes() {
     for width in 0..60 {
         for height in 0..24 {
-            for keys in ["", "j <enter>", "j <enter> <tab>", "?", "m", "a", "a <tab>"] {
+            for keys in ["", "j <enter>", "j <enter> <tab>", "?", "m", "a", "a <tab>", "e", "e /x", "A B"] {
                 let mut app = replay(vec![sample::ample(), sample::thin(), sample::blind()]);
                 press(&mut app, keys);
                 draw(&mut app, width, height, false);

@@ -3,11 +3,11 @@ use std::{sync::Arc, time::Instant};
 use chrono::{DateTime, TimeDelta, Utc};
 use chrono_tz::Tz;
 
-use super::{AlarmOrder, AlarmReport, Change};
+use super::{AlarmOrder, AlarmReport, Change, MarkReport, MarkWish};
 use crate::{
     config::ScreenSettings,
     grid::Grid,
-    screen::state::{Chronicle, Strip},
+    screen::state::{Chronicle, Survey},
 };
 
 /// Everything a screen shows, as it stands.
@@ -102,16 +102,16 @@ pub struct Playback {
     pub speed: u32,
     /// Where in the recording we are: the time of the last frame, or a little after it while playing.
     pub now: Option<DateTime<Utc>>,
-    /// First and last time of the recording, once they are known.
-    pub extent: Option<(DateTime<Utc>, DateTime<Utc>)>,
     /// Frames taken to get here.
     pub taken: usize,
     /// On the way to another place.
     pub seeking: Option<Seeking>,
     /// The last frame is taken.
     pub at_end: bool,
-    /// States of all corridors together, wherever this session has been.
-    pub seen: Arc<Strip>,
+    /// The whole of it.
+    pub survey: Arc<Survey>,
+    /// The marks in it.
+    pub marks: MarkReport,
 }
 
 /// On the way to another place of the recording.
@@ -140,12 +140,16 @@ pub enum Order {
     Jump(TimeDelta),
     /// To the last frame at or before this time.
     Seek(DateTime<Utc>),
+    /// The same, and stay there.
+    Visit(DateTime<Utc>),
     /// Stop seeking where we are.
     Cancel,
     /// Apply the change of this number, live.
     Apply(u64),
     /// Something with alarms, also live.
     Alarm(AlarmOrder),
+    /// Something with marks.
+    Mark(MarkWish),
 }
 
 /// The speeds that keys step through.

@@ -7,7 +7,7 @@ use crate::{
     alarm::{Board, Refusal},
     desk::Desk,
     feed::{Channels, Holder, Monitor, Recorded},
-    screen::state::{Chronicle, Strip},
+    screen::state::Chronicle,
 };
 
 /// Frames between two kept places, at first.
@@ -26,6 +26,21 @@ pub struct Place {
     pub alarms: Alarms,
     holder: Holder,
     desk: Desk,
+}
+
+/// All that a recording is played from.
+#[derive(Debug, Clone)]
+pub struct Beginning {
+    /// The recording.
+    pub recording: Recording,
+    /// What its frames hold.
+    pub channels: Arc<Channels>,
+    /// What assesses them.
+    pub desk: Desk,
+    /// What holds values between them.
+    pub holder: Holder,
+    /// The alarms.
+    pub board: Board,
 }
 
 /// Where to go.
@@ -49,8 +64,6 @@ pub struct Player {
     kept: Vec<Place>,
     kept_max: usize,
     spacing: usize,
-    /// The worst state of all corridors, wherever this player has been.
-    seen: Arc<Strip>,
 }
 
 impl Player {
@@ -69,7 +82,14 @@ impl Player {
         let here =
             Place { taken: 0, time: None, chronicle: Chronicle::default(), alarms: Alarms::new(board), holder, desk };
         let kept = vec![here.clone()];
-        Ok(Self { channels, recording, frames, monitor, here, kept, kept_max, spacing: SPACING, seen: Arc::default() })
+        Ok(Self { channels, recording, frames, monitor, here, kept, kept_max, spacing: SPACING })
+    }
+
+    /// Everything as it was before the first frame.
+    pub fn beginning(&self) -> Beginning {
+        let Place { desk, holder, alarms, .. } = self.kept[0].clone();
+        let board = Board::clone(&alarms.board);
+        Beginning { recording: self.recording.clone(), channels: self.channels.clone(), desk, holder, board }
     }
 
     /// Where we are.
@@ -80,11 +100,6 @@ impl Player {
     /// How the reading goes.
     pub fn monitor(&self) -> &Monitor {
         &self.monitor
-    }
-
-    /// The worst states seen, at any time of the recording.
-    pub fn seen(&self) -> &Arc<Strip> {
-        &self.seen
     }
 
     /// Time of the next frame; `None` at the end.
@@ -103,9 +118,6 @@ impl Player {
             snapshot.aside.iter().for_each(|aside| here.alarms.take_up(aside));
             here.alarms.observe(&assessments);
             here.chronicle.take(assessments);
-            if let Some(worst) = here.chronicle.worst() {
-                Arc::make_mut(&mut self.seen).take(frame.time, worst);
-            }
         }
         self.keep();
         true
@@ -176,7 +188,7 @@ impl Player {
 }
 
 #[cfg(test)]
-mod tests {
+pub(super) mod tests {
     use std::{fmt::Write, fs, path::PathBuf};
 
     use chrono::TimeDelta;
@@ -202,7 +214,7 @@ mod tests {
         })
     }
 
-    fn player(name: &str) -> (Player, PathBuf) {
+    pub fn player(name: &str) -> (Player, PathBuf) {
         let config = Config::parse(
             r#"
             [grid]

@@ -1,10 +1,4 @@
-use std::{
-    fmt::Write,
-    io,
-    path::PathBuf,
-    sync::{Arc, OnceLock},
-    thread,
-};
+use std::{fmt::Write, io, path::PathBuf, sync::Arc};
 
 use chrono::{DateTime, Utc};
 
@@ -22,15 +16,6 @@ pub enum Recording {
         /// Its bytes.
         bytes: &'static [u8],
     },
-}
-
-/// From when to when a recording goes.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub struct Extent {
-    /// Time of the first frame.
-    pub first: DateTime<Utc>,
-    /// Time of the last.
-    pub last: DateTime<Utc>,
 }
 
 impl Recording {
@@ -63,19 +48,13 @@ impl Recording {
         }
     }
 
-    /// Reads through it once on a thread of its own, for its extent.
-    pub(super) fn measure(&self, channels: &Arc<Channels>) -> Arc<OnceLock<Extent>> {
-        let extent = Arc::new(OnceLock::new());
-        let (recording, channels, found) = (self.clone(), channels.clone(), extent.clone());
-        thread::spawn(move || {
-            let frames = recording.open(&channels).into_iter().flatten();
-            let whole = frames.map(|frame| frame.time).fold(None, |extent: Option<Extent>, time| {
-                Some(Extent { first: extent.map_or(time, |extent| extent.first), last: time })
-            });
-            if let Some(whole) = whole {
-                let _ = found.set(whole);
-            }
-        });
-        extent
+    /// Reads through it for the times of its first and last frame, until told to stop.
+    pub(super) fn extent(
+        &self,
+        channels: &Arc<Channels>,
+        stop: impl Fn() -> bool,
+    ) -> io::Result<Option<(DateTime<Utc>, DateTime<Utc>)>> {
+        let times = self.open(channels)?.map(|frame| frame.time).take_while(|_| !stop());
+        Ok(times.fold(None, |extent, time| Some((extent.map_or(time, |(first, _)| first), time))))
     }
 }

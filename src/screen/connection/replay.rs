@@ -1,6 +1,6 @@
 use std::{
     sync::{
-        Arc, OnceLock,
+        Arc,
         mpsc::{Receiver, RecvTimeoutError},
     },
     time::{Duration, Instant},
@@ -10,14 +10,14 @@ use chrono::{DateTime, TimeDelta, Utc};
 use tokio::sync::watch;
 
 use super::{
-    AlarmOrder, AlarmReport, Extent, FeedReport, Goal, InputReport, Order, Origin, Parcel, Playback, Player, Recording,
-    SPEEDS, Scene, Seeking, report,
+    AlarmOrder, AlarmReport, FeedReport, Goal, InputReport, MarkBook, Order, Origin, Parcel, Playback, Player, SPEEDS,
+    Scene, Seeking, report,
 };
-use crate::feed::Channels;
+use crate::screen::state::Survey;
 
 /// Parcels go out at most this often while frames rush by.
 const PARCELS_APART: Duration = Duration::from_millis(40);
-/// How often to look whether the extent is known by now.
+/// How often to look how far the survey is.
 const LOOK_AGAIN: Duration = Duration::from_millis(200);
 /// Further behind than this, the clock of the recording waits for the frames.
 const LAG_MAX: Duration = Duration::from_millis(100);
@@ -25,8 +25,9 @@ const LAG_MAX: Duration = Duration::from_millis(100);
 /// A recording at work: takes orders, and sends what comes of them.
 pub struct Replay {
     player: Player,
-    recording: Recording,
-    extent: Arc<OnceLock<Extent>>,
+    name: Arc<str>,
+    survey: watch::Receiver<Arc<Survey>>,
+    marks: MarkBook,
     parcels: watch::Sender<Option<Parcel>>,
     orders: Receiver<Order>,
     playing: bool,
@@ -57,17 +58,17 @@ impl Replay {
     /// Ready to run.
     pub fn new(
         player: Player,
-        recording: Recording,
-        channels: &Arc<Channels>,
+        survey: watch::Receiver<Arc<Survey>>,
         parcels: watch::Sender<Option<Parcel>>,
         orders: Receiver<Order>,
     ) -> Self {
-        let extent = recording.measure(channels);
+        let recording = player.beginning().recording;
         let clock = Clock { real: Instant::now(), recorded: None };
         Self {
             player,
-            recording,
-            extent,
+            name: recording.name().into(),
+            survey,
+            marks: MarkBook::beside(&recording),
             parcels,
             orders,
             playing: true,
@@ -117,7 +118,7 @@ impl Replay {
         }
         let next = if self.playing { self.player.next_time() } else { None };
         let Some(next) = next else {
-            return self.extent.get().is_none().then_some(LOOK_AGAIN);
+            return (!self.survey.borrow().ended).then_some(LOOK_AGAIN);
         };
         // The time bar moves between frames, too: once a second, recorded or real, whichever is longer.
         let tick = Duration::from_secs(1).div_f64(f64::from(self.speed)).max(Duration::from_millis(100));
@@ -129,7 +130,7 @@ impl Replay {
             let goal = seek.goal;
             if self.player.is_at(goal) || !self.player.step() {
                 self.seeking = None;
-                self.set_clock();
+                self.arrive(goal);
             }
             return;
         }
@@ -173,6 +174,10 @@ impl Replay {
                 }
             }
             Order::Seek(time) => self.go(Goal::Time(time)),
+            Order::Visit(time) => {
+                self.playing = false;
+                self.go(Goal::Time(time));
+            }
             Order::Cancel => {
                 self.seeking = None;
                 self.set_clock();
@@ -182,6 +187,7 @@ impl Replay {
             Order::Alarm(AlarmOrder { number, wish }) => {
                 self.answer = (number, self.player.obey(&wish).err().map(|refusal| refusal.to_string()));
             }
+            Order::Mark(wish) => self.marks.obey(wish),
         }
     }
 
@@ -204,6 +210,19 @@ impl Replay {
         let from = from.min(self.player.here().taken);
         let start = start.min(self.player.here().time);
         self.seeking = (!self.player.is_at(goal)).then_some(Seek { goal, from, start });
+        if self.seeking.is_none() {
+            self.arrive(goal);
+        }
+    }
+
+    /// In a silence between two frames, alarms know how long it has lasted.
+    fn arrive(&mut self, goal: Goal) {
+        if let Goal::Time(time) = goal
+            && self.player.next_time().is_some()
+            && self.player.here().time < Some(time)
+        {
+            self.player.elapse(time);
+        }
         self.set_clock();
     }
 
@@ -226,19 +245,18 @@ impl Replay {
         let now = self.now();
         let at_end = self.player.next_time().is_none();
         let here = self.player.here();
-        let extent = self.extent.get();
         let playback = Playback {
             playing: self.playing,
             speed: self.speed,
             now: if at_end { here.time } else { now },
-            extent: extent.map(|extent| (extent.first, extent.last)),
             taken: here.taken,
             seeking: self.seeking.as_ref().map(|seek| seek.progress(here.taken, here.time)),
             at_end,
-            seen: self.player.seen().clone(),
+            survey: self.survey.borrow().clone(),
+            marks: self.marks.report().clone(),
         };
         let trouble = self.trouble.iter().map(|trouble| InputReport {
-            name: self.recording.name().into(),
+            name: self.name.clone(),
             standing: trouble.clone(),
             findings: Vec::new(),
         });
@@ -289,5 +307,50 @@ impl Clock {
     fn lag(&self, time: DateTime<Utc>, speed: u32) -> Duration {
         let recorded = self.now(speed).map_or(TimeDelta::zero(), |now| now - time);
         recorded.to_std().map_or(Duration::ZERO, |recorded| recorded / speed.max(1))
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use std::{fs, sync::mpsc::sync_channel, thread};
+
+    use chrono_tz::Tz;
+    use futures::executor::block_on;
+
+    use super::*;
+    use crate::screen::connection::{Mark, MarkWish, Surveyor, player::tests::player};
+
+    #[test]
+    fn a_visit_leads_to_the_frame_and_stays_there_and_marks_are_kept() {
+        let (player, path) = player("visit");
+        let survey = Surveyor::new(player.beginning(), TimeDelta::seconds(10), Tz::UTC).start();
+        let (sender, mut parcels) = watch::channel(None);
+        let (orders, taken) = sync_channel(8);
+        let mut replay = Replay::new(player, survey, sender, taken);
+        let running = thread::spawn(move || {
+            replay.begin(None, 3600, true);
+            replay.run();
+        });
+        let start: DateTime<Utc> = "2031-03-14T05:00:00Z".parse().unwrap();
+        let (frame, between) = (start + TimeDelta::seconds(1200), start + TimeDelta::seconds(1201));
+        for time in [frame, between, frame] {
+            orders.send(Order::Visit(time)).unwrap();
+            let there = |parcel: &Option<Parcel>| {
+                let Some(Parcel { origin: Origin::Replay(playback), .. }) = parcel else { return false };
+                !playback.playing && playback.seeking.is_none() && playback.now == Some(frame)
+            };
+            block_on(parcels.wait_for(there)).unwrap();
+        }
+        let mark = Mark { time: frame, corridor: None, note: "here".into() };
+        orders.send(Order::Mark(MarkWish::Set(mark.clone()))).unwrap();
+        let marked = |parcel: &Option<Parcel>| {
+            let Some(Parcel { origin: Origin::Replay(playback), .. }) = parcel else { return false };
+            *playback.marks.marks == [mark.clone()] && playback.survey.ended
+        };
+        block_on(parcels.wait_for(marked)).unwrap();
+        drop(orders);
+        running.join().unwrap();
+        fs::remove_file(path.with_extension("marks.json")).unwrap();
+        fs::remove_file(path).unwrap();
     }
 }

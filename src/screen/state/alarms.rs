@@ -126,6 +126,8 @@ impl App {
 
     /// An order found no way out: nothing of it was done.
     pub fn refused(&mut self) {
+        self.events.asked = None;
+        self.jumps.landed = None;
         self.alarms.pending.retain(|(number, _)| *number != self.alarms.ordered);
         self.notice = Some("That was not done: too much is waiting. Press it again.".into());
     }
@@ -158,7 +160,7 @@ impl App {
             };
         };
         let order = match key {
-            '/' if !self.alarms.history => self.ask(Prompt::Filter),
+            '/' if !self.alarms.history => self.ask_about(Prompt::Filter),
             'v' if !self.alarms.history => {
                 self.alarms.all = !self.alarms.all;
                 None
@@ -171,16 +173,16 @@ impl App {
                 let next = self.drawn.alarms.get(self.drawn.alarm_cursor + 1).map(|next| next.key.clone());
                 self.acknowledge(vec![seen], next)
             }),
-            'z' if seen.is_some() => self.ask(Prompt::Shelve),
-            'o' if seen.is_some() => self.ask(Prompt::OutOfService),
-            'n' if seen.is_some() => self.ask(Prompt::Note),
+            'z' if seen.is_some() => self.ask_about(Prompt::Shelve),
+            'o' if seen.is_some() => self.ask_about(Prompt::OutOfService),
+            'n' if seen.is_some() => self.ask_about(Prompt::Note),
             'u' => seen.and_then(|seen| self.bring_back(seen.key)),
             _ => return ControlFlow::Continue(()),
         };
         ControlFlow::Break(order)
     }
 
-    fn ask(&mut self, prompt: Prompt) -> Option<Order> {
+    fn ask_about(&mut self, prompt: Prompt) -> Option<Order> {
         self.alarms.chosen = self.seen_alarm().map(|seen| seen.key.clone());
         self.typing = Some(Typing::Alarm(prompt, String::new()));
         None

@@ -81,11 +81,6 @@ impl Chronicle {
     pub fn time(&self) -> Option<DateTime<Utc>> {
         self.tracks.first().map(|track| track.latest.time)
     }
-
-    /// The worst state of all corridors.
-    pub fn worst(&self) -> Option<State> {
-        self.tracks.iter().map(|track| track.latest.state).max_by_key(|state| state.severity())
-    }
 }
 
 impl Track {

@@ -3,14 +3,17 @@ use std::{ops::ControlFlow, sync::Arc};
 use chrono::TimeDelta;
 use crossterm::event::{KeyCode, KeyEvent, KeyEventKind, KeyModifiers};
 
-use super::{App, Page, Panel, Prompt, Sort, Typing, parse_time};
+use super::{App, Export, Page, Panel, Prompt, Sort, Typing, parse_time};
 use crate::screen::connection::Order;
+
+/// Keys that move us in a recording, which a live feed does not have.
+const OF_A_REPLAY: &str = " +=-_.,><)(}{tnewWrRdDxX'\"";
 
 /// Longest line that can be typed.
 const TYPED_MAX: usize = 200;
 
 /// Every key, with what it does: the help page prints this.
-pub const KEYS: [(&str, &[(&str, &str)]); 4] = [
+pub const KEYS: [(&str, &[(&str, &str)]); 5] = [
     (
         "Everywhere",
         &[
@@ -26,6 +29,9 @@ pub const KEYS: [(&str, &[(&str, &str)]); 4] = [
             ("/", "overview: show only names that contain, or a state that begins with, what you type"),
             ("a", "alarms"),
             ("m", "messages"),
+            ("A", "hold the present moment as A"),
+            ("B", "A beside the present: what changed between them"),
+            ("p", "put on file what is on the screen: j the corridor’s record as JSON, t the page as text, s as SVG"),
             ("c", "what a changed configuration file would change; Enter there applies it"),
             ("?", "this help"),
             ("q  Ctrl-C", "quit"),
@@ -43,6 +49,16 @@ pub const KEYS: [(&str, &[(&str, &str)]); 4] = [
             ("} {", "1 hour on, back"),
             ("t", "go to a time: 14:03, 14:03:20 or 2031-03-14T14:03:20Z"),
             ("Esc", "while seeking: stop there"),
+            ("e", "events and marks of the whole recording"),
+            (
+                "w W",
+                "next, previous switching, state, direction or gap: on a corridor’s page its own, elsewhere all; so below",
+            ),
+            ("r R", "next, previous alarm raised"),
+            ("d D", "next, previous lowest headroom: of a dip below the thin threshold, or of a day"),
+            ("x X", "the lowest headroom of all; back to where the last jump set out"),
+            ("' \"", "next, previous mark"),
+            ("n", "mark this moment, with a note or without"),
         ],
     ),
     (
@@ -64,11 +80,22 @@ pub const KEYS: [(&str, &[(&str, &str)]); 4] = [
         ],
     ),
     (
+        "On the page of events and marks",
+        &[
+            ("Enter", "go there, and open the corridor"),
+            ("v V", "next, previous kinds"),
+            ("/", "show only corridors and texts that contain, or kinds that begin with, each word you type"),
+            ("n", "mark it with a note, or mend the note of a mark"),
+            ("Del", "take a mark away"),
+            ("u", "bring it back"),
+        ],
+    ),
+    (
         "Mouse",
         &[
             (
                 "click",
-                "choose a corridor, an outage, an alarm, a part, a place on the time bar; again to open the corridor",
+                "choose a corridor, an outage, an alarm, a part, a place on the time bar or a sign at it; again to open",
             ),
             ("click", "the line of alarms at the top: the alarm page"),
             ("wheel", "move up, down"),
@@ -82,7 +109,13 @@ impl App {
         if key.kind == KeyEventKind::Release {
             return None;
         }
-        self.notice = None;
+        (self.notice, self.said) = (None, None);
+        let order = self.answer(key)?;
+        self.note_order(&order);
+        Some(order)
+    }
+
+    fn answer(&mut self, key: KeyEvent) -> Option<Order> {
         if key.modifiers.contains(KeyModifiers::CONTROL) {
             self.leaving |= key.code == KeyCode::Char('c');
             return None;
@@ -95,12 +128,20 @@ impl App {
         {
             return order;
         }
+        if self.page == Page::Events
+            && let ControlFlow::Break(order) = self.event_key(key.code)
+        {
+            return order;
+        }
         match key.code {
             KeyCode::Char('q') => self.leaving = true,
             KeyCode::Char('?') => self.toggle(Page::Help),
             KeyCode::Char('a') => self.toggle(Page::Alarms),
             KeyCode::Char('m') => self.toggle(Page::Messages),
             KeyCode::Char('c') => self.toggle(Page::Change),
+            KeyCode::Char('A') => self.hold(),
+            KeyCode::Char('B') => self.toggle(Page::Compare),
+            KeyCode::Char('p') => return self.ask(Typing::Export),
             KeyCode::Enter if self.page == Page::Change => return self.apply(),
             KeyCode::Up | KeyCode::Char('k') => self.go(-1),
             KeyCode::Down | KeyCode::Char('j') => self.go(1),
@@ -121,8 +162,8 @@ impl App {
             KeyCode::Char('/') if self.page == Page::Overview => self.typing = Some(Typing::Filter),
             KeyCode::Tab if self.page == Page::Corridor => self.show(self.panel.turned(self.size, false)),
             KeyCode::BackTab if self.page == Page::Corridor => self.show(self.panel.turned(self.size, true)),
-            KeyCode::Char('[') if self.page == Page::Corridor => self.neighbour(-1),
-            KeyCode::Char(']') if self.page == Page::Corridor => self.neighbour(1),
+            KeyCode::Char('[') if matches!(self.page, Page::Corridor | Page::Compare) => self.neighbour(-1),
+            KeyCode::Char(']') if matches!(self.page, Page::Corridor | Page::Compare) => self.neighbour(1),
             KeyCode::Char('b') if self.page == Page::Corridor => self.outage = None,
             code => return self.replay_key(code),
         }
@@ -131,7 +172,13 @@ impl App {
 
     fn replay_key(&mut self, code: KeyCode) -> Option<Order> {
         let KeyCode::Char(key) = code else { return None };
-        let order = match key {
+        if self.playback().is_none() {
+            if OF_A_REPLAY.contains(key) {
+                self.notice = Some("That key is for a replay; this feed is live.".into());
+            }
+            return None;
+        }
+        Some(match key {
             ' ' => Order::Toggle,
             '+' | '=' => Order::Faster,
             '-' | '_' => Order::Slower,
@@ -143,23 +190,32 @@ impl App {
             '(' => Order::Jump(TimeDelta::minutes(-10)),
             '}' => Order::Jump(TimeDelta::hours(1)),
             '{' => Order::Jump(TimeDelta::hours(-1)),
-            't' if self.playback().is_some() => {
-                self.typing = Some(Typing::Time(String::new()));
+            't' => return self.ask(Typing::Time(String::new())),
+            'n' => return self.ask(self.note_of_present()?),
+            'e' => {
+                self.toggle(Page::Events);
                 return None;
             }
-            _ => return None,
-        };
-        if self.playback().is_none() {
-            self.notice = Some("That key is for a replay; this feed is live.".into());
-            return None;
-        }
-        Some(order)
+            _ => return self.jump_key(key),
+        })
+    }
+
+    pub(super) fn ask(&mut self, what: Typing) -> Option<Order> {
+        self.typing = Some(what);
+        None
     }
 
     fn type_key(&mut self, code: KeyCode) -> Option<Order> {
         let typed = match self.typing.as_mut()? {
             Typing::Filter => &mut self.filter,
             Typing::Alarm(Prompt::Filter, _) => &mut self.alarms.filter,
+            Typing::Events => &mut self.events.filter,
+            Typing::Mark(mark) => &mut mark.note,
+            Typing::Export => {
+                self.typing = None;
+                self.export = Export::of_key(code);
+                return None;
+            }
             Typing::Time(text) | Typing::Alarm(_, text) => text,
         };
         match code {
@@ -168,6 +224,7 @@ impl App {
             KeyCode::Esc => match self.typing.take() {
                 Some(Typing::Filter) => self.filter.clear(),
                 Some(Typing::Alarm(Prompt::Filter, _)) => self.alarms.filter.clear(),
+                Some(Typing::Events) => self.events.filter.clear(),
                 _ => {}
             },
             KeyCode::Enter => match self.typing.take()? {
@@ -179,7 +236,8 @@ impl App {
                     }
                 }
                 Typing::Alarm(prompt, text) => return self.alarm_typed(prompt, &text),
-                Typing::Filter => {}
+                Typing::Mark(mark) => return Some(self.set_mark(mark, "is set")),
+                Typing::Filter | Typing::Events | Typing::Export => {}
             },
             KeyCode::Up => self.go(-1),
             KeyCode::Down => self.go(1),
@@ -193,6 +251,7 @@ impl App {
     pub(super) fn go(&mut self, by: isize) {
         match self.page {
             Page::Overview => self.move_in(&self.rows(), by),
+            Page::Events => self.walk_events(by),
             Page::Alarms if !self.alarms.history => self.walk_alarms(by),
             Page::Corridor if self.walks_outages() => self.walk_outages(by),
             _ => {
@@ -279,7 +338,9 @@ impl App {
             Page::Overview if drop_filter => self.filter.clear(),
             Page::Overview => {}
             Page::Corridor => self.page = Page::Overview,
-            Page::Alarms | Page::Change | Page::Messages | Page::Help => self.page = self.under,
+            Page::Alarms | Page::Events | Page::Compare | Page::Change | Page::Messages | Page::Help => {
+                self.page = self.under;
+            }
         }
     }
 

@@ -2,27 +2,36 @@
 
 mod alarms;
 mod chronicle;
+mod events;
+mod held;
 mod history;
 mod instant;
+mod jump;
 mod keys;
 mod panel;
 mod pointer;
+mod survey;
 
 use std::{sync::Arc, time::Instant};
 
 use chrono::TimeDelta;
 use chrono_tz::Tz;
+use crossterm::event::KeyCode;
 use ratatui::layout::Size;
 
 pub use alarms::{AlarmPage, Prompt};
 pub use chronicle::{Chronicle, EVENTS_KEPT, Track};
+pub use events::{EventPage, Kinds};
+pub use held::Held;
 pub use history::{History, Strip};
 pub use instant::parse_time;
+pub use jump::Jumps;
 pub use keys::KEYS;
 pub use panel::Panel;
 pub use pointer::{Drawn, Target};
+pub use survey::{Moment, MomentKind, Survey, insert};
 
-use super::connection::{Change, Origin, Parcel, Playback, Setting};
+use super::connection::{Change, Mark, Origin, Parcel, Playback, Setting};
 use crate::{
     config::ScreenSettings,
     desk::{Assessment, OutageRecord},
@@ -62,6 +71,14 @@ pub struct App {
     pub settings: ScreenSettings,
     /// The alarm page.
     pub alarms: AlarmPage,
+    /// Events and marks of a recording.
+    pub events: EventPage,
+    /// Jumps from one to another.
+    pub jumps: Jumps,
+    /// The moment that the present is compared with.
+    pub held: Option<Held>,
+    /// What is on the screen is to be written to a file, and how.
+    pub export: Option<Export>,
     /// Of the terminal.
     pub size: Size,
     /// This computer's clock at the last drawing.
@@ -70,6 +87,8 @@ pub struct App {
     started: Instant,
     /// A word on the last key, until the next.
     pub notice: Option<String>,
+    /// The same, where nothing is amiss.
+    pub said: Option<String>,
     /// What the last drawing found out.
     pub drawn: Drawn,
     /// The user has had enough.
@@ -85,6 +104,10 @@ pub enum Page {
     Corridor,
     /// What calls for the operator.
     Alarms,
+    /// Events and marks of a recording.
+    Events,
+    /// The moment held and the present, side by side.
+    Compare,
     /// What a changed configuration file would bring.
     Change,
     /// What happened.
@@ -111,6 +134,35 @@ pub enum Typing {
     Time(String),
     /// Something about an alarm.
     Alarm(Prompt, String),
+    /// Narrowing the list of events; it applies as it is typed.
+    Events,
+    /// The note of a mark.
+    Mark(Mark),
+    /// As what to write what is on the screen.
+    Export,
+}
+
+/// What can be written of what is on the screen.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Export {
+    /// The record of the corridor with the cursor, as JSON.
+    Record,
+    /// The page as text.
+    Text,
+    /// The page as a picture, SVG.
+    Picture,
+}
+
+impl Export {
+    /// The one that a key stands for.
+    fn of_key(code: KeyCode) -> Option<Self> {
+        match code {
+            KeyCode::Char('j') => Some(Self::Record),
+            KeyCode::Char('t') => Some(Self::Text),
+            KeyCode::Char('s') => Some(Self::Picture),
+            _ => None,
+        }
+    }
 }
 
 impl App {
@@ -134,10 +186,15 @@ impl App {
             scroll: 0,
             settings: ScreenSettings::default(),
             alarms: AlarmPage::default(),
+            events: EventPage::default(),
+            jumps: Jumps::default(),
+            held: None,
+            export: None,
             size: Size::new(80, 24),
             clock: started,
             started,
             notice: None,
+            said: None,
             drawn: Drawn::default(),
             leaving: false,
         }
@@ -146,6 +203,9 @@ impl App {
     /// Takes in what the connection sent.
     pub fn receive(&mut self, parcel: Parcel) {
         self.receive_alarms(&parcel.alarms);
+        if let Origin::Replay(playback) = &parcel.origin {
+            self.receive_marks(&playback.marks);
+        }
         self.receive_setting(parcel.scene.setting.as_ref());
         self.parcel = Some(parcel);
     }
@@ -160,6 +220,14 @@ impl App {
         self.selected = place.unwrap_or(0);
         if place.is_none() {
             self.outage = None;
+        }
+    }
+
+    /// Takes in what became of an export.
+    pub fn exported(&mut self, outcome: Result<String, String>) {
+        match outcome {
+            Ok(said) => self.said = Some(said),
+            Err(why) => self.notice = Some(why),
         }
     }
 

@@ -4,7 +4,7 @@ use chrono::{DateTime, Utc};
 use crossterm::event::{MouseButton, MouseEvent, MouseEventKind};
 use ratatui::layout::{Position, Rect};
 
-use super::{App, Page, Panel};
+use super::{App, Moment, Page, Panel};
 use crate::screen::connection::{Order, Seen};
 
 /// What a drawing found out that keys and the mouse need to know.
@@ -37,6 +37,8 @@ pub enum Target {
     Alarm(Seen),
     /// A tab or a panel.
     Panel(Panel),
+    /// A moment of a recording.
+    Moment(Arc<Moment>),
     /// A stretch of time, from the left edge to the right.
     Time(DateTime<Utc>, DateTime<Utc>),
 }
@@ -47,7 +49,11 @@ impl App {
         match mouse.kind {
             MouseEventKind::ScrollUp => self.go(-3),
             MouseEventKind::ScrollDown => self.go(3),
-            MouseEventKind::Down(MouseButton::Left) => return self.click(Position::new(mouse.column, mouse.row)),
+            MouseEventKind::Down(MouseButton::Left) => {
+                let order = self.click(Position::new(mouse.column, mouse.row))?;
+                self.note_order(&order);
+                return Some(order);
+            }
             _ => {}
         }
         None
@@ -64,6 +70,11 @@ impl App {
             Target::Alarm(seen) if self.alarms.chosen.as_ref() == Some(&seen.key) => return self.visit(&seen),
             Target::Alarm(seen) => self.alarms.chosen = Some(seen.key),
             Target::Panel(panel) => self.show(panel),
+            Target::Moment(moment) if self.page == Page::Events && self.events.chosen.as_ref() != Some(&moment) => {
+                self.events.chosen = Some(moment);
+            }
+            Target::Moment(moment) if self.page == Page::Events => return Some(self.go_to_listed(&moment)),
+            Target::Moment(moment) => return Some(self.visit_moment(&moment, "")),
             Target::Time(from, until) => {
                 let share = f64::from(position.x - area.x) / f64::from(area.width.max(1));
                 let whole_ms = (until - from).num_milliseconds() as f64;

@@ -18,6 +18,9 @@ fn words(app: &App) -> Option<(String, bool)> {
     if let Some(notice) = &app.notice {
         return Some((notice.clone(), true));
     }
+    if let Some(said) = app.said.as_ref().filter(|_| app.playback().is_none_or(|playback| playback.seeking.is_none())) {
+        return Some((said.clone(), false));
+    }
     troubled(app).or_else(|| unwritten(app)).or_else(|| changed(app))
 }
 

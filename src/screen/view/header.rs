@@ -13,6 +13,8 @@ pub fn line(app: &App, theme: Theme, width: usize) -> Line<'static> {
         Page::Overview => "all corridors",
         Page::Corridor => "corridor",
         Page::Alarms => "alarms",
+        Page::Events => "events and marks",
+        Page::Compare => "A and now",
         Page::Change => "configuration",
         Page::Messages => "messages",
         Page::Help => "help",

@@ -4,7 +4,7 @@ use super::{Theme, ruler, text};
 use crate::{desk::State, screen::state::KEYS};
 
 /// What the numbers mean.
-const NUMBERS: [(&str, &str); 10] = [
+const NUMBERS: [(&str, &str); 11] = [
     (
         "headroom",
         "MW that may still be added so that the next outage is survived by every criterion; negative: MW to take off now. Rounded down. ± is one standard deviation, from what is not known of the two sides.",
@@ -33,6 +33,10 @@ const NUMBERS: [(&str, &str); 10] = [
     (
         "curves",
         "transfer against angle. The level line is what the machines deliver. Where the curve is below it the swing speeds up (dense), above it the swing slows down (light): survived when the light area can match the dense one before the tipping point.",
+    ),
+    (
+        "time bar",
+        "the whole recording: its worst states (on a corridor’s page its own), and above them, or on a small terminal in them, T trip, R return, B bypass, I insertion, D direction, ▲ alarm raised, ▼ lowest headroom of a day, ▾ of a dip, G gap, m meter, * mark. What is of other corridors is faint.",
     ),
     (
         "spread, ±",

@@ -6,10 +6,13 @@ mod alarms;
 mod banner;
 mod card;
 mod change;
+mod compare;
 mod corridor;
 mod curves;
 mod data;
+mod difference;
 mod digits;
+mod events;
 mod figures;
 mod footer;
 mod header;
@@ -56,7 +59,7 @@ pub fn draw(frame: &mut Frame, app: &App, theme: Theme) -> Drawn {
         Constraint::Length(1),
         Constraint::Length(u16::from(banner.is_some())),
         Constraint::Fill(1),
-        Constraint::Length(u16::from(app.playback().is_some())),
+        Constraint::Length(timebar::height(app, area)),
         Constraint::Length(1),
     ])
     .areas(area);
@@ -70,6 +73,8 @@ pub fn draw(frame: &mut Frame, app: &App, theme: Theme) -> Drawn {
         Page::Overview => overview::draw(frame, body, app, theme),
         Page::Corridor => corridor::draw(frame, body, app, theme),
         Page::Alarms => alarms::draw(frame, body, app, theme),
+        Page::Events => events::draw(frame, body, app, theme),
+        Page::Compare => scrolled(frame, body, app.scroll, compare::lines(app, theme, body)),
         Page::Change => scrolled(frame, body, app.scroll, change::lines(app, theme, usize::from(body.width))),
         Page::Messages => scrolled(frame, body, app.scroll, messages::lines(app, theme, body)),
         Page::Help => scrolled(frame, body, app.scroll, help::lines(theme, usize::from(body.width))),

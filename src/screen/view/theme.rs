@@ -3,6 +3,8 @@ use ratatui::style::{Color, Modifier, Style};
 use crate::{
     alarm::{self, Priority},
     desk::State,
+    events::EventKind,
+    screen::state::MomentKind,
 };
 
 /// How things look. Colour is for what is abnormal, and never alone.
@@ -58,6 +60,30 @@ impl Theme {
             alarm::State::Shelved => ("◇", "shelved"),
             alarm::State::Suppressed => ("○", "suppressed"),
             alarm::State::OutOfService => ("–", "out of service"),
+        }
+    }
+
+    /// The sign of a moment of a recording, one cell wide, and its style.
+    pub fn sign(self, kind: MomentKind) -> (&'static str, Style) {
+        match kind {
+            MomentKind::Mark => ("*", Style::new().add_modifier(Modifier::REVERSED)),
+            MomentKind::Raised(priority) => ("▲", self.priority(priority)),
+            MomentKind::Low { of_day: true, .. } => ("▼", self.strong()),
+            MomentKind::Low { .. } => ("▾", self.strong()),
+            MomentKind::Event(kind) => match kind {
+                EventKind::State => ("=", Style::new()),
+                EventKind::Direction => ("D", Style::new()),
+                EventKind::Trip => ("T", self.caution()),
+                EventKind::Return => ("R", Style::new()),
+                EventKind::Bypass => ("B", self.caution()),
+                EventKind::Insertion => ("I", Style::new()),
+                EventKind::Step => ("s", self.quiet()),
+                EventKind::Meter => ("m", Style::new()),
+                EventKind::Gap => ("G", self.badge(State::Blind)),
+                EventKind::Alarm => ("△", Style::new()),
+                EventKind::Act => ("●", Style::new()),
+                EventKind::Program => ("·", self.quiet()),
+            },
         }
     }
 

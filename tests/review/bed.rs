@@ -46,6 +46,10 @@ impl Bed {
         Self { folder, config, configuration: invented.config, lines }
     }
 
+    pub fn configuration(&self) -> &str {
+        &self.configuration
+    }
+
     pub fn path(&self, name: &str) -> PathBuf {
         self.folder.path().join(name)
     }

@@ -4,4 +4,5 @@ mod bed;
 mod figures;
 mod files;
 mod parts;
+mod recorded;
 mod what_if;

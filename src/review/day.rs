@@ -49,6 +49,17 @@ pub enum Beginning {
     Carried,
 }
 
+impl Beginning {
+    /// Its word.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Recorded => "recorded",
+            Self::Configured => "configured",
+            Self::Carried => "carried",
+        }
+    }
+}
+
 /// A file that a day was read from.
 #[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct FileNote {

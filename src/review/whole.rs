@@ -185,6 +185,27 @@ impl Review {
         }
     }
 
+    /// At most so many of the events, in order: the most telling kinds, and of equals the first.
+    pub fn most_telling(&self, most: usize) -> Vec<&Event> {
+        let telling = |event: &Event| GO_FIRST.iter().position(|kind| *kind == event.kind);
+        let mut places: Vec<usize> = (0..self.events.len()).collect();
+        places.sort_by_key(|place| std::cmp::Reverse(telling(&self.events[*place])));
+        places.truncate(most);
+        places.sort_unstable();
+        places.into_iter().map(|place| &self.events[place]).collect()
+    }
+
+    /// Part of the time for which there were data, 0 to 1; `None` without any frame.
+    pub fn availability(&self) -> Option<f64> {
+        self.part(self.covered_ms)
+    }
+
+    /// So much time as a part of all of it, 0 to 1; `None` without any.
+    pub fn part(&self, ms: i64) -> Option<f64> {
+        let whole = self.covered_ms + self.without_data_ms();
+        (whole > 0).then(|| ms as f64 / whole as f64)
+    }
+
     /// Time between the first and the last frame, ms.
     pub fn span_ms(&self) -> i64 {
         self.span.map_or(0, |(first, last)| last.timestamp_millis() - first.timestamp_millis())

@@ -1,0 +1,6 @@
+//! Reviews of recorded days.
+
+mod page;
+mod paper;
+mod parquet;
+mod report;

@@ -6,11 +6,13 @@ pub mod demo;
 pub mod drill;
 mod inputs;
 pub mod journal;
+mod papers;
 mod progress;
 pub mod replay;
 pub mod review;
 pub mod shell;
 mod stage;
+mod tables;
 pub mod try_thresholds;
 pub mod watch;
 

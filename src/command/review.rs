@@ -3,7 +3,6 @@
 use std::{
     collections::BTreeMap,
     fs,
-    io::{Write, stdout},
     num::NonZeroUsize,
     path::{Path, PathBuf},
     sync::Arc,
@@ -12,12 +11,12 @@ use std::{
 use chrono::NaiveDate;
 use clap::Args;
 
-use super::{Failure, assess::Sources, progress};
+use super::{Failure, assess::Sources, papers::Papers, progress, tables::Tables};
 use crate::{
     config::Config,
     desk::Alternative,
     feed::Channels,
-    report::change,
+    report::{change, review::Paper},
     review::{Done, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
 };
 
@@ -55,6 +54,11 @@ pub struct Options {
     /// Threads to assess on [default: one a processor]
     #[arg(long, value_name = "N")]
     threads: Option<NonZeroUsize>,
+    /// Write one row for each corridor and frame, as a Parquet file for each day in this folder
+    #[arg(long, value_name = "DIR", conflicts_with = "merge")]
+    parquet: Option<PathBuf>,
+    #[command(flatten)]
+    papers: Papers,
 }
 
 /// One of several jobs.
@@ -79,16 +83,19 @@ impl std::str::FromStr for Share {
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
-    let (review, config) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
+    let (review, config, terms) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
     if review.days.is_empty() {
-        return Err("not a single frame was read".into());
+        return Err(format!("not a single frame was read from {}", names(&options.files)).into());
     }
-    write!(stdout(), "{review:?}")?;
-    let _ = config;
-    Ok(())
+    let paper = Paper { review: &review, grid: &config.grid, zone: config.time_zone, changes: &terms.changes };
+    options.papers.write(&paper)
 }
 
-fn review(options: &Options) -> Result<(Review, Config), Failure> {
+fn names(files: &[PathBuf]) -> String {
+    files.iter().map(|file| file.display().to_string()).collect::<Vec<_>>().join(", ")
+}
+
+fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
     let path = options.config.as_deref().unwrap_or(Path::new(""));
     let (mut config, text) = Config::read(path)?;
     Sources::choose(options.sources, &mut config);
@@ -109,17 +116,20 @@ fn review(options: &Options) -> Result<(Review, Config), Failure> {
         differences: change::lines,
     };
     if let Some(folder) = &options.parts {
-        fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()))?;
+        make(folder)?;
     }
+    let tables = Tables::new(options.parquet.as_deref(), &task)?;
     let progress = progress::bar("");
     progress.inc_length(stretches.iter().map(Stretch::bytes).sum());
-    let known = |stretch: &Stretch, date: NaiveDate| known(options.parts.as_deref()?, &terms, stretch, date);
+    let known = |stretch: &Stretch, date: NaiveDate| {
+        known(options.parts.as_deref()?, &terms, stretch, date).filter(|_| tables.has(date))
+    };
     let run = Run {
         task: &task,
         stretches: &stretches,
         threads: options.threads,
         carry: options.carry,
-        output: &task.config.grid.corridors.len(),
+        output: &tables,
         known: &known,
         follow: &progress::following(&progress),
     };
@@ -135,7 +145,11 @@ fn review(options: &Options) -> Result<(Review, Config), Failure> {
         Ok(())
     })?;
     progress.finish_and_clear();
-    Ok((review, Arc::unwrap_or_clone(task.config)))
+    Ok((review, Arc::unwrap_or_clone(task.config), terms))
+}
+
+pub(super) fn make(folder: &Path) -> Result<(), Failure> {
+    fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()).into())
 }
 
 /// A day that was reviewed before, from the same files and under the same terms.
@@ -163,7 +177,7 @@ impl Options {
 }
 
 /// Puts together what was reviewed before, exactly as one run would have.
-fn merge(paths: &[PathBuf]) -> Result<(Review, Config), Failure> {
+fn merge(paths: &[PathBuf]) -> Result<(Review, Config, Terms), Failure> {
     let mut parts = BTreeMap::new();
     let mut terms: Option<(PathBuf, Terms)> = None;
     for path in Part::find(paths)? {
@@ -192,5 +206,5 @@ fn merge(paths: &[PathBuf]) -> Result<(Review, Config), Failure> {
     for (path, _) in parts.into_values() {
         review.add(Part::load(&path)?.day);
     }
-    Ok((review, config))
+    Ok((review, config, terms))
 }

@@ -159,6 +159,16 @@ pub enum Basis {
     Learned,
 }
 
+impl Basis {
+    /// Its word.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Configured => "configured",
+            Self::Learned => "learned",
+        }
+    }
+}
+
 /// The state fit in brief.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct FitRecord {

@@ -5,6 +5,7 @@ use std::{fmt, sync::Arc};
 use chrono::{DateTime, TimeDelta, Utc};
 use chrono_tz::Tz;
 
+use super::CAUTION;
 use crate::{
     desk::{Assessment, Binding, State},
     grid::Grid,
@@ -42,10 +43,6 @@ struct Least {
 
 const STATES: [State; 4] = [State::Ample, State::Thin, State::Spent, State::Blind];
 const NO_DATA: usize = 4;
-
-const CAUTION: &str = "\
-tautline advises. Protection, approved operating limits, local codes and licensed engineers stand above it.
-Left out: governors, exciters, load dynamics, damping, every swing after the first, swings inside a side.";
 
 impl Summary {
     /// Nothing taken in yet. A state lasts until the next frame, but at most `max_age`: what follows is without data.

@@ -23,7 +23,9 @@ impl<const N: usize> fmt::Display for Table<N> {
             let cells: Vec<_> = columns.iter().map(|(column, width)| format!("{:width$}", cell(*column))).collect();
             writeln!(f, "    {}", cells.join("   ").trim_end())
         };
-        write(&|column| self.heading[column].clone())?;
+        if columns.iter().any(|(column, _)| !self.heading[*column].is_empty()) {
+            write(&|column| self.heading[column].clone())?;
+        }
         self.rows.iter().try_for_each(|row| write(&|column| row[column].clone()))
     }
 }

@@ -41,6 +41,14 @@ pub trait Rows: Send {
     fn take(&mut self, was: &Assessment, what_if: Option<&Assessment>);
 }
 
+impl<R: Rows> Rows for Option<R> {
+    fn take(&mut self, was: &Assessment, what_if: Option<&Assessment>) {
+        if let Some(rows) = self {
+            rows.take(was, what_if);
+        }
+    }
+}
+
 /// Keeps nothing.
 impl Rows for () {
     fn take(&mut self, _was: &Assessment, _what_if: Option<&Assessment>) {}
@@ -57,6 +65,7 @@ pub struct Bench<R> {
     beginning: Beginning,
     span: Option<(DateTime<Utc>, DateTime<Utc>)>,
     frames: u64,
+    covered_ms: i64,
     silent_ms: i64,
     gaps: Vec<Event>,
     findings: Vec<String>,
@@ -107,6 +116,7 @@ impl<R: Rows> Bench<R> {
             beginning: Beginning::Configured,
             span: None,
             frames: 0,
+            covered_ms: 0,
             silent_ms: 0,
             gaps: Vec::new(),
             findings: Vec::new(),
@@ -164,6 +174,7 @@ impl<R: Rows> Bench<R> {
             self.span = Some((time, time));
             return;
         };
+        self.covered_ms += lasted_ms(last, time, self.max_age);
         self.silent_ms += silent_ms(last, time, self.max_age);
         if self.gaps.len() < MOST_EVENTS {
             self.gaps.extend(gap(last, time, self.max_age));
@@ -218,7 +229,8 @@ impl<R: Rows> Bench<R> {
             first,
             last,
             frames: std::mem::take(&mut self.frames),
-            silent_ms: std::mem::take(&mut self.silent_ms),
+            covered_ms: self.covered_ms + lasted_ms(last, midnight, self.max_age),
+            silent_ms: self.silent_ms,
             findings,
             events,
             events_left_out,

@@ -25,6 +25,8 @@ pub struct Day {
     pub last: DateTime<Utc>,
     /// Frames.
     pub frames: u64,
+    /// Time with data, ms: until the next frame, but no longer than a value stands, nor past midnight.
+    pub covered_ms: i64,
     /// Time between the first and the last frame without data: a frame's values stand until the next one, but no longer than
     /// their age, ms.
     pub silent_ms: i64,
@@ -48,6 +50,17 @@ pub enum Beginning {
     Configured,
     /// What the day before it ended with.
     Carried,
+}
+
+impl Beginning {
+    /// Its word.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Recorded => "recorded",
+            Self::Configured => "configured",
+            Self::Carried => "carried",
+        }
+    }
 }
 
 /// A file that a day was read from.

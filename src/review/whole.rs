@@ -38,6 +38,8 @@ pub struct Review {
     pub span: Option<(DateTime<Utc>, DateTime<Utc>)>,
     /// Frames.
     pub frames: u64,
+    /// Time with data, ms.
+    pub covered_ms: i64,
     /// Time between the first and the last frame without data, ms.
     pub silent_ms: i64,
     /// What it was read from.
@@ -79,9 +81,9 @@ pub struct DayFigures {
     pub beginning: Beginning,
     /// Frames.
     pub frames: u64,
-    /// Time between the day's first and last frame.
-    pub span_ms: i64,
-    /// Of it without data.
+    /// Time with data, ms.
+    pub covered_ms: i64,
+    /// Time between its first and its last frame without data, ms.
     pub silent_ms: i64,
     /// Each corridor, as it was and as it would have been.
     pub corridors: Vec<(Brief, Option<Brief>)>,
@@ -124,6 +126,7 @@ impl Review {
             max_age,
             span: None,
             frames: 0,
+            covered_ms: 0,
             silent_ms: 0,
             files: Vec::new(),
             findings: Vec::new(),
@@ -143,6 +146,7 @@ impl Review {
         }
         self.span = Some((self.span.map_or(day.first, |(first, _)| first), day.last));
         self.frames += day.frames;
+        self.covered_ms += day.covered_ms;
         self.silent_ms += day.silent_ms;
         self.findings.extend(day.findings.into_iter().map(|finding| (day.date, finding)));
         day.files.into_iter().for_each(|file| self.note(file));
@@ -153,7 +157,7 @@ impl Review {
             date: day.date,
             beginning: day.beginning,
             frames: day.frames,
-            span_ms: span_ms(day.first, day.last),
+            covered_ms: day.covered_ms,
             silent_ms: day.silent_ms,
             corridors: day
                 .corridors
@@ -187,6 +191,27 @@ impl Review {
             let Some(kind) = kinds.next().filter(|_| self.events.len() > MOST_EVENTS) else { return };
             self.gone.insert(kind);
         }
+    }
+
+    /// At most so many of the events, in order: the most telling kinds, and of equals the first.
+    pub fn most_telling(&self, most: usize) -> Vec<&Event> {
+        let telling = |event: &Event| GO_FIRST.iter().position(|kind| *kind == event.kind);
+        let mut places: Vec<usize> = (0..self.events.len()).collect();
+        places.sort_by_key(|place| std::cmp::Reverse(telling(&self.events[*place])));
+        places.truncate(most);
+        places.sort_unstable();
+        places.into_iter().map(|place| &self.events[place]).collect()
+    }
+
+    /// Part of the time for which there were data, 0 to 1; `None` without any frame.
+    pub fn availability(&self) -> Option<f64> {
+        self.part(self.covered_ms)
+    }
+
+    /// So much time as a part of all of it, 0 to 1; `None` without any.
+    pub fn part(&self, ms: i64) -> Option<f64> {
+        let whole = self.covered_ms + self.silent_ms;
+        (whole > 0).then(|| ms as f64 / whole as f64)
     }
 
     /// Time between the first and the last frame, ms.

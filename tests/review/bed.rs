@@ -58,8 +58,11 @@ impl Bed {
     pub fn file<'a>(&self, name: &str, lines: impl IntoIterator<Item = &'a String>) -> PathBuf {
         let text: String = lines.into_iter().map(String::as_str).collect();
         let path = self.path(name);
-        let bytes =
-            if name.ends_with(".zst") { zstd::encode_all(text.as_bytes(), 3).unwrap() } else { text.into_bytes() };
+        let bytes = if path.extension().is_some_and(|ending| ending == "zst") {
+            zstd::encode_all(text.as_bytes(), 3).unwrap()
+        } else {
+            text.into_bytes()
+        };
         fs::File::create(&path).unwrap().write_all(&bytes).unwrap();
         path
     }

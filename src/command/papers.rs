@@ -1,0 +1,64 @@
+//! Where a review is written.
+
+use std::{
+    fs::File,
+    io::{self, BufWriter, ErrorKind, Write, stdout},
+    path::{Path, PathBuf},
+};
+
+use clap::Args;
+
+use super::Failure;
+use crate::report::review::{Paper, csv, html, json, text};
+
+/// Options on where a review goes. Each file may be -, standard output, which otherwise gets it as text.
+#[derive(Debug, Args)]
+pub(super) struct Papers {
+    /// Write it as one self-contained page with plots
+    #[arg(long, value_name = "FILE")]
+    html: Option<PathBuf>,
+    /// Write everything as one JSON object
+    #[arg(long, value_name = "FILE")]
+    json: Option<PathBuf>,
+    /// Write one row for each corridor and day, for a spreadsheet
+    #[arg(long, value_name = "FILE")]
+    csv: Option<PathBuf>,
+}
+
+type Writing = fn(&Paper, &mut dyn Write) -> io::Result<()>;
+
+impl Papers {
+    pub fn write(&self, paper: &Paper) -> Result<(), Failure> {
+        let formats: [(&Option<PathBuf>, Writing); 3] = [
+            (&self.html, |paper, to| html::write(paper, to)),
+            (&self.json, |paper, to| json::write(paper, to)),
+            (&self.csv, |paper, to| csv::write(paper, to)),
+        ];
+        let mut wanted: Vec<(&Path, Writing)> =
+            formats.iter().filter_map(|(path, write)| Some((path.as_deref()?, *write))).collect();
+        if !wanted.iter().any(|(path, _)| is_stdout(path)) {
+            wanted.push((Path::new("-"), |paper, to| text::write(paper, to)));
+        }
+        if wanted.iter().filter(|(path, _)| is_stdout(path)).count() > 1 {
+            return Err("standard output can take only one of --html, --json and --csv".into());
+        }
+        for (path, write) in wanted {
+            let to = |to: &mut dyn Write| write(paper, to).and_then(|()| to.flush());
+            let written = if is_stdout(path) {
+                to(&mut BufWriter::new(stdout().lock()))
+            } else {
+                File::create(path).and_then(|file| to(&mut BufWriter::new(file)))
+            };
+            match written {
+                // Nobody reads on.
+                Err(error) if error.kind() == ErrorKind::BrokenPipe && is_stdout(path) => {}
+                written => written.map_err(|error| format!("cannot write {}: {error}", path.display()))?,
+            }
+        }
+        Ok(())
+    }
+}
+
+fn is_stdout(path: &Path) -> bool {
+    path == Path::new("-")
+}

@@ -1,0 +1,67 @@
+//! A table of every assessment for each reviewed day, where one is wanted.
+
+use std::{
+    io,
+    path::{Path, PathBuf},
+};
+
+use chrono::NaiveDate;
+
+use super::{Failure, review::make};
+use crate::{
+    report::parquet::{Columns, Error, ParquetFile},
+    review::{Output, Task},
+};
+
+pub(super) struct Tables {
+    folder: Option<PathBuf>,
+    corridors: usize,
+    compared: bool,
+}
+
+impl Tables {
+    /// In a folder, which is made; or nowhere.
+    pub fn new(folder: Option<&Path>, task: &Task) -> Result<Self, Failure> {
+        folder.map_or(Ok(()), make)?;
+        Ok(Self {
+            folder: folder.map(Path::to_owned),
+            corridors: task.config.grid.corridors.len(),
+            compared: task.alternatives.iter().any(Option::is_some),
+        })
+    }
+
+    fn path(&self, date: NaiveDate) -> Option<PathBuf> {
+        Some(self.folder.as_ref()?.join(format!("{date}.parquet")))
+    }
+
+    /// Whether nothing more is wanted of a day.
+    pub fn has(&self, date: NaiveDate) -> bool {
+        self.path(date).is_none_or(|path| path.exists())
+    }
+}
+
+impl Output for Tables {
+    type Rows = Option<Columns>;
+    type Book = Option<ParquetFile>;
+
+    fn open(&self, date: NaiveDate) -> io::Result<(Self::Book, Vec<Self::Rows>)> {
+        let file = self.path(date).map(|path| ParquetFile::create(&path, self.compared)).transpose();
+        let rows = || self.folder.as_ref().map(|_| Columns::new(self.compared));
+        Ok((file.map_err(failed)?, (0..self.corridors).map(|_| rows()).collect()))
+    }
+
+    fn turn(&self, book: &mut Self::Book, rows: &mut Self::Rows, is_last: bool) -> io::Result<()> {
+        match (book, rows) {
+            (Some(file), Some(rows)) if is_last || rows.is_full() => file.write(rows).map_err(failed),
+            _ => Ok(()),
+        }
+    }
+
+    fn close(&self, book: Self::Book) -> io::Result<()> {
+        book.map_or(Ok(()), ParquetFile::finish).map_err(failed)
+    }
+}
+
+fn failed(error: Error) -> io::Error {
+    io::Error::other(error)
+}

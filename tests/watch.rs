@@ -150,7 +150,7 @@ fn a_killed_watch_has_recorded_every_frame() {
     let mut assess = Command::new(env!("CARGO_BIN_EXE_tautline"));
     let output = assess.args(["assess", "--config"]).arg(desk.path("grid.toml")).arg(&file).output().unwrap();
     assert!(output.status.success() && output.stderr.is_empty(), "{}", String::from_utf8_lossy(&output.stderr));
-    assert_eq!(output.stdout.iter().filter(|byte| **byte == b'\n').count(), desk.frames.len());
+    assert_eq!(str::from_utf8(&output.stdout).unwrap().lines().count(), desk.frames.len());
 }
 
 #[test]

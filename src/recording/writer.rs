@@ -157,7 +157,9 @@ impl<D: Disk> Writer<D> {
                 self.file = Some(file);
                 let mut status = self.gauge.lock();
                 status.file = Some(self.disk.path(day));
-                repaired.into_iter().for_each(|repaired| status.tell(repaired));
+                if let Some(repaired) = repaired {
+                    status.tell(repaired);
+                }
                 drop(status);
                 self.judge(Ok(()));
                 self.prune();

@@ -97,7 +97,9 @@ impl Station {
         let channels = Arc::new(Channels::new(&config));
         let mut desk = Desk::detailed(&config, &channels);
         for (corridor, memory) in desk.corridors.iter_mut().zip(kept.0) {
-            memory.iter().for_each(|memory| corridor.learner_mut().recall(memory).unwrap());
+            if let Some(memory) = memory {
+                corridor.learner_mut().recall(&memory).unwrap();
+            }
         }
         let mut board = Board::new(&config);
         board.restore(kept.1);
@@ -133,7 +135,9 @@ impl Station {
     }
 
     pub fn record(&mut self, act: Act) {
-        self.recorder.iter_mut().for_each(|recorder| recorder.act([act.clone()]));
+        if let Some(recorder) = &mut self.recorder {
+            recorder.act([act]);
+        }
     }
 
     pub fn reconfigure(&mut self, text: &str) {

@@ -1,14 +1,20 @@
 //! What a recording says besides frames: strange, broken and hostile.
 
-use std::{fs, path::Path};
+use std::{
+    fs,
+    path::{Path, PathBuf},
+    sync::Arc,
+};
 
 use serde_json::{Value, json};
 use tautline::{
     alarm::State,
     drill::{Invention, Scenario},
+    feed::Channels,
+    recording::Recorder,
 };
 
-use super::bed::{INVENTION, Station, frames, invented, parse, replayed};
+use super::bed::{INVENTION, Seen, Station, frames, invented, parse, replayed};
 
 const SHORT: Invention = Invention { hours: 3.0, ..INVENTION };
 
@@ -22,10 +28,10 @@ fn recorded() -> (Vec<Value>, Vec<u8>, String) {
         if !begun && frame.time.format("%H").to_string() == "01" {
             begun = true;
             let config = parse(&text);
-            let channels = std::sync::Arc::new(tautline::feed::Channels::new(&config));
-            let recorder = tautline::recording::Recorder::open(place.path(), &config, &text, &channels);
+            let channels = Arc::new(Channels::new(&config));
+            let recorder = Recorder::open(place.path(), &config, &text, &channels);
             station.recorder = Some(recorder.unwrap());
-            station.seen = Default::default();
+            station.seen = Seen::default();
         }
         station.take(&frame);
     }
@@ -35,9 +41,15 @@ fn recorded() -> (Vec<Value>, Vec<u8>, String) {
     (lines.lines().map(|line| serde_json::from_str(line).unwrap()).collect(), records, text)
 }
 
-fn replay(place: &Path, lines: &[Value], text: &str) -> (Vec<u8>, String) {
+fn written(place: &Path, lines: &[Value]) -> PathBuf {
     let path = place.join("day.jsonl");
-    fs::write(&path, lines.iter().map(|line| format!("{line}\n")).collect::<String>()).unwrap();
+    let lines: Vec<_> = lines.iter().map(Value::to_string).collect();
+    fs::write(&path, lines.join("\n")).unwrap();
+    path
+}
+
+fn replay(place: &Path, lines: &[Value], text: &str) -> (Vec<u8>, String) {
+    let path = written(place, lines);
     let (seen, findings) = replayed(&[&path], text);
     (seen.records.into_iter().flat_map(|(_, record)| record).collect(), findings.join("\n"))
 }
@@ -110,7 +122,7 @@ fn no_number_of_a_start_can_do_harm() {
         let evil = [json!(-1e15), json!(1e15), json!(0), json!(4e9), json!(-3), json!("x"), json!(null)];
         *lines[0].pointer_mut(at).unwrap() = evil[n % evil.len()].clone();
         let (records, _) = replay(place.path(), &lines, &text);
-        assert_eq!(records.iter().filter(|byte| **byte == b'\n').count(), 80, "{at}");
+        assert_eq!(records.split(|byte| *byte == b'\n').count(), 81, "{at}");
     }
 }
 
@@ -121,7 +133,9 @@ fn gather(value: &Value, at: &str, numbers: &mut Vec<String>) {
             values.iter().enumerate().for_each(|(n, value)| gather(value, &format!("{at}/{n}"), numbers));
         }
         Value::Object(members) => {
-            members.iter().for_each(|(name, value)| gather(value, &format!("{at}/{name}"), numbers))
+            for (name, value) in members {
+                gather(value, &format!("{at}/{name}"), numbers);
+            }
         }
         _ => {}
     }
@@ -147,8 +161,7 @@ fn alarms_of_other_names_kinds_and_texts() {
         {"time": "+90000-03-14T01:00:10Z", "deed": "silence"},
         "\u{1b}[31m", 7,
     ]});
-    let path = place.path().join("day.jsonl");
-    fs::write(&path, lines.iter().map(|line| format!("{line}\n")).collect::<String>()).unwrap();
+    let path = written(place.path(), &lines);
     let (seen, findings) = replayed(&[&path], &text);
     let findings = findings.join("\n");
     // Four acts make no sense, and one alarm is gone.

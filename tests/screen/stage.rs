@@ -86,6 +86,7 @@ fn feed() -> FeedReport {
             standing: "reading, 7200 frames".into(),
             findings: vec!["3 malformed lines skipped".into()],
         }],
+        recorded: None,
         kept: Some(InputReport {
             name: "grid.learned.json".into(),
             standing: "written 06:58:20 UTC".into(),

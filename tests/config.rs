@@ -6,7 +6,9 @@ use assert_cmd::cargo::cargo_bin_cmd;
 use nalgebra::Complex;
 use proptest::prelude::*;
 use tautline::{
-    config::{Config, ConfigErrors, FeedSettings, LearningSettings, MeasurementSettings, ScreenSettings},
+    config::{
+        Config, ConfigErrors, FeedSettings, LearningSettings, MeasurementSettings, RecordingSettings, ScreenSettings,
+    },
     grid::{
         BankIndex, CombinedOutage, ConfiguredSource, FROM, Fault, FaultKind, Line, Load, Requirements, Side,
         SynchronismCheck, TO,
@@ -70,6 +72,7 @@ fn bundled_configurations_are_read() {
     assert_eq!(reference.measurement, MeasurementSettings::default());
     assert_eq!(reference.learning, LearningSettings::default());
     assert_eq!(reference.screen, ScreenSettings::default());
+    assert_eq!(reference.recording.flush_s.to_bits(), RecordingSettings::default().flush_s.to_bits());
     assert_eq!(reference.feed, FeedSettings { inputs: reference.feed.inputs.clone(), ..FeedSettings::default() });
     Config::load("config/demo.toml".as_ref()).unwrap_or_else(|errors| panic!("{errors}"));
 }
@@ -110,6 +113,8 @@ fn every_key_is_read() {
     };
     assert_eq!(config.learning, learning);
     assert_eq!(config.state_file.as_deref(), Some("kept/grid.json"));
+    let (folder, keep_days, keep_gb) = (Some("days".into()), Some(30.0), Some(2.5));
+    assert_eq!(config.recording, RecordingSettings { folder, flush_s: 5.0, keep_days, keep_gb });
 
     let corridor = &config.grid.corridors[0];
     assert_eq!((&*corridor.name, corridor.thin_mw), ("Skarn-Velm", 150.0));

@@ -10,6 +10,8 @@ use std::{
     net::{TcpListener, TcpStream},
     path::{Path, PathBuf},
     process::Command,
+    thread,
+    time::Duration,
 };
 
 use flate2::read::GzDecoder;
@@ -96,6 +98,59 @@ fn what_was_learned_is_there_after_a_restart() {
     let later = steps(&kept);
     assert!((0..2).all(|side| (learned[side]..learned[side] + 3).contains(&later[side])), "{learned:?} {later:?}");
     assert_eq!(fs::read_dir(desk.folder.path()).unwrap().count(), 3, "only the journal is beside them");
+}
+
+/// Lines of a recorded day, also of one that was not ended.
+fn recorded(path: &Path) -> Vec<String> {
+    let (mut reader, mut bytes, mut chunk) =
+        (zstd::Decoder::new(File::open(path).unwrap()).unwrap(), Vec::new(), [0; 4096]);
+    while let Ok(count @ 1..) = reader.read(&mut chunk) {
+        bytes.extend_from_slice(&chunk[..count]);
+    }
+    let whole = bytes.iter().rposition(|byte| *byte == b'\n').map_or(0, |end| end + 1);
+    str::from_utf8(&bytes[..whole]).unwrap().lines().map(str::to_owned).collect()
+}
+
+/// Numbers by channel.
+fn values(lines: &[String]) -> Vec<Vec<(String, Option<f64>)>> {
+    let object = |line: &String| serde_json::from_str::<Value>(line).unwrap()["values"].as_object().unwrap().clone();
+    lines.iter().map(|line| object(line).into_iter().map(|(name, value)| (name, value.as_f64())).collect()).collect()
+}
+
+#[test]
+fn a_killed_watch_has_recorded_every_frame() {
+    let desk = Desk::new();
+    let config = fs::read_to_string(desk.path("grid.toml")).unwrap();
+    fs::write(desk.path("grid.toml"), config + "\n[recording]\nfolder = \"days\"\nflush_s = 0.2\n").unwrap();
+    let time: Value = serde_json::from_str(&desk.frames[0]).unwrap();
+    let file = desk.path("days").join(format!("{}.jsonl.zst", &time["time"].as_str().unwrap()[..10]));
+    let mut stage = desk.watch(&[]);
+    let stream = desk.send(&mut stage, false);
+    let mut other = desk.watch(&["--record", desk.path("days").to_str().unwrap()]);
+    other.wait_for("already does");
+    assert_eq!(other.wait_for_end().code(), Some(2));
+    // Far more than the flush interval.
+    thread::sleep(Duration::from_secs(2));
+    stage.child.kill().unwrap();
+    stage.wait_for_end();
+    drop(stream);
+    let lines = recorded(&file);
+    assert!(values(&lines) == values(&desk.frames[..FRAMES]), "{} lines", lines.len());
+
+    let mut stage = desk.watch(&[]);
+    let _stream = desk.send(&mut stage, true);
+    stage.press("m");
+    stage.wait_for_redrawn("unfinished");
+    stage.press("q");
+    assert!(stage.wait_for_end().success());
+    let lines = recorded(&file);
+    assert!(values(&lines) == values(&desk.frames), "{} lines", lines.len());
+    let starts: Vec<_> = lines.iter().map(|line| line.contains("\"start\":{")).collect();
+    assert!(starts[0] && starts[FRAMES] && starts.iter().filter(|start| **start).count() == 2);
+    let mut assess = Command::new(env!("CARGO_BIN_EXE_tautline"));
+    let output = assess.args(["assess", "--config"]).arg(desk.path("grid.toml")).arg(&file).output().unwrap();
+    assert!(output.status.success() && output.stderr.is_empty(), "{}", String::from_utf8_lossy(&output.stderr));
+    assert_eq!(str::from_utf8(&output.stdout).unwrap().lines().count(), desk.frames.len());
 }
 
 #[test]

@@ -76,10 +76,9 @@ impl CorridorBoard {
                 same.map_or_else(Default::default, |kept| (kept.standing.shown(), kept.condition, kept.suppressed));
             (alarm.standing, alarm.condition, alarm.suppressed) = (standing, condition, suppressed);
         }
-        let gone = memory.alarms.iter().filter(|(_, kept)| kept.standing.state != State::Normal);
-        gone.for_each(|(name, _)| {
-            start.doubt(&self.corridor, &format!("alarm {name}: there is none of that name here"))
-        });
+        for (name, _) in memory.alarms.iter().filter(|(_, kept)| kept.standing.state != State::Normal) {
+            start.doubt(&self.corridor, &format!("alarm {name}: there is none of that name here"));
+        }
     }
 
     /// Does what was done; what is not possible here is left.

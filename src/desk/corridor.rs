@@ -180,6 +180,9 @@ impl CorridorDesk {
         let is_same = start.config().is_some_and(|config| {
             Settings::of(config) == self.settings && config.grid.corridors.contains(&*self.corridor)
         });
+        if !is_same {
+            start.doubt(&name, &"recorded under another configuration; what was learned of other sources begins anew");
+        }
         let resumed = if is_same { self.learner.resume(learner) } else { self.begin_anew(&learner) };
         if let Err(error) = resumed {
             start.doubt(&name, &error);

@@ -19,6 +19,7 @@ pub(crate) fn deserialize<'de, D: Deserializer<'de>>(deserializer: D) -> Result<
 pub(crate) mod optional {
     use super::{DateTime, Deserialize, Deserializer, Error, Serializer, Utc};
 
+    #[allow(clippy::ref_option, reason = "serde calls it so")]
     pub(crate) fn serialize<S: Serializer>(time: &Option<DateTime<Utc>>, serializer: S) -> Result<S::Ok, S::Error> {
         match time {
             Some(time) => super::serialize(time, serializer),

@@ -18,11 +18,14 @@ const SIGNIFICANCE: f64 = 2.576;
 /// A slope over ten minutes says nothing about the day after.
 const LONGEST_MINUTES: f64 = 720.0;
 
+/// A headroom, MW, and when it was.
+type Sample = (DateTime<Utc>, f64);
+
 /// The headroom's course over the last ten minutes.
 #[derive(Debug, Clone, Default, Serialize, Deserialize)]
 #[serde(try_from = "Course")]
 pub struct Trend {
-    samples: VecDeque<(DateTime<Utc>, f64)>,
+    samples: VecDeque<Sample>,
     #[serde(skip)]
     slopes: Vec<f64>,
     #[serde(skip)]
@@ -32,15 +35,15 @@ pub struct Trend {
 /// What of a trend is kept.
 #[derive(Deserialize)]
 struct Course {
-    samples: VecDeque<(DateTime<Utc>, f64)>,
+    samples: VecDeque<Sample>,
 }
 
 impl TryFrom<Course> for Trend {
     type Error = &'static str;
 
     fn try_from(Course { samples }: Course) -> Result<Self, Self::Error> {
-        let apart = |((earlier, _), (later, _)): (&(DateTime<Utc>, f64), &(DateTime<Utc>, f64))| earlier < later;
-        if samples.len() > MOST_SAMPLES || !samples.iter().zip(samples.iter().skip(1)).all(apart) {
+        let ascends = samples.iter().zip(samples.iter().skip(1)).all(|(earlier, later)| earlier.0 < later.0);
+        if samples.len() > MOST_SAMPLES || !ascends {
             return Err("no course that a headroom can have taken");
         }
         let mut trend = Self { samples, ..Self::default() };

@@ -53,11 +53,11 @@ pub(super) fn settle(path: &Path) -> io::Result<Settled> {
     let Some(flaw) = extent.flaw else { return Ok(Settled { latest, repaired: None }) };
     let beside = path.with_extension("zst.new");
     extent.write(path, &beside)?;
-    let mut repaired = format!("{}: an unfinished end was taken off", path.display());
+    let name = |path: &Path| path.file_name().unwrap_or_default().to_string_lossy().into_owned();
+    let mut repaired = format!("an unfinished end of {} was taken off", name(path));
     if flaw == Flaw::Damaged {
         let kept = keep_as_it_was(path)?;
-        repaired =
-            format!("{}: damaged; what could be read is kept, and the file is {}", path.display(), kept.display());
+        repaired = format!("{} was damaged; what could be read is kept, the rest is in {}", name(path), name(&kept));
     }
     fs::rename(&beside, path)?;
     if let Some(folder) = path.parent().filter(|folder| !folder.as_os_str().is_empty()) {
@@ -145,5 +145,97 @@ impl Extent {
         }
         out.flush()?;
         out.get_ref().sync_all()
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use std::{collections::BTreeSet, fmt::Write as _};
+
+    use chrono::TimeDelta;
+
+    use super::*;
+    use crate::recording::day_file::DayFile;
+
+    fn time(second: i64) -> DateTime<Utc> {
+        DateTime::UNIX_EPOCH + TimeDelta::seconds(second)
+    }
+
+    fn line(second: i64) -> String {
+        let mut line = format!("{{\"time\":\"{}\",\"values\":{{", stamp::text(&time(second)));
+        for n in 0..20 {
+            let _ = write!(line, "\"{n}\":{},", (second * 7919 + n * 104_729) % 99_991);
+        }
+        line + "\"x\":1}}\n"
+    }
+
+    /// Three zstd frames of a few lines, the last of which is flushed twice and not ended; what is in it after each flush.
+    fn recorded(path: &Path) -> Vec<(usize, i64)> {
+        let mut flushed = Vec::new();
+        let (mut file, _) = DayFile::open(path).unwrap();
+        for second in 0..40 {
+            file.take(line(second).as_bytes(), time(second)).unwrap();
+            if second % 5 == 4 {
+                if second == 14 || second == 29 { file.end() } else { file.flush() }.unwrap();
+                flushed.push((fs::metadata(path).unwrap().len().try_into().unwrap(), second + 1));
+            }
+        }
+        flushed
+    }
+
+    fn read(path: &Path) -> String {
+        String::from_utf8(zstd::decode_all(File::open(path).unwrap()).unwrap()).unwrap()
+    }
+
+    #[test]
+    fn cut_anywhere_it_keeps_what_was_flushed_and_goes_on() {
+        let place = tempfile::tempdir().unwrap();
+        let path = place.path().join("2031-03-14.jsonl.zst");
+        let flushed = recorded(&path);
+        let whole = fs::read(&path).unwrap();
+        let mut unfinished = 0;
+        // At and about every flush, and now and then between.
+        let about = flushed.iter().flat_map(|(bytes, _)| bytes - 2..bytes + 3);
+        let cuts: BTreeSet<_> = (0..40).chain((0..whole.len()).step_by(41)).chain(about).collect();
+        for &cut in cuts.iter().filter(|cut| **cut <= whole.len()) {
+            fs::write(&path, &whole[..cut]).unwrap();
+            let (mut file, repaired) = DayFile::open(&path).unwrap_or_else(|error| panic!("{cut}: {error}"));
+            unfinished += usize::from(repaired.is_some());
+            let least = flushed.iter().rev().find(|(bytes, _)| *bytes <= cut).map_or(0, |(_, lines)| *lines);
+            let kept = file.latest.map_or(0, |latest| (latest - time(0)).num_seconds() + 1);
+            assert!(kept >= least, "cut at {cut}: {kept} of {least} lines");
+            file.take(line(kept).as_bytes(), time(kept)).unwrap();
+            file.end().unwrap();
+            let expected: String = (0..=kept).map(line).collect();
+            assert!(read(&path) == expected, "cut at {cut}");
+        }
+        assert!(unfinished > cuts.len() / 2 && unfinished < cuts.len());
+        assert_eq!(fs::read_dir(place.path()).unwrap().count(), 1, "an unfinished end is no damage");
+    }
+
+    #[test]
+    fn what_is_damaged_is_also_kept_as_it_was() {
+        let place = tempfile::tempdir().unwrap();
+        let path = place.path().join("2031-03-14.jsonl.zst");
+        let flushed = recorded(&path);
+        let whole = fs::read(&path).unwrap();
+        let first_ends = flushed[2].0;
+        let mut other = whole.clone();
+        other[first_ends + 60] ^= 0x55;
+        for (n, damaged) in
+            [other, [&whole[..first_ends], &[0; 100][..]].concat(), [&whole[..first_ends], b"no zstd at all"].concat()]
+                .into_iter()
+                .enumerate()
+        {
+            fs::write(&path, &damaged).unwrap();
+            let settled = settle(&path).unwrap();
+            let (lines, kept) = (read(&path), path.with_extension(format!("zst.damaged-{}", n + 1)));
+            assert!(settled.latest >= Some(time(14)), "{:?}", settled.latest);
+            assert!(
+                (0..30).map(line).collect::<String>().starts_with(&lines) && lines.len() >= 15 * line(0).len() - 99
+            );
+            assert!(fs::read(&kept).unwrap() == damaged, "{}", kept.display());
+            assert!(settled.repaired.unwrap().contains("damaged"));
+        }
     }
 }

@@ -35,6 +35,8 @@ pub struct Status {
     pub file: Option<PathBuf>,
     /// Frames taken for the recording.
     pub recorded: u64,
+    /// Of these, those that are on the disk.
+    pub on_disk: u64,
     /// Frames that are not in it.
     pub lost: u64,
     /// Why it cannot be written at present.
@@ -155,7 +157,9 @@ impl<D: Disk> Writer<D> {
                 self.file = Some(file);
                 let mut status = self.gauge.lock();
                 status.file = Some(self.disk.path(day));
-                repaired.into_iter().for_each(|repaired| status.tell(repaired));
+                if let Some(repaired) = repaired {
+                    status.tell(repaired);
+                }
                 drop(status);
                 self.judge(Ok(()));
                 self.prune();
@@ -169,6 +173,11 @@ impl<D: Disk> Writer<D> {
         match &mut self.file {
             Some(file) => {
                 let outcome = file.flush();
+                let mut status = self.gauge.lock();
+                if outcome.is_ok() {
+                    status.on_disk = status.recorded;
+                }
+                drop(status);
                 self.judge(outcome);
             }
             None => self.open(),
@@ -212,5 +221,150 @@ impl<D: Disk> Writer<D> {
             _ => {}
         }
         status.trouble = trouble;
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use std::sync::atomic::{AtomicBool, AtomicUsize, Ordering};
+
+    use chrono::TimeDelta;
+
+    use super::*;
+    use crate::recording::day_file::Sink;
+
+    /// A disk with room for so many bytes, and a folder that can be opened or not.
+    #[derive(Clone, Default)]
+    struct Small {
+        room: Arc<AtomicUsize>,
+        closed: Arc<AtomicBool>,
+        bytes: Arc<Mutex<Vec<u8>>>,
+    }
+
+    impl Sink for Small {
+        fn append(&mut self, bytes: &[u8]) -> io::Result<usize> {
+            let count = bytes.len().min(self.room.load(Ordering::Relaxed));
+            if count == 0 {
+                return Err(io::ErrorKind::StorageFull.into());
+            }
+            self.room.fetch_sub(count, Ordering::Relaxed);
+            self.bytes.lock().unwrap().extend(&bytes[..count]);
+            Ok(count)
+        }
+
+        fn sync(&mut self) -> io::Result<()> {
+            Ok(())
+        }
+    }
+
+    impl Disk for Small {
+        fn open(&mut self, _: NaiveDate) -> io::Result<(DayFile, Option<String>)> {
+            if self.closed.load(Ordering::Relaxed) {
+                return Err(io::ErrorKind::ReadOnlyFilesystem.into());
+            }
+            Ok((DayFile::new(Box::new(self.clone())), None))
+        }
+
+        fn path(&self, day: NaiveDate) -> PathBuf {
+            day.to_string().into()
+        }
+
+        fn prune(&mut self, _: NaiveDate) -> Vec<NaiveDate> {
+            Vec::new()
+        }
+    }
+
+    impl Small {
+        fn lines(&self) -> Vec<String> {
+            let bytes = self.bytes.lock().unwrap();
+            let text = String::from_utf8(zstd::decode_all(&bytes[..]).unwrap()).unwrap();
+            text.lines().map(|line| line.split(' ').next().unwrap().to_owned()).collect()
+        }
+    }
+
+    /// Hard to compress.
+    fn line(number: u64, is_start: bool, length: usize) -> Line {
+        let mut state = number + 1;
+        let mut noise = || {
+            state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+            char::from(b'a' + u8::try_from((state >> 33) % 26).unwrap())
+        };
+        let noise: String = (0..length).map(|_| noise()).collect();
+        let time = DateTime::UNIX_EPOCH + TimeDelta::seconds(number.try_into().unwrap());
+        Line { number, time, is_start, text: format!("{number} {noise}\n").into_bytes() }
+    }
+
+    fn writer(disk: &Small) -> (Writer<Small>, Gauge) {
+        let gauge = Gauge::default();
+        (Writer::new(disk.clone(), gauge.clone(), Duration::ZERO), gauge)
+    }
+
+    #[test]
+    fn a_disk_that_is_full_for_a_while_loses_nothing() {
+        let disk = Small::default();
+        let (mut writer, gauge) = writer(&disk);
+        disk.room.store(5000, Ordering::Relaxed);
+        for number in 0..20 {
+            writer.take(&line(number, number == 0, 1000));
+            writer.flush();
+            assert_eq!(gauge.lock().trouble.is_some(), number >= 7, "{number}");
+        }
+        disk.room.store(100_000, Ordering::Relaxed);
+        writer.flush();
+        assert_eq!(gauge.lock().trouble, None);
+        writer.close();
+        assert_eq!(disk.lines(), (0..20).map(|n| n.to_string()).collect::<Vec<_>>());
+        let status = gauge.lock();
+        assert_eq!((status.recorded, status.lost, status.wants_start), (20, 0, false));
+        assert_eq!(status.news.len(), 2, "{:?}", status.news);
+    }
+
+    #[test]
+    fn what_does_not_fit_is_counted_and_it_goes_on_with_a_start() {
+        let disk = Small::default();
+        let (mut writer, gauge) = writer(&disk);
+        for number in 0..30 {
+            writer.take(&line(number, number == 0, 1 << 20));
+            writer.flush();
+        }
+        let lost = gauge.lock().lost;
+        assert!((5..25).contains(&lost) && !gauge.lock().wants_start, "{lost}");
+        disk.room.store(100 << 20, Ordering::Relaxed);
+        writer.flush();
+        assert!(gauge.lock().wants_start && gauge.lock().trouble.is_none());
+        writer.take(&line(30, false, 10));
+        writer.take(&line(31, true, 10));
+        writer.take(&line(32, false, 10));
+        // One that was lost on its way.
+        writer.take(&line(34, false, 10));
+        writer.take(&line(35, true, 10));
+        writer.close();
+        let held = 30 - lost;
+        let expected: Vec<_> = (0..held).chain([31, 32, 35]).map(|n| n.to_string()).collect();
+        assert_eq!(disk.lines(), expected);
+        assert_eq!(gauge.lock().lost, lost + 2);
+    }
+
+    #[test]
+    fn a_folder_that_cannot_be_written_is_tried_again() {
+        let disk = Small::default();
+        disk.closed.store(true, Ordering::Relaxed);
+        disk.room.store(1 << 20, Ordering::Relaxed);
+        let (mut writer, gauge) = writer(&disk);
+        writer.take(&line(0, true, 10));
+        writer.take(&line(1, false, 10));
+        writer.flush();
+        let status = gauge.lock().clone();
+        assert!(status.trouble.is_some_and(|trouble| trouble.contains("read-only")) && status.lost == 2);
+        disk.closed.store(false, Ordering::Relaxed);
+        writer.flush();
+        assert!(gauge.lock().wants_start);
+        writer.take(&line(2, true, 10));
+        // Time must not go back within a file.
+        writer.take(&Line { time: DateTime::UNIX_EPOCH, ..line(3, true, 10) });
+        writer.take(&line(4, true, 10));
+        writer.close();
+        assert_eq!(disk.lines(), ["2", "4"]);
+        assert_eq!(gauge.lock().lost, 3);
     }
 }

@@ -116,7 +116,7 @@ impl Detector {
     /// Whether it is one that these settings can lead to.
     pub(super) fn is_possible(&self, settings: &LearningSettings) -> bool {
         let new = Self::new(settings);
-        let own = |detector: &Self| [detector.window_s, detector.gap_s, detector.threshold, detector.bin_s];
+        let own = |it: &Self| [it.window_s, it.gap_s, it.threshold, it.bin_s].map(f64::to_bits);
         own(self) == own(&new)
             && self.recent.is_possible()
             && self.open.as_ref().is_none_or(Bin::is_possible)

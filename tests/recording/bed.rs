@@ -57,10 +57,16 @@ pub fn parse(text: &str) -> Config {
     Config::parse(text, "bed.toml").unwrap_or_else(|errors| panic!("{errors}"))
 }
 
-/// The frames of a scenario, with the channels of a configuration that it was read for.
+/// The frames of a scenario, with the channels of a configuration that it was read for. Statuses are told when they change.
 pub fn frames(text: &str, scenario: &Scenario) -> impl Iterator<Item = Frame> {
     let config = parse(text);
-    Drill::new(&config, &Channels::new(&config), scenario)
+    let channels = Channels::new(&config);
+    let mut told = vec![None; channels.len()];
+    Drill::new(&config, &channels, scenario).map(move |mut frame| {
+        let mut is_news = |slot: usize, value: f64| told[slot].replace(value) != Some(value);
+        frame.readings.retain(|(slot, reading)| is_news(*slot, reading.value) || !channels.is_status(*slot));
+        frame
+    })
 }
 
 /// What was learned, and how the alarms stood, over a restart.
@@ -72,7 +78,7 @@ pub struct Station {
     holder: Holder,
     pub desk: Desk,
     pub board: Board,
-    pub recorder: Recorder,
+    pub recorder: Option<Recorder>,
     pub now: Option<DateTime<Utc>>,
     config: Config,
     pub seen: Seen,
@@ -86,23 +92,25 @@ pub struct Seen {
 }
 
 impl Station {
-    pub fn begin(folder: &Path, text: &str, kept: Kept) -> Self {
+    pub fn begin(folder: Option<&Path>, text: &str, kept: Kept) -> Self {
         let config = parse(text);
         let channels = Arc::new(Channels::new(&config));
         let mut desk = Desk::detailed(&config, &channels);
         for (corridor, memory) in desk.corridors.iter_mut().zip(kept.0) {
-            memory.iter().for_each(|memory| corridor.learner_mut().recall(memory).unwrap());
+            if let Some(memory) = memory {
+                corridor.learner_mut().recall(&memory).unwrap();
+            }
         }
         let mut board = Board::new(&config);
         board.restore(kept.1);
-        let recorder = Recorder::open(folder, &config, text, &channels).unwrap();
+        let recorder = folder.map(|folder| Recorder::open(folder, &config, text, &channels).unwrap());
         let holder = Holder::new(&channels, config.feed.max_age());
         Self { channels, holder, desk, board, recorder, now: None, config, seen: Seen::default() }
     }
 
     pub fn take(&mut self, frame: &Frame) {
         let now = Present { holder: &self.holder, desk: &self.desk, board: &self.board };
-        let frame = self.recorder.take(frame, &now);
+        let frame = self.recorder.as_mut().map_or_else(|| frame.clone(), |recorder| recorder.take(frame, &now));
         self.now = Some(frame.time);
         let Some(snapshot) = self.holder.take(&frame) else { return };
         snapshot.start().into_iter().for_each(|start| self.board.begin(start));
@@ -120,10 +128,16 @@ impl Station {
         let now = self.now.unwrap() + TimeDelta::seconds(seconds);
         let transitions = self.board.elapse(now);
         if !transitions.is_empty() {
-            self.recorder.act([Act { time: now, by: None, deed: Deed::Silence }]);
+            self.record(Act { time: now, by: None, deed: Deed::Silence });
         }
         self.seen.transitions.extend(transitions);
         self.now = Some(now);
+    }
+
+    pub fn record(&mut self, act: Act) {
+        if let Some(recorder) = &mut self.recorder {
+            recorder.act([act]);
+        }
     }
 
     pub fn reconfigure(&mut self, text: &str) {
@@ -133,7 +147,7 @@ impl Station {
         let desk = std::mem::replace(&mut self.desk, Desk { corridors: Vec::new() });
         self.desk = desk.reconfigured(&self.config, &after, &self.channels);
         self.board.reconfigure(&after, self.now.unwrap());
-        self.recorder.reconfigure(&after, text, &self.channels);
+        self.recorder.iter_mut().for_each(|recorder| recorder.reconfigure(&after, text, &self.channels));
         self.config = after;
     }
 
@@ -150,7 +164,7 @@ impl Station {
     }
 
     pub fn end(self) -> (Seen, Status) {
-        (self.seen, self.recorder.end())
+        (self.seen, self.recorder.map_or_else(Status::default, Recorder::end))
     }
 }
 

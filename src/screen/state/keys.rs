@@ -31,7 +31,10 @@ pub const KEYS: [(&str, &[(&str, &str)]); 5] = [
             ("m", "messages"),
             ("A", "hold the present moment as A"),
             ("B", "A beside the present: what changed between them"),
-            ("p", "put on file what is on the screen: j the corridor’s record as JSON, t the page as text, s as SVG"),
+            (
+                "p",
+                "write what is on the screen to a file: j the corridor’s record as JSON, t the page as text, s as SVG",
+            ),
             ("c", "what a changed configuration file would change; Enter there applies it"),
             ("?", "this help"),
             ("q  Ctrl-C", "quit"),

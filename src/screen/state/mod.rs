@@ -29,7 +29,7 @@ pub use jump::Jumps;
 pub use keys::KEYS;
 pub use panel::Panel;
 pub use pointer::{Drawn, Target};
-pub use survey::{Moment, MomentKind, Survey, insert};
+pub use survey::{Moment, MomentKind, Survey};
 
 use super::connection::{Change, Mark, Origin, Parcel, Playback, Setting};
 use crate::{

@@ -126,7 +126,7 @@ impl Survey {
 }
 
 /// Puts a moment where its time says, after those of the same time.
-pub fn insert(moments: &mut Vec<Arc<Moment>>, moment: Moment) {
+pub(super) fn insert(moments: &mut Vec<Arc<Moment>>, moment: Moment) {
     let later = moments.iter().rev().take_while(|other| other.time > moment.time).count();
     moments.insert(moments.len() - later, Arc::new(moment));
 }

@@ -2,8 +2,10 @@
 
 use std::cmp::Reverse;
 
+use chrono::TimeDelta;
 use ratatui::{
     layout::Rect,
+    style::Style,
     text::{Line, Span},
 };
 
@@ -16,7 +18,7 @@ use super::{
     text,
 };
 use crate::{
-    desk::Assessment,
+    desk::{Assessment, State},
     screen::state::{App, Held},
 };
 
@@ -47,7 +49,7 @@ pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
     let row = |row: &Difference, style| {
         columns.line([&row.what, &row.values[0], &row.values[1], &row.change].map(String::as_str), style)
     };
-    lines.extend(differing.iter().map(|different| row(different, ratatui::style::Style::new())));
+    lines.extend(differing.iter().map(|different| row(different, Style::new())));
     lines.push(Line::styled(" unchanged", theme.quiet()));
     lines.extend(same.iter().map(|same| row(same, theme.quiet())));
     lines
@@ -56,7 +58,7 @@ pub fn lines(app: &App, theme: Theme, area: Rect) -> Vec<Line<'static>> {
 fn times(app: &App, held: &Held, now: &Held, theme: Theme) -> Line<'static> {
     let at = |held: &Held| held.time.with_timezone(&app.zone).format("%-d %b %H:%M:%S").to_string();
     let apart = now.time - held.time;
-    let order = if apart < chrono::TimeDelta::zero() { "earlier" } else { "later" };
+    let order = if apart < TimeDelta::zero() { "earlier" } else { "later" };
     let apart =
         if apart.is_zero() { "the same moment".into() } else { format!("{} {order}", figures::duration(apart.abs())) };
     Line::from(vec![
@@ -91,7 +93,7 @@ fn corridors(app: &App, held: &Held, now: &Held, theme: Theme, area: Rect) -> Ve
             Span::raw(cursor(chosen)),
             Span::styled(
                 text::left(&is.corridor, name_width),
-                if chosen { theme.strong() } else { theme.badge(crate::desk::State::Ample) },
+                if chosen { theme.strong() } else { theme.badge(State::Ample) },
             ),
             Span::raw(" "),
             Span::styled(before, theme.badge(was.state)),
@@ -137,7 +139,7 @@ impl Columns {
         Self { what, value: (width.saturating_sub(what + change + 5) / 2).min(34), change }
     }
 
-    fn line(self, cells: [&str; 4], style: ratatui::style::Style) -> Line<'static> {
+    fn line(self, cells: [&str; 4], style: Style) -> Line<'static> {
         let [what, was, is, change] = cells;
         Line::styled(
             format!(

@@ -3,7 +3,7 @@
 use std::sync::Arc;
 
 use super::{
-    Theme, figures,
+    Theme, figures, outages,
     row::{headroom, set_by},
 };
 use crate::{
@@ -73,7 +73,7 @@ pub fn differences(held: &Held, now: &Held, corridor: &str, theme: Theme) -> Opt
     all.push(number("angle between the buses", |a| a.bus_angle_deg, 1));
     all.push(number("between the sources", |a| a.internal_angle_deg, 1));
     all.push(number("in the first swing", |a| a.swing_angle_deg, 1));
-    all.extend(outages(pair));
+    all.extend(each_outage(pair));
     all.extend(sources(pair));
     all.push(Difference::words("set aside", pair.map(|a| listed(&a.fit.suspects))));
     all.push(Difference::words("missing", pair.map(|a| listed(&a.fit.missing))));
@@ -132,20 +132,23 @@ fn alarms(boards: [&Board; 2], corridor: &str) -> Vec<Difference> {
     rows.map(|(name, states)| Difference::words(format!("alarm: {name}"), states.map(word))).collect()
 }
 
-fn outages(pair: [&Assessment; 2]) -> impl Iterator<Item = Difference> {
+fn each_outage(pair: [&Assessment; 2]) -> impl Iterator<Item = Difference> {
     let [one, other] = pair.map(|a| a.outages.iter().map(|outage| outage.name.clone()));
     let found = move |name: &str| pair.map(|a| a.outages.iter().find(|outage| *outage.name == *name));
     union(one, other).into_iter().flat_map(move |name| {
-        let outages = found(&name);
-        let limit = outages.map(|outage| {
+        let both = found(&name);
+        let limit = both.map(|outage| {
             let limit = outage.and_then(smallest);
             (limit.map(|(_, mw)| mw), limit.map_or(String::new(), |(criterion, _)| format!(" {}", criterion.word())))
         });
-        let margin = outages.map(|outage| outage.and_then(|outage| outage.angle_margin_deg));
-        let critical = outages.map(|outage| outage.and_then(|outage| outage.critical_ms));
+        let margin = both.map(|outage| outage.and_then(|outage| outage.angle_margin_deg));
+        let critical = both.map(|outage| outage.and_then(|outage| outage.critical_ms));
         let limit = Difference::numbers(format!("{name} out: limit, MW"), &limit, 0);
         let margin = Difference::plain(format!("{name} out: margin, °"), margin, 1);
-        let clearing = Difference::plain(format!("{name} out: clearing, ms"), critical, 0);
+        let clearing = Difference {
+            values: both.map(|outage| outage.map_or(figures::NONE.into(), outages::critical)),
+            ..Difference::plain(format!("{name} out: clearing, ms"), critical, 0)
+        };
         let has_clearing = critical != [None, None];
         [limit, margin].into_iter().chain(has_clearing.then_some(clearing))
     })

@@ -129,7 +129,8 @@ fn line(
     Line::from(spans)
 }
 
-fn critical(outage: &OutageRecord) -> String {
+/// Critical clearing time, ms; where there is a fault and no such time, it is beyond what is looked at.
+pub fn critical(outage: &OutageRecord) -> String {
     let has_fault = outage.picture.is_some_and(|picture| picture.fault.is_some());
     if outage.critical_ms.is_none() && has_fault && outage.angle_margin_deg.is_some() {
         ">2000".into()

@@ -12,7 +12,7 @@ use tokio::sync::watch;
 
 use super::{Beginning, Recording};
 use crate::{
-    alarm::Board,
+    alarm::{Board, Transition},
     desk::{Assessment, Desk, State},
     events::{Event, Teller, gap, reason},
     feed::{Channels, Holder},
@@ -101,6 +101,9 @@ impl Surveyor {
             if let Some(snapshot) = self.holder.take(&frame) {
                 let assessments = self.desk.assess(&snapshot);
                 self.take(&assessments);
+                let mut transitions = snapshot.aside.as_deref().map_or(Vec::new(), |aside| self.board.take_up(aside));
+                transitions.extend(self.board.observe(&assessments));
+                self.tell(&transitions);
             }
         }
         Ok(())
@@ -124,12 +127,15 @@ impl Surveyor {
         if let Some(worst) = assessments.iter().max_by_key(|assessment| assessment.state.severity()) {
             survey.worst.take(worst.time, worst.state);
         }
-        for transition in self.board.observe(assessments) {
-            let mut moment = Moment::from(Event::of_alarm(&transition));
+    }
+
+    fn tell(&mut self, transitions: &[Transition]) {
+        for transition in transitions {
+            let mut moment = Moment::from(Event::of_alarm(transition));
             if transition.is_annunciated() {
                 moment.kind = MomentKind::Raised(transition.priority);
             }
-            survey.add(moment);
+            self.survey.add(moment);
         }
     }
 

@@ -69,7 +69,9 @@ fn record(criterion: &mut Criterion) {
     let mut station = Station::new();
     let frames = std::mem::take(&mut station.frames);
     let (learned, hour) = frames.split_at(3600);
-    learned.iter().for_each(|frame| station.take(frame));
+    for frame in learned {
+        station.take(frame);
+    }
 
     let mut recorder = station.recorder(&folder.path().join("hour"));
     for frame in hour {
@@ -80,12 +82,10 @@ fn record(criterion: &mut Criterion) {
     let file = status.file.expect("it was written");
     let packed = fs::metadata(&file).expect("it is there").len();
     let lines = zstd::decode_all(fs::File::open(&file).expect("it is there")).expect("it is whole");
-    let mut lines = lines.split(|byte| *byte == b'\n').map(<[u8]>::len);
-    let (start, other) = (lines.next().unwrap_or(0), lines.next().unwrap_or(0));
-    let start_packed = {
-        let bytes = zstd::decode_all(fs::File::open(&file).expect("it is there")).expect("it is whole");
-        zstd::encode_all(&bytes[..start], 3).expect("in memory").len()
-    };
+    let mut lines = lines.split(|byte| *byte == b'\n');
+    let [start, other] = [lines.next(), lines.next()].map(Option::unwrap_or_default);
+    let start_packed = zstd::encode_all(start, 3).expect("in memory").len();
+    let (start, other) = (start.len(), other.len());
     println!("an hour of {} frames: {packed} bytes; {} lost", hour.len(), status.lost);
     println!("a line: {other} bytes; with a start: {start}, {start_packed} packed");
 

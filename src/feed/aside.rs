@@ -5,7 +5,8 @@
 //!   "start": {"version": 1, "why": "day", "program": "0.1.0", "configuration": "[grid]\n…",
 //!             "held": {"Skarn.kv": ["2031-03-14T04:59:59Z", 408.0, "good"]},
 //!             "corridors": {"Skarn-Velm": {"desk": {}, "alarms": {}}}},
-//!   "acts": [{"time": "2031-03-14T04:59:58Z", "by": "anna", "corridor": "Skarn-Velm", "alarm": "blind", "deed": "acknowledge"}]
+//!   "acts": [{"time": "2031-03-14T04:59:58Z", "by": "anna",
+//!             "deed": {"action": [{"corridor": "Skarn-Velm", "alarm": "blind"}, "acknowledge"]}}]
 //! }
 //! ```
 //!
@@ -47,6 +48,7 @@ pub struct Start {
     pub program: String,
     /// The configuration in force, TOML.
     pub configuration: String,
+    /// By slot: what was held, and since when.
     pub(super) held: Vec<(Slot, (DateTime<Utc>, Reading))>,
     corridors: BTreeMap<String, Kept<Raw, Raw>>,
     parsed: OnceLock<Option<Box<Config>>>,

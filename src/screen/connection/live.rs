@@ -11,6 +11,7 @@ use tokio::{
 
 use super::{Duty, FeedReport, Keeper, Order, Origin, Parcel, Revision, Scene, Setting, report};
 use crate::{
+    alarm::Act,
     desk::Desk,
     events::Event,
     feed::{Channels, Feed, Frame, Holder},
@@ -84,7 +85,7 @@ impl Live {
                 Woken::Left => break,
                 Woken::Order(Order::Alarm(order)) => {
                     let acts = self.duty.obey(&order);
-                    self.recorder.iter_mut().for_each(|recorder| recorder.act(acts.clone()));
+                    self.record(acts);
                 }
                 Woken::Order(Order::Apply(number)) => self.apply(number, &mut sofar),
                 Woken::Order(_) => {}
@@ -124,6 +125,12 @@ impl Live {
         recorder.take(&frame, &Present { holder: &self.holder, desk: &self.desk, board })
     }
 
+    fn record(&mut self, acts: impl IntoIterator<Item = Act>) {
+        if let Some(recorder) = &mut self.recorder {
+            recorder.act(acts);
+        }
+    }
+
     fn take(&mut self, sofar: &mut Sofar, frames: Vec<Frame>) {
         let mut entries = Vec::new();
         for frame in frames {
@@ -147,7 +154,7 @@ impl Live {
         match sofar.chronicle.time().zip(passed).and_then(|(time, passed)| time.checked_add_signed(passed)) {
             Some(now) => {
                 let act = self.duty.elapse(now);
-                self.recorder.iter_mut().for_each(|recorder| recorder.act(act.clone()));
+                self.record(act);
             }
             None => self.duty.write(Vec::new()),
         }

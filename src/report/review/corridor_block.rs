@@ -32,7 +32,7 @@ impl CorridorBlock<'_> {
         let own = name(&self.corridor.corridor);
         put!(page, "<section id=\"{anchor}\" class=\"corridor\"><h2>{}</h2>\n", escape(&own));
         self.course(page, &format!("{anchor}-course"));
-        *page += "<div class=\"parts\"><div>";
+        *page += "<div class=\"parts\"><div class=\"figures\">";
         self.figures(page);
         *page += "</div><div class=\"half\"><h3>Duration curve</h3>\n<figure>";
         self.scroll(page, "duration curve");

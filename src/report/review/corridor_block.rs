@@ -4,7 +4,7 @@ use super::{
     Paper,
     clock::Clock,
     compare::{cause, causes, rows},
-    figures::{minutes_of, name, number, share},
+    figures::{lasting, minutes_of, name, number, share},
     html::anchor,
     markup::{Cell, Table, escape, put},
     plot::{CoursePlot, durations},
@@ -74,10 +74,10 @@ impl CorridorBlock<'_> {
         let courses = [Some(&corridor.was), corridor.what_if.as_ref()].into_iter().flatten();
         let series: Vec<_> = courses.map(|course| course.series.clone().in_at_most(MOST_SLOTS)).collect();
         CoursePlot { paper, clock, time, corridor, series: &series, id }.draw(page);
-        let slot = series[0].slot_s / 60;
+        let slot = lasting(1000 * series[0].slot_s);
         put!(
             page,
-            "</div><figcaption>Bands: lowest to highest in each {slot} min, blank where there is nothing. ○ least headroom. "
+            "</div><figcaption>Bands: lowest to highest in each {slot}, blank where there is nothing. ○ least headroom. "
         );
         if let Some(known) = paper.configured(corridor) {
             put!(page, "Dashed line: thin threshold, {} MW. ", number(known.thin_mw, 0));

@@ -2,13 +2,15 @@
 
 use std::io::{self, Write};
 
+use chrono::TimeDelta;
+
 use super::{
     Paper,
     clock::Clock,
     compare::cause,
     corridor_block::CorridorBlock,
     definitions::DEFINITIONS,
-    figures::{LONGEST_SENTENCE, NONE, lasting, minutes_of, mw, name, plain, room, share},
+    figures::{LONGEST_SENTENCE, NONE, lasting, minutes_of, mw, name, plain, room, share, signed},
     markup::{Cell, Table, escape, put},
     plot::time_scale,
     scale::{TimeScale, in_full},
@@ -16,6 +18,7 @@ use super::{
 };
 use crate::{
     desk::State,
+    events::{Event, EventKind},
     report::CAUTION,
     review::{Brief, CorridorReview, DayFigures},
 };
@@ -113,7 +116,9 @@ fn zone(time: &TimeScale) -> String {
     }
     let mut told = format!("Times are of {}: {}", time.zone.name(), offset(time.begin_s));
     for shift in shifts.iter().take(4) {
-        let when = time.local(shift.at_s - 1).map_or(String::new(), |time| time.format("%-d %b %H:%M").to_string());
+        // As the clock shows it before it is turned.
+        let turned = time.local(shift.at_s - 1).map(|time| time.naive_local() + TimeDelta::seconds(1));
+        let when = turned.map_or(String::new(), |time| time.format("%-d %b %H:%M").to_string());
         put!(told, " until {when}, then {}", offset(shift.at_s));
     }
     told + "."
@@ -125,23 +130,25 @@ fn summary(page: &mut String, paper: &Paper, clock: &Clock) {
         *page += "<p>Not a single frame was read.</p></section>\n";
         return;
     }
-    let compared = paper.review.corridors.iter().any(|corridor| corridor.what_if.is_some());
+    let corridors = || paper.review.corridors.iter().enumerate();
     let mut heading = vec!["corridor", "least headroom, MW", "when", "set by", "thin, min", "spent, min", "blind, min"];
     heading.extend(["known", "transfer, MW"]);
-    if compared {
-        heading.extend(["would have been, MW", "difference, MW", "would be thin, min", "would be spent, min"]);
-    }
     let table = Table { caption: "All corridors", label: "", heading: &heading };
-    let rows = paper.review.corridors.iter().enumerate();
-    table.write(page, rows.map(|(place, corridor)| summary_row(paper, clock, compared, place, corridor)));
+    table.write(page, corridors().map(|(place, corridor)| summary_row(paper, clock, place, corridor)));
+    if corridors().any(|(_, corridor)| corridor.what_if.is_some()) {
+        let heading =
+            ["corridor", "least headroom, MW", "would have been", "difference", "thin, min", "would have been"];
+        let heading = heading.into_iter().chain(["spent, min", "would have been"]).collect::<Vec<_>>();
+        let table = Table { caption: "What if", label: "", heading: &heading };
+        table.write(page, corridors().filter_map(|(place, corridor)| what_if_row(place, corridor)));
+    }
     *page += "</section>\n";
 }
 
-fn summary_row(paper: &Paper, clock: &Clock, compared: bool, place: usize, corridor: &CorridorReview) -> Vec<Cell> {
+fn summary_row(paper: &Paper, clock: &Clock, place: usize, corridor: &CorridorReview) -> Vec<Cell> {
     let none = || NONE.to_owned();
     let was = &corridor.was;
     let least = was.least.as_ref();
-    let minutes = |state| Cell::number(minutes_of(was.state_ms.ms(&state)));
     let known_ms = was.state_ms.total_ms() - was.state_ms.ms(&State::Blind);
     let transfer = was.transfer_mw.map_or_else(none, |[low, high]| format!("{} to {}", mw(low), mw(high)));
     let mut row = vec![
@@ -149,27 +156,24 @@ fn summary_row(paper: &Paper, clock: &Clock, compared: bool, place: usize, corri
         Cell::number(least.map_or_else(none, |least| room(least.headroom_mw))),
         Cell::text(least.map_or_else(none, |least| clock.when(least.time))),
         Cell::text(least.and_then(|least| least.binding.as_ref()).map_or_else(none, cause)),
-        minutes(State::Thin),
-        minutes(State::Spent),
-        minutes(State::Blind),
-        Cell::number(paper.review.part(known_ms).map_or_else(none, share)),
-        Cell::number(transfer),
     ];
-    if compared {
-        let would = corridor.what_if.as_ref();
-        let would_least = would.and_then(|would| would.least.as_ref());
-        let difference = least.zip(would_least).map(|(least, would)| would.headroom_mw - least.headroom_mw);
-        let minutes = |state| {
-            Cell::number(would.map_or_else(|| "unchanged".into(), |would| minutes_of(would.state_ms.ms(&state))))
-        };
-        row.extend([
-            Cell::number(would_least.map_or_else(none, |least| room(least.headroom_mw))),
-            Cell::number(difference.map_or_else(none, |mw| super::figures::signed(mw, 0))),
-            minutes(State::Thin),
-            minutes(State::Spent),
-        ]);
-    }
+    row.extend(
+        [State::Thin, State::Spent, State::Blind].map(|state| Cell::number(minutes_of(was.state_ms.ms(&state)))),
+    );
+    row.push(Cell::number(paper.review.part(known_ms).map_or_else(none, share)));
+    row.push(Cell::number(transfer));
     row
+}
+
+fn what_if_row(place: usize, corridor: &CorridorReview) -> Option<Vec<Cell>> {
+    let courses = [&corridor.was, corridor.what_if.as_ref()?];
+    let least = courses.map(|course| course.least.as_ref().map(|least| least.headroom_mw));
+    let [was, would] = least.map(|least| Cell::number(least.map_or(NONE.into(), room)));
+    let difference = least[0].zip(least[1]).map_or(NONE.into(), |(was, would)| signed(would - was, 0));
+    let mut row = vec![Cell::Link(anchor(place), name(&corridor.corridor)), was, would, Cell::number(difference)];
+    let minutes = |state| courses.map(|course| Cell::number(minutes_of(course.state_ms.ms(&state))));
+    row.extend([State::Thin, State::Spent].into_iter().flat_map(minutes));
+    Some(row)
 }
 
 /// One row for each day, with the corridor that came closest.
@@ -231,20 +235,22 @@ fn events(page: &mut String, paper: &Paper, clock: &Clock) {
     let review = paper.review;
     *page += "<section id=\"events\"><h2>Events</h2>\n";
     let listed = review.most_telling(MOST_EVENTS);
-    if listed.is_empty() {
-        *page += "<p>Nothing happened that is worth a line.</p>";
+    let is_routine = |event: &&&Event| matches!(event.kind, EventKind::Step | EventKind::Meter);
+    let (routine, telling): (Vec<_>, Vec<_>) = listed.iter().partition(is_routine);
+    let write = |page: &mut String, caption, events: &[&Event]| {
+        let heading = ["time", "corridor", "kind", "what happened"];
+        let rows = events.iter().map(|event| event_row(clock, event));
+        Table { caption, label: "", heading: &heading }.write(page, rows);
+    };
+    if telling.is_empty() {
+        *page += "<p>No switching, no change of state, no alarm, no gap.</p>";
     } else {
-        let table =
-            Table { caption: "Events in order", label: "", heading: &["time", "corridor", "kind", "what happened"] };
-        let rows = listed.iter().map(|event| {
-            vec![
-                Cell::text(clock.when(event.time)),
-                Cell::text(event.corridor.as_ref().map_or(NONE.into(), |corridor| name(corridor))),
-                Cell::text(event.kind.word()),
-                Cell::text(plain(&event.text, LONGEST_SENTENCE)),
-            ]
-        });
-        table.write(page, rows);
+        write(page, "Switching, states, alarms and gaps, in order", &telling);
+    }
+    if !routine.is_empty() {
+        *page += "<div class=\"on-screen\">";
+        write(page, "Steps of the sources, and meters", &routine);
+        *page += "</div><p class=\"muted\">Steps and meters are not printed.</p>";
     }
     if listed.len() < review.events.len() {
         put!(page, "<p>{} less telling ones are in the JSON report.</p>", review.events.len() - listed.len());
@@ -253,6 +259,15 @@ fn events(page: &mut String, paper: &Paper, clock: &Clock) {
         put!(page, "<p>{} more were too many to be kept.</p>", review.events_left_out);
     }
     *page += "</section>\n";
+}
+
+fn event_row(clock: &Clock, event: &Event) -> Vec<Cell> {
+    vec![
+        Cell::text(clock.when(event.time)),
+        Cell::text(event.corridor.as_ref().map_or(NONE.into(), |corridor| name(corridor))),
+        Cell::text(event.kind.word()),
+        Cell::text(plain(&event.text, LONGEST_SENTENCE)),
+    ]
 }
 
 fn files(page: &mut String, paper: &Paper) {

@@ -96,7 +96,8 @@ impl Cell {
                 *page += " class=\"bars\">";
                 for (part, class) in parts.iter().zip(["was", "would"]) {
                     let pct = 100.0 * part.clamp(0.0, 1.0);
-                    put!(page, "<div class=\"bar {class}\" style=\"width:{pct:.1}%\"></div>");
+                    let none = if *part > 0.0 { "" } else { " none" };
+                    put!(page, "<div class=\"bar {class}{none}\" style=\"width:{pct:.1}%\"></div>");
                 }
             }
         }

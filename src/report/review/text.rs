@@ -20,7 +20,7 @@ const WIDTH: usize = 100;
 /// Events, files, findings and meters that are listed.
 const MOST_EVENTS: usize = 60;
 const MOST_LINES: usize = 20;
-/// Days that are listed; more are in the CSV.
+/// Days that are listed, of all corridors together; more are in the CSV.
 const MOST_DAYS: usize = 400;
 /// Characters of a name in a table.
 const CELL: usize = 22;
@@ -170,10 +170,11 @@ fn days(paper: &Paper, to: &mut impl Write) -> io::Result<()> {
     if days.len() < 2 {
         return Ok(());
     }
+    let most = MOST_DAYS / paper.review.corridors.len().max(1);
     writeln!(to, "\nDays (UTC)")?;
     for (place, corridor) in paper.review.corridors.iter().enumerate() {
         writeln!(to, "\n  {}", name(&corridor.corridor))?;
-        let rows = days.iter().take(MOST_DAYS).filter_map(|day| {
+        let rows = days.iter().take(most).filter_map(|day| {
             let (was, would) = day.corridors.get(place)?;
             Some(day_row(day, was, would.as_ref()))
         });
@@ -183,8 +184,8 @@ fn days(paper: &Paper, to: &mut impl Write) -> io::Result<()> {
         write!(to, "{}", Table::new(heading, rows))?;
     }
     writeln!(to, "    least headroom and headroom there 95 % of the time, MW; minutes in each state")?;
-    if days.len() > MOST_DAYS {
-        writeln!(to, "    {} more days: see the CSV report", days.len() - MOST_DAYS)?;
+    if days.len() > most {
+        writeln!(to, "    {} more days: see the CSV report", days.len() - most)?;
     }
     Ok(())
 }

@@ -2,7 +2,7 @@
 
 use std::{
     collections::BTreeMap,
-    fs,
+    fs, iter,
     num::NonZeroUsize,
     path::{Path, PathBuf},
     sync::Arc,
@@ -15,9 +15,8 @@ use super::{Failure, assess::Sources, papers::Papers, progress, tables::Tables};
 use crate::{
     config::Config,
     desk::Alternative,
-    feed::Channels,
     report::{change, review::Paper},
-    review::{Done, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
+    review::{Done, FileNote, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
 };
 
 /// Options of `review`.
@@ -84,15 +83,45 @@ impl std::str::FromStr for Share {
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
     let (review, config, terms) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
-    if review.days.is_empty() {
-        return Err(format!("not a single frame was read from {}", names(&options.files)).into());
-    }
     let paper = Paper { review: &review, grid: &config.grid, zone: config.time_zone, changes: &terms.changes };
     options.papers.write(&paper)
 }
 
-fn names(files: &[PathBuf]) -> String {
-    files.iter().map(|file| file.display().to_string()).collect::<Vec<_>>().join(", ")
+/// Reviews recordings as they are, all at once.
+pub(super) fn straight(config: &Config, stretches: &[Stretch]) -> Result<Review, Failure> {
+    let task = Task::new(config.clone(), "".into(), change::lines);
+    let mut review = Review::new(config.feed.max_age());
+    let run = Run {
+        task: &task,
+        stretches,
+        threads: None,
+        carry: false,
+        output: &config.grid.corridors.len(),
+        known: &|_, _| None,
+        follow: &|file| Box::new(file),
+    };
+    let barren = run.go(|done: Done| -> Result<(), Failure> {
+        review.add(done.reviewed.day);
+        Ok(())
+    })?;
+    say(&barren, &review)?;
+    Ok(review)
+}
+
+/// Says which files did not bring a frame; fails when none did.
+fn say(barren: &[FileNote], review: &Review) -> Result<(), Failure> {
+    let lines = barren.iter().map(|file| {
+        let what = iter::once("not a single frame").chain(file.findings.iter().map(String::as_str));
+        format!("{}: {}", file.name, what.collect::<Vec<_>>().join("; "))
+    });
+    let lines: Vec<_> = lines.collect();
+    if review.days.is_empty() {
+        return Err(if lines.is_empty() { "nothing to review".into() } else { lines.join("\n").into() });
+    }
+    for line in lines {
+        eprintln!("tautline: {line}");
+    }
+    Ok(())
 }
 
 fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
@@ -108,13 +137,7 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
     };
     let stretches = options.stretches()?;
     let alternatives = Alternative::parse(&options.with, &options.without, &config.grid)?;
-    let task = Task {
-        channels: Arc::new(Channels::new(&config)),
-        config: Arc::new(config),
-        configuration: terms.configuration.clone(),
-        alternatives,
-        differences: change::lines,
-    };
+    let task = Task { alternatives, ..Task::new(config, terms.configuration.clone(), change::lines) };
     if let Some(folder) = &options.parts {
         make(folder)?;
     }
@@ -134,7 +157,7 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
         follow: &progress::following(&progress),
     };
     let mut review = Review::new(task.config.feed.max_age());
-    run.go(|done: Done| -> Result<(), Failure> {
+    let barren = run.go(|done: Done| -> Result<(), Failure> {
         let mut reviewed = done.reviewed;
         if let Some(folder) = options.parts.as_deref().filter(|_| !done.was_known) {
             let part = Part::new(terms.clone(), stretches[done.stretch].keys(), reviewed);
@@ -145,6 +168,7 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
         Ok(())
     })?;
     progress.finish_and_clear();
+    say(&barren, &review)?;
     Ok((review, Arc::unwrap_or_clone(task.config), terms))
 }
 

@@ -72,7 +72,9 @@ fn empty_blind_and_single_frames_have_a_page() {
     checked(&paper(&task, &Review::new(task.config.feed.max_age()), &[]));
     let mut frames = frames(&task, 1);
     checked(&paper(&task, &review_of(&task, &frames[..1]), &[]));
-    frames.iter_mut().for_each(|frame| frame.readings.clear());
+    for frame in &mut frames {
+        frame.readings.clear();
+    }
     let page = checked(&paper(&task, &review_of(&task, &frames), &[]));
     assert!(page.contains("Headroom never known."));
 }

@@ -2,8 +2,8 @@
 
     pip install pyarrow duckdb
     tautline assess --config config/demo.toml replay-data/demo-day.jsonl.zst > records.jsonl
-    tautline review --config config/demo.toml replay-data/demo-day.jsonl.zst --parquet rows.parquet
-    python tests/review/read_parquet.py records.jsonl rows.parquet
+    tautline review --config config/demo.toml replay-data/demo-day.jsonl.zst --parquet rows
+    python tests/review/read_parquet.py records.jsonl rows/2031-03-14.parquet
 
 It says how many rows and values agree, and fails at the first that does not.
 """

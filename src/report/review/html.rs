@@ -7,10 +7,10 @@ use chrono::TimeDelta;
 use super::{
     Paper,
     clock::Clock,
-    compare::cause,
+    compare::{cause, unknown},
     corridor_block::CorridorBlock,
     definitions::DEFINITIONS,
-    figures::{LONGEST_SENTENCE, NONE, lasting, minutes_of, mw, name, plain, room, share, signed},
+    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, lasting, minutes_of, mw, name, plain, room, share, signed},
     markup::{Cell, Table, escape, put},
     plot::time_scale,
     scale::{TimeScale, in_full},
@@ -20,7 +20,7 @@ use crate::{
     desk::State,
     events::{Event, EventKind},
     report::CAUTION,
-    review::{Brief, CorridorReview, DayFigures},
+    review::{Brief, CorridorReview, Course, DayFigures},
 };
 
 const STYLE: &str = include_str!("page.css");
@@ -167,8 +167,10 @@ fn summary_row(paper: &Paper, clock: &Clock, place: usize, corridor: &CorridorRe
 
 fn what_if_row(place: usize, corridor: &CorridorReview) -> Option<Vec<Cell>> {
     let courses = [&corridor.was, corridor.what_if.as_ref()?];
-    let least = courses.map(|course| course.least.as_ref().map(|least| least.headroom_mw));
-    let [was, would] = least.map(|least| Cell::number(least.map_or(NONE.into(), room)));
+    let least = courses.map(|course| course.lowest().map(|least| least.headroom_mw));
+    let shown =
+        |course: &Course| course.lowest().map_or_else(|| unknown(course).into(), |least| room(least.headroom_mw));
+    let [was, would] = courses.map(|course| Cell::number(shown(course)));
     let difference = least[0].zip(least[1]).map_or(NONE.into(), |(was, would)| signed(would - was, 0));
     let mut row = vec![Cell::Link(anchor(place), name(&corridor.corridor)), was, would, Cell::number(difference)];
     let minutes = |state| courses.map(|course| Cell::number(minutes_of(course.state_ms.ms(&state))));
@@ -226,7 +228,9 @@ fn day_row(paper: &Paper, day: &DayFigures, compared: bool) -> Vec<Cell> {
     }));
     if compared {
         let would = day.corridors.iter().filter_map(|(_, would)| would.as_ref());
-        row.push(Cell::number(shown(would.map(least).fold(f64::INFINITY, f64::min))));
+        let parts = would.clone().any(|would| would.unbalanced_ms > 0);
+        let lowest = shown(would.map(least).fold(f64::INFINITY, f64::min));
+        row.push(Cell::number(if parts { NO_BALANCE.into() } else { lowest }));
     }
     row
 }

@@ -4,7 +4,7 @@ use super::{
     Paper,
     clock::Clock,
     compare::cause,
-    figures::{minutes, mw, name, room},
+    figures::{NO_BALANCE, minutes, mw, name, room},
     markup::{escape, put, px},
     scale::{Scale, TimeScale},
     strip,
@@ -79,7 +79,10 @@ impl CoursePlot<'_> {
             let transfer = course.transfer_mw.map_or("Transfer never known.".to_owned(), |[low, high]| {
                 format!("Transfer between {} and {} MW.", mw(low), mw(high))
             });
-            let least = course.least.as_ref().map_or("Headroom never known.".to_owned(), |least| {
+            let none = course.unbalanced.map_or("Headroom never known.".to_owned(), |unbalanced| {
+                format!("No balance from {}.", self.clock.when(unbalanced.first))
+            });
+            let least = course.lowest().map_or(none, |least| {
                 let cause =
                     least.binding.as_ref().map_or(String::new(), |binding| format!(", set by {}", cause(binding)));
                 format!("Least headroom {} MW at {}{cause}.", room(least.headroom_mw), self.clock.when(least.time))
@@ -160,7 +163,7 @@ impl CoursePlot<'_> {
     }
 
     fn least(&self, page: &mut String, course: &Course, scale: &Scale, class: &str) {
-        let Some(least) = &course.least else { return };
+        let Some(least) = course.lowest() else { return };
         let (x, y) = (self.time.x(least.time.timestamp()), scale.y(least.headroom_mw));
         put!(page, "<circle class=\"least {class}\" r=\"4\" cx=\"");
         px(page, x);
@@ -173,8 +176,11 @@ impl CoursePlot<'_> {
     fn least_in_words<'b>(&self, page: &mut String, courses: impl Iterator<Item = &'b Course>) {
         let mut words = Vec::new();
         for (course, (class, word)) in courses.zip([("was", "least"), ("would", "would have been")]) {
-            let Some(least) = &course.least else { continue };
-            let told = format!("○ {word} {} MW, {}", room(least.headroom_mw), self.clock.when(least.time));
+            let told = match (course.lowest(), course.unbalanced) {
+                (Some(least), _) => format!("○ {word} {} MW, {}", room(least.headroom_mw), self.clock.when(least.time)),
+                (None, Some(none)) => format!("{word} {NO_BALANCE}, first {}", self.clock.when(none.first)),
+                (None, None) => continue,
+            };
             words.push(format!("<tspan class=\"{class}\">{}</tspan>", escape(&told)));
         }
         let y = HEADROOM_PX[0] - 9.0;
@@ -213,7 +219,7 @@ pub(super) fn durations(page: &mut String, paper: &Paper, corridor: &CorridorRev
     let courses = || [Some(&corridor.was), corridor.what_if.as_ref()].into_iter().flatten();
     let held = |course: &Course| {
         let parts = [100_u8, 95, 50].iter().filter_map(|pct| {
-            let held = course.durations.held_for(f64::from(*pct) / 100.0)?;
+            let held = course.held_for(f64::from(*pct) / 100.0)?;
             Some(format!("{} MW for {pct} % of the time", mw(held.into())))
         });
         parts.collect::<Vec<_>>().join(", ")

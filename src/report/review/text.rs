@@ -6,7 +6,7 @@ use super::{
     Paper,
     clock::Clock,
     compare::{HELD_PCT, STATES, cause, causes, rows},
-    figures::{LONGEST_SENTENCE, NONE, lasting, minutes_of, mw, name, number, plain, room, share},
+    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, lasting, minutes_of, mw, name, number, plain, room, share},
     sketch::Sketch,
 };
 use crate::{
@@ -81,7 +81,7 @@ fn in_brief(paper: &Paper, clock: &Clock, corridor: &CorridorReview, to: &mut im
         minutes.map(|state| format!("{} {}", state.word(), minutes_of(was.state_ms.ms(&state)))).collect();
     wrapped(to, "  minutes         ", &minutes.join(", "))?;
     let mut held = HELD_PCT.into_iter().filter_map(|pct| {
-        let held = was.durations.held_for(f64::from(pct) / 100.0)?;
+        let held = was.held_for(f64::from(pct) / 100.0)?;
         Some((mw(held.into()), pct))
     });
     let Some((most, pct)) = held.next() else { return Ok(()) };
@@ -191,7 +191,10 @@ fn days(paper: &Paper, to: &mut impl Write) -> io::Result<()> {
 }
 
 fn day_row(day: &DayFigures, was: &Brief, would: Option<&Brief>) -> [String; 10] {
-    let least = |brief: &Brief| brief.least.as_ref().map_or(NONE.into(), |least| room(least.headroom_mw));
+    let least = |brief: &Brief| match &brief.least {
+        Some(least) => room(least.headroom_mw),
+        None => if brief.unbalanced_ms > 0 { NO_BALANCE } else { NONE }.into(),
+    };
     let [ample, thin, spent, blind] = STATES.map(|state| minutes_of(was.state_ms.ms(&state)));
     [
         day.date.to_string(),

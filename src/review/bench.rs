@@ -145,7 +145,10 @@ impl<R: Rows> Bench<R> {
                 self.begin(start, snapshot.time);
             }
         }
-        self.seats.par_iter_mut().for_each(|seat| snapshots.iter().for_each(|snapshot| seat.take(snapshot)));
+        self.seats
+            .par_iter_mut()
+            .with_max_len(1)
+            .for_each(|seat| snapshots.iter().for_each(|snapshot| seat.take(snapshot)));
     }
 
     /// Every corridor takes up by itself how it stood; here is what there is to say of it.

@@ -95,3 +95,47 @@ fn parts_that_do_not_go_together_are_refused() {
     let (done, ..) = review(&bed, &["--merge", "a", "a"]);
     assert!(done, "the same part twice is one part");
 }
+
+/// Files that share days: cut at noon, with an overlap to be told of.
+fn cut_at_noon(bed: &Bed) -> [String; 3] {
+    [0..30, 29..54, 54..60].map(|hours| name(&bed.file(&format!("from-{}.jsonl", hours.start), bed.hours(hours))))
+}
+
+#[test]
+fn no_day_is_left_out_whatever_was_kept() {
+    let bed = Bed::new(60.0);
+    let files = cut_at_noon(&bed);
+    let files = files.each_ref().map(String::as_str);
+    let run = |more: &[&str]| {
+        let (done, json, said) =
+            review(&bed, &[&["--config", "config.toml", "--parts", "parts", "--json", "-"], more, &files].concat());
+        assert!(done, "{said}");
+        json
+    };
+    let whole = run(&[]);
+    assert!(whole.contains("overlaps with"));
+    for gone in [0, 1, 2] {
+        fs::remove_file(&parts(&bed)[gone].0).unwrap();
+        assert_eq!(run(&[]), whole, "without day {gone}");
+    }
+    // The first day is kept under other terms, as a run that was stopped leaves it.
+    let others = [&["--config", "config.toml", "--parts", "parts", "--sources", "configured"], &files[..1]].concat();
+    assert!(review(&bed, &others).0);
+    assert_eq!(run(&[]), whole);
+    assert_eq!(run(&["--threads", "1"]), whole);
+}
+
+#[test]
+fn carried_over_days_go_on_with_the_same_words() {
+    let bed = Bed::new(60.0);
+    let files = cut_at_noon(&bed);
+    let files = files.each_ref().map(String::as_str);
+    let run = || {
+        review(&bed, &[&["--config", "config.toml", "--carry", "--parts", "parts", "--json", "-"], &files[..]].concat())
+            .1
+    };
+    let whole = run();
+    assert!(whole.contains("overlaps with"));
+    fs::remove_file(&parts(&bed)[1].0).unwrap();
+    assert_eq!(run(), whole);
+}

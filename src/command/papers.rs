@@ -1,7 +1,7 @@
 //! Where a review is written.
 
 use std::{
-    fs::File,
+    fs::{self, File},
     io::{self, BufWriter, ErrorKind, Write, stdout},
     path::{Path, PathBuf},
 };
@@ -28,6 +28,28 @@ pub(super) struct Papers {
 type Writing = fn(&Paper, &mut dyn Write) -> io::Result<()>;
 
 impl Papers {
+    /// Refuses what could not be written: better before the work than after it.
+    pub fn check(&self) -> Result<(), Failure> {
+        let wanted = [&self.html, &self.json, &self.csv].into_iter().flatten();
+        let (stdout, files): (Vec<_>, Vec<_>) = wanted.partition(|path| is_stdout(path));
+        if stdout.len() > 1 {
+            return Err("standard output can take only one of --html, --json and --csv".into());
+        }
+        for path in files {
+            let is_there = path.exists();
+            if is_there && !path.is_file() && !path.is_dir() {
+                // A pipe may have to be opened once only.
+                continue;
+            }
+            let opened = File::options().append(true).create(true).open(path);
+            opened.map_err(|error| format!("cannot write {}: {error}; name another file", path.display()))?;
+            if !is_there {
+                let _nothing_lost = fs::remove_file(path);
+            }
+        }
+        Ok(())
+    }
+
     pub fn write(&self, paper: &Paper) -> Result<(), Failure> {
         let formats: [(&Option<PathBuf>, Writing); 3] = [
             (&self.html, |paper, to| html::write(paper, to)),
@@ -38,9 +60,6 @@ impl Papers {
             formats.iter().filter_map(|(path, write)| Some((path.as_deref()?, *write))).collect();
         if !wanted.iter().any(|(path, _)| is_stdout(path)) {
             wanted.push((Path::new("-"), |paper, to| text::write(paper, to)));
-        }
-        if wanted.iter().filter(|(path, _)| is_stdout(path)).count() > 1 {
-            return Err("standard output can take only one of --html, --json and --csv".into());
         }
         for (path, write) in wanted {
             let to = |to: &mut dyn Write| write(paper, to).and_then(|()| to.flush());

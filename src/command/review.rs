@@ -83,9 +83,14 @@ impl std::str::FromStr for Share {
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
+    options.papers.check()?;
     let (review, config, terms) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
     if review.days.is_empty() {
-        return Err(format!("not a single frame was read from {}", names(&options.files)).into());
+        let files = names(&options.files);
+        return Err(format!(
+            "not a single frame was read from {files}; tautline assess says what is wrong with a file"
+        )
+        .into());
     }
     let paper = Paper { review: &review, grid: &config.grid, zone: config.time_zone, changes: &terms.changes };
     options.papers.write(&paper)
@@ -106,8 +111,8 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
         learning: options.sources.map(|sources| sources == Sources::Learned),
         carried: options.carry,
     };
-    let stretches = options.stretches()?;
     let alternatives = Alternative::parse(&options.with, &options.without, &config.grid)?;
+    let stretches = options.stretches()?;
     let task = Task {
         channels: Arc::new(Channels::new(&config)),
         config: Arc::new(config),

@@ -71,7 +71,10 @@ impl Papers {
             match written {
                 // Nobody reads on.
                 Err(error) if error.kind() == ErrorKind::BrokenPipe && is_stdout(path) => {}
-                written => written.map_err(|error| format!("cannot write {}: {error}", path.display()))?,
+                written => written.map_err(|error| {
+                    let to = if is_stdout(path) { "to standard output".into() } else { path.display().to_string() };
+                    format!("cannot write {to}: {error}")
+                })?,
             }
         }
         Ok(())

@@ -85,6 +85,11 @@ impl std::str::FromStr for Share {
 pub fn run(options: &Options) -> Result<(), Failure> {
     options.papers.check()?;
     let (review, config, terms) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
+    if let Some(Share { number, of }) = options.share.filter(|share| share.number > 1 && review.days.is_empty()) {
+        // One of more jobs than there are days has done what it should.
+        eprintln!("tautline: there are too few days for {of} shares: none falls to share {number}");
+        return Ok(());
+    }
     if review.days.is_empty() {
         let files = names(&options.files);
         return Err(format!(

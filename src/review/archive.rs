@@ -22,10 +22,14 @@ pub type Follow = dyn Fn(Deferred) -> Box<dyn Read + Send> + Sync;
 
 /// A file that cannot be reviewed.
 #[derive(Debug, Error)]
-#[error("cannot open {}: {source}", path.display())]
+#[error("cannot open {}: {source}{}", path.display(), advice(source))]
 pub struct ArchiveError {
     path: PathBuf,
     source: io::Error,
+}
+
+fn advice(error: &io::Error) -> &'static str {
+    if error.kind() == io::ErrorKind::IsADirectory { "; name the files in it" } else { "" }
 }
 
 /// A recorded file.

@@ -102,6 +102,34 @@ fn cut_at_noon(bed: &Bed) -> [String; 3] {
 }
 
 #[test]
+fn what_cannot_be_done_is_refused_before_the_work() {
+    let bed = Bed::new(3.0);
+    let file = name(&bed.file("0.jsonl", bed.hours(0..3)));
+    bed.file("words.txt", [&"no frame at all\n".to_owned()]);
+    fs::write(bed.path("old.json"), "old").unwrap();
+    let run = |more: &[&str]| review(&bed, &[&["--config", "config.toml", "--parts", "parts"], more].concat());
+    for (more, what) in [
+        (&["--json", "-", "--csv", "-"][..], "only one of"),
+        (&["--json", "old.json", "--html", "not/there.html"], "cannot write not/there.html"),
+        (&["--csv", "."], "cannot write ."),
+        (&["--with", "shut 1-A"], "begins with no change"),
+    ] {
+        let (done, _, said) = run(&[&[&*file], more].concat());
+        assert!(!done && said.contains(what), "{said}");
+        assert!(!bed.path("parts").exists(), "{what}");
+    }
+    assert_eq!(fs::read_to_string(bed.path("old.json")).unwrap(), "old");
+    let (done, _, said) = run(&["words.txt"]);
+    assert!(!done && said.contains("not a single frame was read from words.txt"), "{said}");
+    let (done, _, said) = run(&["."]);
+    assert!(!done && said.contains("name the files in it"), "{said}");
+    // One of more jobs than there are days.
+    let (done, text, said) = run(&[&file, "--share", "2/3"]);
+    assert!(done && text.is_empty() && said.contains("none falls to share 2"), "{said}");
+    assert!(run(&[&file, "--share", "1/3"]).0);
+}
+
+#[test]
 fn no_day_is_left_out_whatever_was_kept() {
     let bed = Bed::new(60.0);
     let files = cut_at_noon(&bed);

@@ -82,7 +82,13 @@ impl std::str::FromStr for Share {
 
 /// Runs it.
 pub fn run(options: &Options) -> Result<(), Failure> {
+    options.papers.check()?;
     let (review, config, terms) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
+    if let Some(Share { number, of }) = options.share.filter(|_| review.days.is_empty()) {
+        // One of more jobs than there are days has done what it should.
+        eprintln!("tautline: there are too few days for {of} shares: none falls to share {number}");
+        return Ok(());
+    }
     let paper = Paper { review: &review, grid: &config.grid, zone: config.time_zone, changes: &terms.changes };
     options.papers.write(&paper)
 }
@@ -115,8 +121,8 @@ fn say(barren: &[FileNote], review: &Review) -> Result<(), Failure> {
         format!("{}: {}", file.name, what.collect::<Vec<_>>().join("; "))
     });
     let lines: Vec<_> = lines.collect();
-    if review.days.is_empty() {
-        return Err(if lines.is_empty() { "nothing to review".into() } else { lines.join("\n").into() });
+    if review.days.is_empty() && !lines.is_empty() {
+        return Err(lines.join("\n").into());
     }
     for line in lines {
         eprintln!("tautline: {line}");
@@ -135,8 +141,8 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
         learning: options.sources.map(|sources| sources == Sources::Learned),
         carried: options.carry,
     };
-    let stretches = options.stretches()?;
     let alternatives = Alternative::parse(&options.with, &options.without, &config.grid)?;
+    let stretches = options.stretches()?;
     let task = Task { alternatives, ..Task::new(config, terms.configuration.clone(), change::lines) };
     if let Some(folder) = &options.parts {
         make(folder)?;

@@ -2,6 +2,7 @@ use std::{
     fs::{File, OpenOptions},
     io::{self, Write},
     mem,
+    os::unix::fs::MetadataExt,
     path::Path,
     time::{Duration, Instant},
 };
@@ -33,7 +34,12 @@ impl Sink for File {
     }
 
     fn sync(&mut self) -> io::Result<()> {
-        self.sync_data()
+        self.sync_data()?;
+        // What is written to a deleted file is kept nowhere, and no write says so.
+        if self.metadata()?.nlink() == 0 {
+            return Err(io::Error::new(io::ErrorKind::NotFound, "its file was deleted"));
+        }
+        Ok(())
     }
 }
 

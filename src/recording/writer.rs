@@ -177,6 +177,12 @@ impl<D: Disk> Writer<D> {
                 if outcome.is_ok() {
                     status.on_disk = status.recorded;
                 }
+                // Deleted under way: the next flush begins another.
+                if outcome.as_ref().is_err_and(|error| error.kind() == io::ErrorKind::NotFound) {
+                    status.lost += file.unsynced;
+                    self.file = None;
+                    self.waits_for_start = true;
+                }
                 drop(status);
                 self.judge(outcome);
             }
@@ -343,6 +349,35 @@ mod tests {
         let expected: Vec<_> = (0..held).chain([31, 32, 35]).map(|n| n.to_string()).collect();
         assert_eq!(disk.lines(), expected);
         assert_eq!(gauge.lock().lost, lost + 2);
+    }
+
+    #[test]
+    fn a_deleted_file_is_noticed_and_begun_anew() {
+        let place = tempfile::tempdir().unwrap();
+        let folder = place.path().join("days");
+        let gauge = Gauge::default();
+        let disk = (Folder::take(&folder).unwrap(), RecordingSettings::default());
+        let mut writer = Writer::new(disk, gauge.clone(), Duration::ZERO);
+        let trouble = || gauge.lock().trouble.clone();
+        writer.take(&line(0, true, 10));
+        writer.flush();
+        assert_eq!(trouble(), None);
+        std::fs::remove_dir_all(&folder).unwrap();
+        writer.take(&line(1, false, 10));
+        writer.flush();
+        assert!(trouble().unwrap().contains("deleted"));
+        writer.flush();
+        assert!(trouble().is_some(), "the folder is not there either");
+        std::fs::create_dir(&folder).unwrap();
+        writer.flush();
+        assert_eq!(trouble(), None);
+        assert!(gauge.lock().wants_start);
+        writer.take(&line(2, false, 10));
+        writer.take(&line(3, true, 10));
+        writer.close();
+        let bytes = std::fs::File::open(folder.join("1970-01-01.jsonl.zst")).unwrap();
+        assert!(zstd::decode_all(bytes).unwrap().starts_with(b"3 "));
+        assert_eq!(gauge.lock().lost, 2);
     }
 
     #[test]

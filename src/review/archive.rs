@@ -22,10 +22,14 @@ pub type Follow = dyn Fn(Deferred) -> Box<dyn Read + Send> + Sync;
 
 /// A file that cannot be reviewed.
 #[derive(Debug, Error)]
-#[error("cannot open {}: {source}", path.display())]
+#[error("cannot open {}: {source}{}", path.display(), advice(source))]
 pub struct ArchiveError {
     path: PathBuf,
     source: io::Error,
+}
+
+fn advice(error: &io::Error) -> &'static str {
+    if error.kind() == io::ErrorKind::IsADirectory { "; name the files in it" } else { "" }
 }
 
 /// A recorded file.
@@ -140,11 +144,17 @@ impl Stretch {
         }
         archives.sort_by_key(|archive| archive.span);
         let mut stretches: Vec<Self> = Vec::new();
+        let (frameless, archives): (Vec<_>, Vec<_>) = archives.into_iter().partition(|archive| archive.span.is_none());
         for archive in archives {
             match stretches.last_mut() {
                 Some(stretch) if stretch.shares_a_day_with(&archive) => stretch.add(archive),
                 _ => stretches.push(Self::of(archive)),
             }
+        }
+        // What there is to say of files without a frame, or of one that was not read through, is said with the first.
+        match stretches.first_mut() {
+            Some(first) => first.archives.extend(frameless),
+            None => stretches.extend(frameless.into_iter().map(Self::of)),
         }
         if let Some(first) = stretches.first_mut() {
             first.findings.extend(twice);
@@ -163,7 +173,6 @@ impl Stretch {
         Self { archives: vec![archive], days, findings: Vec::new() }
     }
 
-    /// Files without a frame come first, and share nothing.
     fn shares_a_day_with(&self, archive: &Archive) -> bool {
         self.days.zip(archive.span).is_some_and(|((_, last), (first, _))| first.date_naive() <= last)
     }
@@ -204,7 +213,11 @@ impl Stretch {
         });
         let note = |(archive, input): (&Archive, InputStatus)| {
             let ends = archive.span.map_or(is_last, |(_, last)| last.date_naive() == date);
-            FileNote { name: archive.name(), findings: if ends { input.tally.findings() } else { Vec::new() } }
+            let mut findings = if ends { input.tally.findings() } else { Vec::new() };
+            if ends && input.tally.frames == 0 {
+                findings.insert(0, "not a single frame in it".into());
+            }
+            FileNote { name: archive.name(), findings }
         };
         on_this_day.map(note).collect()
     }

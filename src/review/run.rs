@@ -152,14 +152,13 @@ impl<O: Output> Run<'_, O> {
         let stretch = &self.stretches[place];
         let send = |reviewed, was_known| days.send(Ok(Step::Day(Done { reviewed, stretch: place, was_known }))).is_ok();
         let known = |date| (self.known)(stretch, date);
-        if let Some((first, last)) = stretch.days
-            && !self.carry
-            && known(last).is_some()
-        {
-            // The last day is done after all others.
-            let mut done = first.iter_days().take_while(|date| *date <= last).filter_map(known);
-            let _all_heard = done.all(|reviewed| send(reviewed, true));
-            return Ok(());
+        // A day that is not known may have no frame, or wait to be reviewed: the files tell.
+        if let Some((first, last)) = stretch.days.filter(|_| !self.carry) {
+            let dates = first.iter_days().take_while(|date| *date <= last);
+            if dates.clone().all(|date| known(date).is_some()) {
+                let _all_heard = dates.filter_map(known).all(|reviewed| send(reviewed, true));
+                return Ok(());
+            }
         }
         let recorded = stretch.open(&self.task.channels, self.follow);
         let monitor = recorded.monitor().clone();
@@ -173,6 +172,8 @@ impl<O: Output> Run<'_, O> {
             // What is carried over is known only as long as everything before it is.
             let reviewed = known(date).filter(|_| !self.carry || before.was_known);
             before.was_known = reviewed.is_some();
+            // They are said once, on the first day.
+            let findings = std::mem::take(&mut findings);
             let reviewed = if let Some(reviewed) = reviewed {
                 while !batch(&mut frames, date).is_empty() {}
                 reviewed
@@ -181,7 +182,7 @@ impl<O: Output> Run<'_, O> {
                 let bench = self.day(date, carried, pool, &mut frames)?;
                 let files = stretch.notes(date, frames.peek().is_none(), &monitor);
                 let end = self.carry.then(|| bench.end(self.task)).flatten();
-                let Some(day) = bench.finish(files, std::mem::take(&mut findings)) else { continue };
+                let Some(day) = bench.finish(files, findings) else { continue };
                 Reviewed { day, end }
             };
             before.end.clone_from(&reviewed.end);

@@ -76,6 +76,7 @@ fn broken_files_are_read_as_far_as_they_go_and_said() {
     let days = bed.days(&[broken, nothing], 2, false);
     let said = days[0].files[0].findings.join("; ");
     assert!(said.contains("1 malformed lines") && said.contains("older than one before"), "{said}");
+    assert_eq!(days[0].files[1].findings, ["not a single frame in it"]);
 }
 
 #[test]

@@ -95,3 +95,75 @@ fn parts_that_do_not_go_together_are_refused() {
     let (done, ..) = review(&bed, &["--merge", "a", "a"]);
     assert!(done, "the same part twice is one part");
 }
+
+/// Files that share days: cut at noon, with an overlap to be told of.
+fn cut_at_noon(bed: &Bed) -> [String; 3] {
+    [0..30, 29..54, 54..60].map(|hours| name(&bed.file(&format!("from-{}.jsonl", hours.start), bed.hours(hours))))
+}
+
+#[test]
+fn what_cannot_be_done_is_refused_before_the_work() {
+    let bed = Bed::new(3.0);
+    let file = name(&bed.file("0.jsonl", bed.hours(0..3)));
+    bed.file("words.txt", [&"no frame at all\n".to_owned()]);
+    fs::write(bed.path("old.json"), "old").unwrap();
+    let run = |more: &[&str]| review(&bed, &[&["--config", "config.toml", "--parts", "parts"], more].concat());
+    for (more, what) in [
+        (&["--json", "-", "--csv", "-"][..], "only one of"),
+        (&["--json", "old.json", "--html", "not/there.html"], "cannot write not/there.html"),
+        (&["--csv", "."], "cannot write ."),
+        (&["--with", "shut 1-A"], "begins with no change"),
+    ] {
+        let (done, _, said) = run(&[&[&*file], more].concat());
+        assert!(!done && said.contains(what), "{said}");
+        assert!(!bed.path("parts").exists(), "{what}");
+    }
+    assert_eq!(fs::read_to_string(bed.path("old.json")).unwrap(), "old");
+    let (done, _, said) = run(&["words.txt"]);
+    assert!(!done && said.contains("words.txt: not a single frame; 1 malformed lines skipped"), "{said}");
+    let (done, _, said) = run(&["."]);
+    assert!(!done && said.contains("name the files in it"), "{said}");
+    // One of more jobs than there are days.
+    let (done, text, said) = run(&[&file, "--share", "2/3"]);
+    assert!(done && text.is_empty() && said.contains("none falls to share 2"), "{said}");
+    assert!(run(&[&file, "--share", "1/3"]).0);
+}
+
+#[test]
+fn no_day_is_left_out_whatever_was_kept() {
+    let bed = Bed::new(60.0);
+    let files = cut_at_noon(&bed);
+    let files = files.each_ref().map(String::as_str);
+    let run = |more: &[&str]| {
+        let (done, json, said) =
+            review(&bed, &[&["--config", "config.toml", "--parts", "parts", "--json", "-"], more, &files].concat());
+        assert!(done, "{said}");
+        json
+    };
+    let whole = run(&[]);
+    assert!(whole.contains("overlaps with"));
+    for gone in [0, 1, 2] {
+        fs::remove_file(&parts(&bed)[gone].0).unwrap();
+        assert_eq!(run(&[]), whole, "without day {gone}");
+    }
+    // The first day is kept under other terms, as a run that was stopped leaves it.
+    let others = [&["--config", "config.toml", "--parts", "parts", "--sources", "configured"], &files[..1]].concat();
+    assert!(review(&bed, &others).0);
+    assert_eq!(run(&[]), whole);
+    assert_eq!(run(&["--threads", "1"]), whole);
+}
+
+#[test]
+fn carried_over_days_go_on_with_the_same_words() {
+    let bed = Bed::new(60.0);
+    let files = cut_at_noon(&bed);
+    let files = files.each_ref().map(String::as_str);
+    let run = || {
+        review(&bed, &[&["--config", "config.toml", "--carry", "--parts", "parts", "--json", "-"], &files[..]].concat())
+            .1
+    };
+    let whole = run();
+    assert!(whole.contains("overlaps with"));
+    fs::remove_file(&parts(&bed)[1].0).unwrap();
+    assert_eq!(run(), whole);
+}

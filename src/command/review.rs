@@ -2,7 +2,7 @@
 
 use std::{
     collections::BTreeMap,
-    fs, iter,
+    iter,
     num::NonZeroUsize,
     path::{Path, PathBuf},
     sync::Arc,
@@ -11,7 +11,13 @@ use std::{
 use chrono::NaiveDate;
 use clap::Args;
 
-use super::{Failure, assess::Sources, papers::Papers, progress, tables::Tables};
+use super::{
+    Failure,
+    assess::Sources,
+    papers::Papers,
+    progress,
+    tables::{Tables, make},
+};
 use crate::{
     config::Config,
     desk::Alternative,
@@ -176,10 +182,6 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
     progress.finish_and_clear();
     say(&barren, &review)?;
     Ok((review, Arc::unwrap_or_clone(task.config), terms))
-}
-
-pub(super) fn make(folder: &Path) -> Result<(), Failure> {
-    fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()).into())
 }
 
 /// A day that was reviewed before, from the same files and under the same terms.

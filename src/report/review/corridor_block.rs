@@ -5,8 +5,7 @@ use super::{
     clock::Clock,
     compare::{cause, causes, rows},
     figures::{lasting, minutes_of, name, number, share},
-    html::anchor,
-    markup::{Cell, Table, escape, put},
+    markup::{Cell, Table, anchor, escape, put},
     plot::{CoursePlot, durations},
     scale::TimeScale,
 };

@@ -11,7 +11,7 @@ use super::{
     corridor_block::CorridorBlock,
     definitions::DEFINITIONS,
     figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, lasting, minutes_of, mw, name, plain, room, share, signed},
-    markup::{Cell, Table, escape, put},
+    markup::{Cell, Table, anchor, escape, put},
     plot::time_scale,
     scale::{TimeScale, in_full},
     strip::PATTERNS,
@@ -51,11 +51,6 @@ pub fn write(paper: &Paper, mut to: impl Write) -> io::Result<()> {
     page += "</main>\n";
     page += concat!("<footer><p>tautline ", env!("CARGO_PKG_VERSION"), "</p></footer>\n</body>\n</html>\n");
     to.write_all(page.as_bytes())
-}
-
-/// The anchor of a corridor.
-pub(super) fn anchor(place: usize) -> String {
-    format!("corridor-{}", place + 1)
 }
 
 fn head(page: &mut String, paper: &Paper, clock: &Clock, time: &TimeScale) {

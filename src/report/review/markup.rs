@@ -112,6 +112,11 @@ pub(super) fn px(page: &mut String, value: f64) {
     put!(page, "{}", tenths + 0.0);
 }
 
+/// The anchor of a corridor.
+pub(super) fn anchor(place: usize) -> String {
+    format!("corridor-{}", place + 1)
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

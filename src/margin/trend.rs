@@ -122,6 +122,8 @@ impl Trend {
 
 #[cfg(test)]
 mod tests {
+    use proptest::{collection::vec, prelude::*};
+
     use super::*;
 
     fn trend(headroom_mw: impl Fn(f64) -> f64) -> Trend {
@@ -169,5 +171,32 @@ mod tests {
         let rising = trend(|minutes| 300.0 + 5.0 * minutes);
         assert!(rising.mw_per_minute().is_some_and(|slope| (slope - 5.0).abs() < 1e-9));
         assert_eq!(rising.minutes_to(0.0, 300.0), None);
+    }
+
+    proptest! {
+        /// Counting rises and falls finds what the ordered slopes say, ties included.
+        #[test]
+        #[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "ranks, clamped")]
+        fn a_slope_is_what_the_ordered_slopes_say(tenths in vec(-40_i32..40, 12..60), lift in -3_i32..3) {
+            let mut trend = Trend::default();
+            let headrooms = tenths.iter().zip(0..).map(|(noise, n)| 0.1 * f64::from(noise + n * lift));
+            let samples: Vec<Sample> =
+                headrooms.zip(0..).map(|(mw, n)| (DateTime::UNIX_EPOCH + TimeDelta::seconds(10 * n), mw)).collect();
+            for (time, mw) in &samples {
+                trend.push(*time, *mw);
+            }
+            let mut slopes = Vec::new();
+            for (index, (earlier, before)) in samples.iter().enumerate() {
+                let later = samples[index + 1..].iter();
+                slopes.extend(later.map(|(time, after)| (after - before) / ((*time - *earlier).as_seconds_f64() / 60.0)));
+            }
+            slopes.sort_by(f64::total_cmp);
+            let n = samples.len() as f64;
+            let reach = (SIGNIFICANCE * (n * (n - 1.0) * (2.0 * n + 5.0) / 18.0).sqrt() / 2.0).ceil();
+            let rank = |offset: f64| (slopes.len() as f64 / 2.0).floor() + offset;
+            let at = |rank: f64| slopes[rank.clamp(0.0, slopes.len() as f64 - 1.0) as usize];
+            let expected = (at(rank(-reach)) > 0.0 || at(rank(reach)) < 0.0).then(|| at(rank(0.0)));
+            prop_assert_eq!(trend.mw_per_minute(), expected);
+        }
     }
 }

@@ -8,7 +8,8 @@
 //!    (two-ports, admittance, reduction),
 //! 3. [`alarm`] watches them, [`journal`] keeps what the alarms did, [`recording`] the frames, and [`events`] puts what
 //!    happened into words,
-//! 4. [`screen`] and [`report`] show the assessments, and [`command`] ties a feed, a desk and one of these together.
+//! 4. [`review`] sums recorded days up,
+//! 5. [`screen`] and [`report`] show all of it, and [`command`] ties a feed, a desk and one of these together.
 //!
 //! [`grid`] says what a corridor is, [`config`] reads one from a file, and [`drill`] makes feeds with known truth.
 //!

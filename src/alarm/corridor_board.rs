@@ -231,6 +231,7 @@ impl Alarm {
             time,
             corridor: corridor.clone(),
             alarm: self.definition.name.clone(),
+            on: self.definition.kind,
             priority: self.definition.priority,
             event,
             from,

@@ -200,6 +200,15 @@ impl Kind {
         self.facts().unit
     }
 
+    /// Decimals that are worth reading.
+    pub fn decimals(self) -> usize {
+        match self {
+            Self::AreaMargin => 2,
+            Self::AngleMargin | Self::StandingAngle | Self::Fit => 1,
+            _ => 0,
+        }
+    }
+
     /// Which way is bad.
     pub fn direction(self) -> Direction {
         self.facts().direction

@@ -2,7 +2,7 @@ use std::sync::Arc;
 
 use chrono::{DateTime, Utc};
 
-use super::{Event, Priority, Standing, State};
+use super::{Event, Kind, Priority, Standing, State};
 
 /// An alarm went from one state to another.
 #[derive(Debug, Clone, PartialEq)]
@@ -13,6 +13,8 @@ pub struct Transition {
     pub corridor: Arc<str>,
     /// The definition's name.
     pub alarm: Arc<str>,
+    /// What it watches.
+    pub on: Kind,
     /// Its priority.
     pub priority: Priority,
     /// Why.

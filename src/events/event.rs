@@ -4,7 +4,7 @@ use chrono::{DateTime, TimeDelta, Utc};
 use serde::{Deserialize, Serialize};
 
 use crate::{
-    alarm::Transition,
+    alarm::{Kind, Transition},
     desk::{Assessment, State},
 };
 
@@ -108,20 +108,31 @@ impl Event {
 
     /// What an alarm did.
     pub fn of_alarm(transition: &Transition) -> Self {
-        let Transition { time, corridor, alarm, priority, event, value, about, reason, .. } = transition;
-        let value =
-            value.filter(|_| transition.is_annunciated()).map_or(String::new(), |value| format!(", {value:.1}"));
-        let about = about.as_ref().filter(|_| transition.is_annunciated());
-        let about = about.map_or(String::new(), |about| format!(" ({about})"));
+        let Transition { time, corridor, alarm, priority, event, about, reason, .. } = transition;
+        let what = if transition.is_annunciated() {
+            let about = about.as_ref().map_or(String::new(), |about| format!(" ({about})"));
+            format!("raised{}{about}", at(transition))
+        } else {
+            event.word().to_owned()
+        };
         let reason = reason.as_ref().map_or(String::new(), |reason| format!(": {reason}"));
         Self {
             time: *time,
             corridor: Some(corridor.clone()),
             kind: if event.is_act() { EventKind::Act } else { EventKind::Alarm },
             state: None,
-            text: format!("{alarm} ({}): {}{value}{about}{reason}", priority.word(), event.word()),
+            text: format!("{alarm} ({}): {what}{reason}", priority.word()),
         }
     }
+}
+
+/// At which value, rounded towards what calls for attention.
+fn at(transition: &Transition) -> String {
+    let kind = transition.on;
+    let Some(value) = transition.value else { return String::new() };
+    let value = if kind == Kind::HeadroomMw { value.floor() } else { value };
+    let number = format!("{value:.*}", kind.decimals()).replace('-', "−");
+    format!(" at {number} {}", kind.unit()).trim_end().to_owned()
 }
 
 /// What to tell of the time between two frames, where it is longer than a value stands.

@@ -298,10 +298,5 @@ fn value(kind: Kind, value: Option<f64>) -> String {
 }
 
 fn value_plain(kind: Kind, value: f64) -> String {
-    let decimals = match kind {
-        Kind::AreaMargin => 2,
-        Kind::AngleMargin | Kind::StandingAngle | Kind::Fit => 1,
-        _ => 0,
-    };
-    figures::number(Some(value), decimals)
+    figures::number(Some(value), kind.decimals())
 }

@@ -167,7 +167,7 @@ impl Bench {
 
     fn assess(&mut self, frames: &[Frame]) -> io::Result<()> {
         let snapshots: Vec<Snapshot> = frames.iter().filter_map(|frame| self.holder.take(frame)).collect();
-        self.pool.install(|| self.seats.par_iter_mut().try_for_each(|seat| seat.assess(&snapshots)))
+        self.pool.install(|| self.seats.par_iter_mut().with_max_len(1).try_for_each(|seat| seat.assess(&snapshots)))
     }
 
     /// Writes the batch's records frame by frame, corridor by corridor.

@@ -10,7 +10,7 @@ const DAY: &[u8] = include_bytes!("../../replay-data/demo-day.jsonl.zst");
 /// Recorded seconds in a second: the day takes twelve minutes.
 const SPEED: u32 = 120;
 
-/// Replays the demo day, or prints its summary when standard output is not a terminal.
+/// Replays the demo day, or reviews it as text when standard output is not a terminal.
 pub fn run() -> Result<(), Failure> {
     let config = Config::parse(CONFIG, "config/demo.toml")?;
     let start = replay::Start { speed: SPEED, at: None, paused: false };

@@ -22,7 +22,7 @@ use clap::{Parser, Subcommand};
 #[derive(Debug, Parser)]
 #[command(version, about, after_help = ADVICE)]
 pub struct Arguments {
-    /// Without a command: the bundled demo day on the screen, or its summary as text when piped.
+    /// Without a command: the bundled demo day on the screen, or its review as text when piped.
     #[command(subcommand)]
     pub command: Option<Command>,
 }

@@ -1,7 +1,7 @@
-//! `tautline replay`: recorded files on the screen, or in a summary where there is none.
+//! `tautline replay`: recorded files on the screen, or reviewed where there is none.
 
 use std::{
-    io::{IsTerminal, Write, stdout},
+    io::{ErrorKind, IsTerminal, stdout},
     path::PathBuf,
     sync::{Arc, mpsc::sync_channel},
     thread,
@@ -10,13 +10,14 @@ use std::{
 use clap::Args;
 use tokio::sync::watch;
 
-use super::{Failure, assess::Sources, inputs, stage};
+use super::{Failure, assess::Sources, inputs, review, stage};
 use crate::{
     alarm::Board,
     config::Config,
     desk::Desk,
-    feed::{Channels, Holder, Monitor},
-    report::summary::Summary,
+    feed::Channels,
+    report::review::{Paper, text},
+    review::Stretch,
     screen::{
         Ending,
         connection::{Player, Recording, Replay, Surveyor},
@@ -61,13 +62,13 @@ pub fn run(options: &Options) -> Result<(), Failure> {
     play(&config, &Recording::Files(options.files.clone()), &options.start)
 }
 
-/// Plays a recording on the screen; where there is none to draw on, prints its summary.
+/// Plays a recording on the screen; where there is none to draw on, reviews it as text.
 pub(super) fn play(config: &Config, recording: &Recording, start: &Start) -> Result<(), Failure> {
+    if !stdout().is_terminal() {
+        return review(config, recording);
+    }
     let channels = Arc::new(Channels::new(config));
     let (desk, holder) = (Desk::detailed(config, &channels), inputs::holder(config, &channels));
-    if !stdout().is_terminal() {
-        return summarise(config, recording, &channels, desk, holder);
-    }
     let mut player = Player::new(recording.clone(), channels, holder, desk, Board::new(config))?;
     let Some(first) = player.next_time() else {
         let findings = player.monitor().inputs().into_iter().flat_map(|input| input.tally.findings());
@@ -91,32 +92,17 @@ pub(super) fn play(config: &Config, recording: &Recording, start: &Start) -> Res
     if ending == Ending::Disconnected && connection.join().is_err() { Err(stage::fault()) } else { Ok(()) }
 }
 
-/// Every frame as fast as it goes, and what came of it as text.
-fn summarise(
-    config: &Config,
-    recording: &Recording,
-    channels: &Arc<Channels>,
-    mut desk: Desk,
-    mut holder: Holder,
-) -> Result<(), Failure> {
-    let frames = recording.open(channels)?;
-    let monitor = frames.monitor().clone();
-    let mut summary = Summary::new(Arc::new(config.grid.clone()), config.time_zone, inputs::max_age(config));
-    let mut any = false;
-    for frame in frames {
-        if let Some(snapshot) = holder.take(&frame) {
-            summary.take(&desk.assess(&snapshot));
-            any = true;
-        }
+/// Reviews it, where there is no terminal.
+fn review(config: &Config, recording: &Recording) -> Result<(), Failure> {
+    let stretches = match recording {
+        Recording::Files(paths) => Stretch::all(paths, &|file| Box::new(file), |_| {})?,
+        Recording::Within { name, bytes } => vec![Stretch::within(name, bytes)],
+    };
+    let review = review::straight(config, &stretches)?;
+    let paper = Paper { review: &review, grid: &config.grid, zone: config.time_zone, changes: &[] };
+    match text::write(&paper, stdout().lock()) {
+        // Nobody reads on.
+        Err(error) if error.kind() == ErrorKind::BrokenPipe => Ok(()),
+        written => Ok(written?),
     }
-    if !any {
-        return Err(no_frame(recording, &monitor));
-    }
-    write!(stdout(), "tautline, {}: {summary}", recording.name())?;
-    Ok(())
-}
-
-fn no_frame(recording: &Recording, monitor: &Monitor) -> Failure {
-    let findings: Vec<_> = monitor.inputs().iter().flat_map(|input| input.tally.findings()).collect();
-    format!("not a single frame was read from {}\n{}", recording.name(), findings.join("\n")).trim_end().into()
 }

@@ -2,7 +2,7 @@
 
 use std::{
     collections::BTreeMap,
-    fs,
+    iter,
     num::NonZeroUsize,
     path::{Path, PathBuf},
     sync::Arc,
@@ -11,13 +11,18 @@ use std::{
 use chrono::NaiveDate;
 use clap::Args;
 
-use super::{Failure, assess::Sources, papers::Papers, progress, tables::Tables};
+use super::{
+    Failure,
+    assess::Sources,
+    papers::Papers,
+    progress,
+    tables::{Tables, make},
+};
 use crate::{
     config::Config,
     desk::Alternative,
-    feed::Channels,
     report::{change, review::Paper},
-    review::{Done, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
+    review::{Done, FileNote, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
 };
 
 /// Options of `review`.
@@ -85,24 +90,50 @@ impl std::str::FromStr for Share {
 pub fn run(options: &Options) -> Result<(), Failure> {
     options.papers.check()?;
     let (review, config, terms) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
-    if let Some(Share { number, of }) = options.share.filter(|share| share.number > 1 && review.days.is_empty()) {
+    if let Some(Share { number, of }) = options.share.filter(|_| review.days.is_empty()) {
         // One of more jobs than there are days has done what it should.
         eprintln!("tautline: there are too few days for {of} shares: none falls to share {number}");
         return Ok(());
-    }
-    if review.days.is_empty() {
-        let files = names(&options.files);
-        return Err(format!(
-            "not a single frame was read from {files}; tautline assess says what is wrong with a file"
-        )
-        .into());
     }
     let paper = Paper { review: &review, grid: &config.grid, zone: config.time_zone, changes: &terms.changes };
     options.papers.write(&paper)
 }
 
-fn names(files: &[PathBuf]) -> String {
-    files.iter().map(|file| file.display().to_string()).collect::<Vec<_>>().join(", ")
+/// Reviews recordings as they are, all at once.
+pub(super) fn straight(config: &Config, stretches: &[Stretch]) -> Result<Review, Failure> {
+    let task = Task::new(config.clone(), "".into(), change::lines);
+    let mut review = Review::new(config.feed.max_age());
+    let run = Run {
+        task: &task,
+        stretches,
+        threads: None,
+        carry: false,
+        output: &config.grid.corridors.len(),
+        known: &|_, _| None,
+        follow: &|file| Box::new(file),
+    };
+    let barren = run.go(|done: Done| -> Result<(), Failure> {
+        review.add(done.reviewed.day);
+        Ok(())
+    })?;
+    say(&barren, &review)?;
+    Ok(review)
+}
+
+/// Says which files did not bring a frame; fails when none did.
+fn say(barren: &[FileNote], review: &Review) -> Result<(), Failure> {
+    let lines = barren.iter().map(|file| {
+        let what = iter::once("not a single frame").chain(file.findings.iter().map(String::as_str));
+        format!("{}: {}", file.name, what.collect::<Vec<_>>().join("; "))
+    });
+    let lines: Vec<_> = lines.collect();
+    if review.days.is_empty() && !lines.is_empty() {
+        return Err(lines.join("\n").into());
+    }
+    for line in lines {
+        eprintln!("tautline: {line}");
+    }
+    Ok(())
 }
 
 fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
@@ -118,13 +149,7 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
     };
     let alternatives = Alternative::parse(&options.with, &options.without, &config.grid)?;
     let stretches = options.stretches()?;
-    let task = Task {
-        channels: Arc::new(Channels::new(&config)),
-        config: Arc::new(config),
-        configuration: terms.configuration.clone(),
-        alternatives,
-        differences: change::lines,
-    };
+    let task = Task { alternatives, ..Task::new(config, terms.configuration.clone(), change::lines) };
     if let Some(folder) = &options.parts {
         make(folder)?;
     }
@@ -144,7 +169,7 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
         follow: &progress::following(&progress),
     };
     let mut review = Review::new(task.config.feed.max_age());
-    run.go(|done: Done| -> Result<(), Failure> {
+    let barren = run.go(|done: Done| -> Result<(), Failure> {
         let mut reviewed = done.reviewed;
         if let Some(folder) = options.parts.as_deref().filter(|_| !done.was_known) {
             let part = Part::new(terms.clone(), stretches[done.stretch].keys(), reviewed);
@@ -155,11 +180,8 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
         Ok(())
     })?;
     progress.finish_and_clear();
+    say(&barren, &review)?;
     Ok((review, Arc::unwrap_or_clone(task.config), terms))
-}
-
-pub(super) fn make(folder: &Path) -> Result<(), Failure> {
-    fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()).into())
 }
 
 /// A day that was reviewed before, from the same files and under the same terms.

@@ -1,13 +1,13 @@
 //! A table of every assessment for each reviewed day, where one is wanted.
 
 use std::{
-    io,
+    fs, io,
     path::{Path, PathBuf},
 };
 
 use chrono::NaiveDate;
 
-use super::{Failure, review::make};
+use super::Failure;
 use crate::{
     report::parquet::{Columns, Error, ParquetFile},
     review::{Output, Task},
@@ -64,4 +64,9 @@ impl Output for Tables {
 
 fn failed(error: Error) -> io::Error {
     io::Error::other(error)
+}
+
+/// Makes a folder, unless it is there.
+pub(super) fn make(folder: &Path) -> Result<(), Failure> {
+    fs::create_dir_all(folder).map_err(|error| format!("cannot make {}: {error}", folder.display()).into())
 }

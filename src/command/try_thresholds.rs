@@ -193,7 +193,7 @@ fn play(options: &Options, config: &Config, sets: &[Set]) -> Result<Vec<(String,
         }
         is_empty = false;
         let snapshots: Vec<Snapshot> = frames.iter().filter_map(|frame| holder.take(frame)).collect();
-        seats.par_iter_mut().for_each(|seat| seat.take(&snapshots));
+        seats.par_iter_mut().with_max_len(1).for_each(|seat| seat.take(&snapshots));
     }
     progress.finish_and_clear();
     for input in recorded.monitor().inputs() {

@@ -1,62 +1,51 @@
 use std::sync::Arc;
 
-use serde::{Deserialize, Serialize};
-
 use super::{
     Alternative, Assessment, Basis, Binding, BusDetail, CircuitDetail, Criterion, Detail, FitRecord, Learned, Reclose,
     SourceRecord, State, Switch, SwitchKind,
 };
 use crate::{
     config::{Config, LearningSettings, MeasurementSettings},
-    feed::{Channels, Slot, Snapshot, Start},
+    feed::{Channels, Slot, Snapshot},
     fit::{Fit, FittedState, Fitter, Standing},
     grid::{Circuit, Corridor, FROM, TO},
     margin::{Behind, Engine, Footing, Judgement, Present, Seated, Trend},
     network::Topology,
-    source::{Estimate, Learner, Observation, Step, store::StoreError},
+    source::{Estimate, Learner, Observation, Step},
 };
 
 /// One corridor with what is remembered of it.
 #[derive(Debug, Clone)]
 pub struct CorridorDesk {
-    corridor: Arc<Corridor>,
-    channels: Arc<Channels>,
-    fitter: Fitter,
-    learner: Learner,
-    engine: Engine,
-    trend: Trend,
+    pub(super) corridor: Arc<Corridor>,
+    pub(super) channels: Arc<Channels>,
+    pub(super) fitter: Fitter,
+    pub(super) learner: Learner,
+    pub(super) engine: Engine,
+    pub(super) trend: Trend,
     /// Statuses of the frame before, and how often they have changed.
-    topology: Option<Topology>,
-    switches: Arc<[Switch]>,
-    switchings: u64,
-    detailed: bool,
-    learned: Arc<Learned>,
-    settings: Settings,
+    pub(super) topology: Option<Topology>,
+    pub(super) switches: Arc<[Switch]>,
+    pub(super) switchings: u64,
+    pub(super) detailed: bool,
+    pub(super) learned: Arc<Learned>,
+    pub(super) settings: Settings,
 }
 
 /// What of a configuration decides about every corridor.
 #[derive(Debug, Clone, PartialEq)]
-struct Settings {
-    frequency_hz: f64,
-    measurement: MeasurementSettings,
-    learning: LearningSettings,
+pub(super) struct Settings {
+    pub frequency_hz: f64,
+    pub measurement: MeasurementSettings,
+    pub learning: LearningSettings,
 }
 
 impl Settings {
-    fn of(config: &Config) -> Self {
+    pub fn of(config: &Config) -> Self {
         // Whether anything is learned may be said on the command line, too; it makes no other corridor.
         let learning = LearningSettings { enabled: true, ..config.learning };
         Self { frequency_hz: config.grid.frequency_hz, measurement: config.measurement, learning }
     }
-}
-
-/// What is remembered of a corridor, as far as what follows depends on it.
-#[derive(Debug, Serialize, Deserialize)]
-pub struct CorridorMemory {
-    learner: Learner,
-    trend: Trend,
-    topology: Option<Topology>,
-    switchings: u64,
 }
 
 impl CorridorDesk {
@@ -162,50 +151,6 @@ impl CorridorDesk {
         }
     }
 
-    /// What is remembered of it, to be taken up where a recording starts.
-    pub fn memory(&self) -> CorridorMemory {
-        CorridorMemory {
-            learner: self.learner.kept(),
-            trend: self.trend.clone(),
-            topology: self.topology.clone(),
-            switchings: self.switchings,
-        }
-    }
-
-    /// Goes on as a recording says that this corridor stood. What is only quicker to keep is forgotten, so that who goes on
-    /// from here has the same as who was here before.
-    fn begin(&mut self, start: &Start) {
-        let name = self.corridor.name.clone();
-        let Some(CorridorMemory { learner, trend, topology, switchings }) = start.desk(&name) else { return };
-        let is_same = start.config().is_some_and(|config| {
-            Settings::of(config) == self.settings && config.grid.corridors.contains(&*self.corridor)
-        });
-        if !is_same {
-            start.doubt(&name, &"recorded under another configuration; what was learned of other sources begins anew");
-        }
-        let resumed = if is_same { self.learner.resume(learner) } else { self.begin_anew(&learner) };
-        if let Err(error) = resumed {
-            start.doubt(&name, &error);
-        }
-        self.engine = Engine::new(self.settings.frequency_hz);
-        (self.trend, self.topology, self.switchings) = match topology {
-            Some(topology) if is_same && topology.is_of(&self.corridor) => (trend, Some(topology), switchings),
-            _ => (Trend::default(), None, 0),
-        };
-        self.switches = self.topology.as_ref().map_or_else(Arc::default, |topology| switches(&self.corridor, topology));
-        self.show_learned();
-    }
-
-    /// Another corridor than the one recorded: what was learned holds for it too where its configured sources are the same.
-    fn begin_anew(&mut self, recorded: &Learner) -> Result<(), StoreError> {
-        let learning = LearningSettings { enabled: self.learner.is_enabled(), ..self.settings.learning };
-        self.learner = Learner::new(&self.corridor.sides.map(|side| side.source), learning);
-        match recorded.memory() {
-            Some(memory) if self.learner.is_enabled() => self.learner.recall(&memory),
-            _ => Ok(()),
-        }
-    }
-
     fn fit(&mut self, snapshot: &Snapshot) -> Fit {
         if let Some(start) = snapshot.start() {
             self.begin(start);
@@ -292,7 +237,7 @@ impl CorridorDesk {
         step
     }
 
-    fn show_learned(&mut self) {
+    pub(super) fn show_learned(&mut self) {
         if self.detailed {
             self.learned = Arc::new(Learned {
                 steps: self.learner.steps().copied().collect(),
@@ -425,7 +370,7 @@ impl CorridorDesk {
     }
 }
 
-fn switches(corridor: &Corridor, topology: &Topology) -> Arc<[Switch]> {
+pub(super) fn switches(corridor: &Corridor, topology: &Topology) -> Arc<[Switch]> {
     let circuits = corridor.circuits.iter().zip(&topology.closed).zip(&topology.inserted);
     let each = circuits.flat_map(|((circuit, closed), inserted)| {
         let switch = |name: &Arc<str>, kind, on| Switch { name: name.clone(), kind, on };

@@ -4,6 +4,7 @@ mod alternative;
 mod assessment;
 mod change;
 mod corridor;
+mod memory;
 
 use std::sync::Arc;
 
@@ -13,7 +14,8 @@ pub use assessment::{
     Assessment, Basis, BusDetail, CircuitDetail, Detail, FitRecord, Learned, SourceRecord, State, Switch, SwitchKind,
 };
 pub use change::ChangeErrors;
-pub use corridor::{CorridorDesk, CorridorMemory};
+pub use corridor::CorridorDesk;
+pub use memory::CorridorMemory;
 
 use crate::{
     config::Config,

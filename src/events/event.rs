@@ -3,7 +3,6 @@ use std::sync::Arc;
 use chrono::{DateTime, TimeDelta, Utc};
 use serde::{Deserialize, Serialize};
 
-use super::teller::span;
 use crate::{
     alarm::Transition,
     desk::{Assessment, State},
@@ -147,5 +146,18 @@ pub(crate) fn reason(assessment: &Assessment) -> String {
         }
         _ if !assessment.fit.missing.is_empty() => format!(": {} missing", assessment.fit.missing.len()),
         _ => String::new(),
+    }
+}
+
+/// A stretch of time in words.
+pub(super) fn span(span: TimeDelta) -> String {
+    match span.num_milliseconds() {
+        ms @ ..1000 => format!("{ms} ms"),
+        ms @ 1000..120_000 => format!("{} s", ms / 1000),
+        ms @ 120_000..7_200_000 => format!("{} min", ms / 60_000),
+        ms => match (ms / 3_600_000, ms / 60_000 % 60) {
+            (hours, 0) => format!("{hours} h"),
+            (hours, minutes) => format!("{hours} h {minutes} min"),
+        },
     }
 }

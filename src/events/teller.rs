@@ -4,7 +4,7 @@ use chrono::{DateTime, TimeDelta, Utc};
 
 use super::{
     Event, EventKind,
-    event::reason,
+    event::{reason, span},
     flutter::{Fact, News},
 };
 use crate::{
@@ -191,19 +191,6 @@ fn sentence(step: &Step, assessment: &Assessment) -> String {
 
 fn to_and_fro(what: &str, [one, other]: [&str; 2], changes: u32, within: TimeDelta, now: &str) -> String {
     format!("{what}{one} ↔ {other}, {changes} changes in {}; {now} now", span(within))
-}
-
-/// A stretch of time in words.
-pub(super) fn span(span: TimeDelta) -> String {
-    match span.num_milliseconds() {
-        ms @ ..1000 => format!("{ms} ms"),
-        ms @ 1000..120_000 => format!("{} s", ms / 1000),
-        ms @ 120_000..7_200_000 => format!("{} min", ms / 60_000),
-        ms => match (ms / 3_600_000, ms / 60_000 % 60) {
-            (hours, 0) => format!("{hours} h"),
-            (hours, minutes) => format!("{hours} h {minutes} min"),
-        },
-    }
 }
 
 #[cfg(test)]

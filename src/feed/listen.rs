@@ -13,7 +13,7 @@ use tokio::{
 use super::{
     Frame, InputState,
     connect::keep_alive,
-    live::Inlet,
+    inlet::Inlet,
     merge::Lane,
     stream::{Closed, Queue, Strand, Stream},
 };

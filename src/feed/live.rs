@@ -12,9 +12,9 @@ use tokio::{sync::mpsc, task::JoinSet, time::timeout_at};
 
 use super::{
     Channels, Frame, Input, Monitor,
+    inlet::Inlet,
     merge::{Lane, Merger},
     opening::Opening,
-    stream::Outlet,
     switch::Switch,
 };
 use crate::config::FeedSettings;
@@ -72,22 +72,6 @@ pub struct Feed {
     monitor: Monitor,
     /// Stops the inputs when it is dropped.
     _tasks: JoinSet<()>,
-}
-
-/// Where the frames of a lane come out of its queue.
-#[derive(Debug)]
-pub(super) struct Inlet {
-    outlet: Outlet,
-    is_live: bool,
-    has_ended: bool,
-    /// When the frames that wait in the lane came.
-    arrived: Instant,
-}
-
-impl Inlet {
-    pub fn new(outlet: Outlet, is_live: bool) -> Self {
-        Self { outlet, is_live, has_ended: false, arrived: Instant::now() }
-    }
 }
 
 impl Feed {

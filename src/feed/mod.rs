@@ -9,6 +9,7 @@ mod draft;
 mod follow;
 mod frame;
 mod frame_text;
+mod inlet;
 mod input;
 mod jsonl;
 mod line_error;

@@ -7,8 +7,9 @@ use tokio::{
 };
 
 use super::{
-    Channels, Format, Input, InputState, Reader, connect, follow, listen,
-    live::Inlet,
+    Channels, Format, Input, InputState, Reader, connect, follow,
+    inlet::Inlet,
+    listen,
     merge::Lane,
     monitor::Gauge,
     stream::{Closed, Queue, Strand, Stream},

@@ -91,23 +91,32 @@ impl Trend {
         if count < FEWEST_SAMPLES || *last - *first < SHORTEST {
             return None;
         }
-        self.slopes.clear();
-        for (index, (earlier, before)) in self.samples.iter().enumerate() {
-            for (later, after) in self.samples.iter().skip(index + 1) {
-                let minutes = (*later - *earlier).as_seconds_f64() / 60.0;
-                self.slopes.push((after - before) / minutes);
-            }
-        }
-        let pairs = self.slopes.len();
+        let samples = &*self.samples.make_contiguous();
+        let pairs = || {
+            samples
+                .iter()
+                .enumerate()
+                .flat_map(|(index, earlier)| samples[index + 1..].iter().map(move |later| (earlier, later)))
+        };
+        let (rising, falling) = pairs().fold((0, 0), |(rising, falling), ((_, before), (_, after))| {
+            (rising + usize::from(after > before), falling + usize::from(after < before))
+        });
         let n = count as f64;
         let spread = SIGNIFICANCE * (n * (n - 1.0) * (2.0 * n + 5.0) / 18.0).sqrt();
         // Ranks of the interval's ends among the ordered slopes (Sen 1968, §5); whole numbers well within range.
         #[allow(clippy::cast_possible_truncation, clippy::cast_sign_loss)]
         let reach = (spread / 2.0).ceil() as usize;
-        let mut rank = |rank: usize| *self.slopes.select_nth_unstable_by(rank, f64::total_cmp).1;
-        let low = rank((pairs / 2).saturating_sub(reach));
-        let high = rank((pairs / 2 + reach).min(pairs - 1));
-        (low > 0.0 || high < 0.0).then(|| rank(pairs / 2))
+        let all = count * (count - 1) / 2;
+        let (low, high) = ((all / 2).saturating_sub(reach), (all / 2 + reach).min(all - 1));
+        // The lower end is above zero when no more slopes than come before it are not; and the other way round.
+        if all - rising > low && falling <= high {
+            return None;
+        }
+        self.slopes.clear();
+        self.slopes.extend(pairs().map(|((earlier, before), (later, after))| {
+            (after - before) / ((*later - *earlier).as_seconds_f64() / 60.0)
+        }));
+        Some(*self.slopes.select_nth_unstable_by(all / 2, f64::total_cmp).1)
     }
 }
 

@@ -6,7 +6,6 @@ pub mod journal;
 pub mod jsonl;
 pub mod parquet;
 pub mod review;
-pub mod summary;
 mod table;
 pub mod trial;
 

@@ -35,11 +35,19 @@ fn advice(error: &io::Error) -> &'static str {
 /// A recorded file.
 #[derive(Debug, Clone)]
 pub struct Archive {
-    path: PathBuf,
+    source: Source,
     /// What tells it from others, and from what it was before it changed.
     pub key: ArchiveKey,
     /// Time of the first and the last frame, once they are known.
     span: Option<(DateTime<Utc>, DateTime<Utc>)>,
+}
+
+/// Where its bytes are.
+#[derive(Debug, Clone)]
+enum Source {
+    File(PathBuf),
+    /// JSON Lines within the program.
+    Within(&'static [u8]),
 }
 
 /// What tells a file from others.
@@ -73,17 +81,25 @@ impl Archive {
         }
         // Whether it can be read is known before anything is begun.
         File::open(path).map_err(failed)?;
-        Ok(Self { path: path.to_owned(), key: ArchiveKey::new(path, &metadata), span: None })
+        Ok(Self { source: Source::File(path.to_owned()), key: ArchiveKey::new(path, &metadata), span: None })
     }
 
     /// As it was given.
     pub fn name(&self) -> String {
-        self.path.display().to_string()
+        match &self.source {
+            Source::File(path) => path.display().to_string(),
+            Source::Within(_) => self.key.name.clone(),
+        }
     }
 
     fn reader(&self, channels: &Arc<Channels>, follow: &Follow) -> Reader {
-        let bytes = follow(Deferred { path: self.path.clone(), file: None });
-        Reader::new(&self.name(), bytes, Format::of(&self.path), channels)
+        match &self.source {
+            Source::File(path) => {
+                let bytes = follow(Deferred { path: path.clone(), file: None });
+                Reader::new(&self.name(), bytes, Format::of(path), channels)
+            }
+            Source::Within(bytes) => Reader::new(&self.name(), *bytes, Format::JsonLines, channels),
+        }
     }
 
     /// Reads through it for its first and last time.
@@ -144,6 +160,12 @@ impl Stretch {
             first.findings.extend(twice);
         }
         Ok(stretches)
+    }
+
+    /// What is within the program.
+    pub fn within(name: &str, bytes: &'static [u8]) -> Self {
+        let key = ArchiveKey { name: name.into(), bytes: bytes.len() as u64, modified_s: 0 };
+        Self::of(Archive { source: Source::Within(bytes), key, span: None })
     }
 
     fn of(archive: Archive) -> Self {
@@ -223,4 +245,10 @@ impl Read for Deferred {
         };
         file.read(bytes)
     }
+}
+
+/// Files that did not bring a frame, and why.
+pub(super) fn barren(monitor: &Monitor) -> Vec<FileNote> {
+    let note = |input: InputStatus| FileNote { name: input.name.to_string(), findings: input.tally.findings() };
+    monitor.inputs().into_iter().map(note).collect()
 }

@@ -35,6 +35,19 @@ pub struct Task {
     pub alternatives: Vec<Option<Alternative>>,
 }
 
+impl Task {
+    /// A review of what was, without any change.
+    pub fn new(config: Config, configuration: Arc<str>, differences: fn(&Config, &Config) -> Vec<String>) -> Self {
+        Self {
+            channels: Arc::new(Channels::new(&config)),
+            alternatives: vec![None; config.grid.corridors.len()],
+            config: Arc::new(config),
+            configuration,
+            differences,
+        }
+    }
+}
+
 /// Takes every assessment as it is made, one for each corridor: to write it down in full.
 pub trait Rows: Send {
     /// Takes the next one, and what it would have been with the change that was asked for.
@@ -132,7 +145,10 @@ impl<R: Rows> Bench<R> {
                 self.begin(start, snapshot.time);
             }
         }
-        self.seats.par_iter_mut().for_each(|seat| snapshots.iter().for_each(|snapshot| seat.take(snapshot)));
+        self.seats
+            .par_iter_mut()
+            .with_max_len(1)
+            .for_each(|seat| snapshots.iter().for_each(|snapshot| seat.take(snapshot)));
     }
 
     /// Every corridor takes up by itself how it stood; here is what there is to say of it.

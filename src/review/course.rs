@@ -181,6 +181,20 @@ impl Course {
         later.alarms.iter().for_each(|count| self.raised(&count.alarm, count.priority, count.raised));
     }
 
+    /// The lowest headroom, unless there was no balance at all meanwhile: that is worse.
+    pub fn lowest(&self) -> Option<&Least> {
+        self.least.as_ref().filter(|_| self.unbalanced.is_none())
+    }
+
+    /// The most whole megawatts that were there for this part of the time (0 to 1); `None` where nothing is known, or there
+    /// was no balance for longer.
+    pub fn held_for(&self, part: f64) -> Option<i32> {
+        let known_ms = self.durations.total_ms();
+        let all_ms = known_ms + self.unbalanced.map_or(0, |unbalanced| unbalanced.ms);
+        let part = part * all_ms as f64 / known_ms.max(1) as f64;
+        self.durations.held_for(part).filter(|_| part <= 1.0)
+    }
+
     /// Time in a state, minutes.
     pub fn minutes(&self, state: State) -> f64 {
         self.state_ms.ms(&state) as f64 / 60_000.0

@@ -17,7 +17,7 @@ use chrono::NaiveDate;
 use rayon::{ThreadPool, ThreadPoolBuilder};
 use serde_json::value::RawValue;
 
-use super::{Bench, Day, Follow, Rows, Stretch, Task};
+use super::{Bench, Day, FileNote, Follow, Rows, Stretch, Task, archive::barren};
 use crate::feed::{Frame, Recorded};
 
 /// Frames assessed at once.
@@ -81,11 +81,19 @@ pub struct Done {
 }
 
 /// A stretch to be done, and where its days go.
-type Job = (usize, SyncSender<io::Result<Done>>);
+type Job = (usize, SyncSender<io::Result<Step>>);
+
+/// What comes of a stretch.
+enum Step {
+    Day(Done),
+    /// Files without a single frame.
+    Nothing(Vec<FileNote>),
+}
 
 impl<O: Output> Run<'_, O> {
-    /// Reviews everything; `each` gets the days in the order of time, and may end it by failing.
-    pub fn go<E: From<io::Error>>(&self, mut each: impl FnMut(Done) -> Result<(), E>) -> Result<(), E> {
+    /// Reviews everything; `each` gets the days in the order of time, and may end it by failing. Returns the files that
+    /// did not bring a single frame.
+    pub fn go<E: From<io::Error>>(&self, mut each: impl FnMut(Done) -> Result<(), E>) -> Result<Vec<FileNote>, E> {
         let threads = self.threads.map_or(0, NonZeroUsize::get);
         let pool = ThreadPoolBuilder::new().num_threads(threads).build().map_err(io::Error::other)?;
         let workers = if self.carry { 1 } else { pool.current_num_threads().min(self.stretches.len()) };
@@ -97,7 +105,8 @@ impl<O: Output> Run<'_, O> {
             for _ in 0..workers {
                 scope.spawn(move || self.work(pool, taken));
             }
-            let mut ahead: VecDeque<Receiver<io::Result<Done>>> = VecDeque::new();
+            let mut ahead: VecDeque<Receiver<io::Result<Step>>> = VecDeque::new();
+            let mut barren = Vec::new();
             let mut next = 0..self.stretches.len();
             loop {
                 // Not so far ahead that days pile up.
@@ -110,9 +119,12 @@ impl<O: Output> Run<'_, O> {
                     }
                     ahead.push_back(coming);
                 }
-                let Some(days) = ahead.pop_front() else { return Ok(()) };
-                for done in days {
-                    each(done?)?;
+                let Some(days) = ahead.pop_front() else { return Ok(barren) };
+                for step in days {
+                    match step? {
+                        Step::Day(done) => each(done)?,
+                        Step::Nothing(files) => barren.extend(files),
+                    }
                 }
             }
         })
@@ -135,10 +147,10 @@ impl<O: Output> Run<'_, O> {
         place: usize,
         pool: &ThreadPool,
         before: &mut Before,
-        days: &SyncSender<io::Result<Done>>,
+        days: &SyncSender<io::Result<Step>>,
     ) -> io::Result<()> {
         let stretch = &self.stretches[place];
-        let send = |reviewed, was_known| days.send(Ok(Done { reviewed, stretch: place, was_known })).is_ok();
+        let send = |reviewed, was_known| days.send(Ok(Step::Day(Done { reviewed, stretch: place, was_known }))).is_ok();
         let known = |date| (self.known)(stretch, date);
         // A day that is not known may have no frame, or wait to be reviewed: the files tell.
         if let Some((first, last)) = stretch.days.filter(|_| !self.carry) {
@@ -152,6 +164,10 @@ impl<O: Output> Run<'_, O> {
         let monitor = recorded.monitor().clone();
         let mut frames = recorded.peekable();
         let mut findings = stretch.findings.clone();
+        if frames.peek().is_none() {
+            let _unheard = days.send(Ok(Step::Nothing(barren(&monitor))));
+            return Ok(());
+        }
         while let Some(date) = frames.peek().map(|frame| frame.time.date_naive()) {
             // What is carried over is known only as long as everything before it is.
             let reviewed = known(date).filter(|_| !self.carry || before.was_known);

@@ -40,6 +40,15 @@ impl Default for Series {
 }
 
 impl Series {
+    /// The same in no more slots than this, which may be longer.
+    #[must_use]
+    pub fn in_at_most(mut self, slots: usize) -> Self {
+        while self.slots.len() > slots.max(1) {
+            self.lengthen();
+        }
+        self
+    }
+
     pub(super) fn take(&mut self, assessment: &Assessment, transfer_mw: Option<f64>) {
         let twice = |mw: f64| [mw, mw];
         self.push(Slot {

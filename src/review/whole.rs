@@ -98,7 +98,9 @@ pub struct Brief {
     pub transfer_mw: Option<[f64; 2]>,
     /// Its mean.
     pub mean_transfer_mw: Option<f64>,
-    /// The lowest headroom.
+    /// Time without any balance, ms.
+    pub unbalanced_ms: i64,
+    /// The lowest headroom, where there was a balance all the time.
     pub least: Option<Least>,
     /// Headroom that was there for half of the time, and for 95 %, whole MW.
     pub held_mw: [Option<i32>; 2],
@@ -112,8 +114,9 @@ impl Brief {
             state_ms: course.state_ms.clone(),
             transfer_mw: course.transfer_mw,
             mean_transfer_mw: course.mean_transfer_mw(),
-            least: course.least.clone(),
-            held_mw: [0.5, 0.95].map(|part| course.durations.held_for(part)),
+            unbalanced_ms: course.unbalanced.map_or(0, |unbalanced| unbalanced.ms),
+            least: course.lowest().cloned(),
+            held_mw: [0.5, 0.95].map(|part| course.held_for(part)),
             alarms: course.alarms.iter().map(|count| count.raised).sum(),
         }
     }

@@ -6,7 +6,7 @@ use nalgebra::SMatrix;
 use serde::{Deserialize, Serialize};
 
 use super::{
-    kept::or_never,
+    beyond::or_never,
     terminal::{Measured, MeasuredCovariance},
 };
 

@@ -5,8 +5,8 @@ use serde::{Deserialize, Serialize};
 use super::{
     Observation,
     background::Background,
+    beyond::{or_ever, or_never},
     hypothesis::Moment,
-    kept::{or_ever, or_never},
     terminal::{Impedances, Measured, Terminal, behind, state_covariance},
     window::{Bin, Recent, Window},
 };

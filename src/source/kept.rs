@@ -1,7 +1,6 @@
 //! A learner as a whole, to go on elsewhere exactly where it stood.
 
 use chrono::{DateTime, Datelike, Utc};
-use serde::{Deserialize, Deserializer};
 
 use super::{
     Estimate, Learner,
@@ -46,14 +45,4 @@ impl Learner {
         *self = Self { settings: self.settings, ..kept };
         Ok(())
     }
-}
-
-/// A time in seconds, or long before all times, which JSON has no number for.
-pub(super) fn or_never<'de, D: Deserializer<'de>>(deserializer: D) -> Result<f64, D::Error> {
-    Ok(Option::deserialize(deserializer)?.unwrap_or(f64::NEG_INFINITY))
-}
-
-/// Spreads, or none that is large enough, likewise.
-pub(super) fn or_ever<'de, D: Deserializer<'de>>(deserializer: D) -> Result<[f64; 2], D::Error> {
-    Ok(<[Option<f64>; 2]>::deserialize(deserializer)?.map(|spread| spread.unwrap_or(f64::INFINITY)))
 }

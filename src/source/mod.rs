@@ -17,6 +17,7 @@
 //! 1999 (Thevenin equivalents from local phasors) · Rousseeuw and Croux, JASA 1993 (median absolute deviation).
 
 mod background;
+mod beyond;
 mod detector;
 mod estimate;
 mod hypothesis;

@@ -5,7 +5,6 @@ use std::{
     io::Write,
     num::NonZeroUsize,
     path::{Path, PathBuf},
-    sync::Arc,
 };
 
 use chrono::NaiveDate;
@@ -73,13 +72,8 @@ impl Bed {
     }
 
     pub fn task(&self, alternatives: Vec<Option<Alternative>>) -> Task {
-        Task {
-            config: Arc::new(self.config.clone()),
-            configuration: self.configuration.as_str().into(),
-            channels: Arc::new(Channels::new(&self.config)),
-            differences: tautline::report::change::lines,
-            alternatives,
-        }
+        let text = self.configuration.as_str().into();
+        Task { alternatives, ..Task::new(self.config.clone(), text, tautline::report::change::lines) }
     }
 
     /// The days in these files.

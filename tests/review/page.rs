@@ -49,7 +49,7 @@ fn checked(paper: &Paper) -> String {
 fn headings_are_in_order<'a>(nodes: impl Iterator<Item = Node<'a, 'a>>) {
     let levels = nodes.filter_map(|node| node.tag_name().name().strip_prefix('h')?.parse::<u8>().ok());
     let levels: Vec<_> = levels.collect();
-    assert_eq!(levels.iter().filter(|level| **level == 1).count(), 1);
+    assert!(levels.first() == Some(&1) && !levels[1..].contains(&1), "{levels:?}");
     assert!(levels.windows(2).all(|pair| pair[1] <= pair[0] + 1), "{levels:?}");
 }
 
@@ -72,7 +72,9 @@ fn empty_blind_and_single_frames_have_a_page() {
     checked(&paper(&task, &Review::new(task.config.feed.max_age()), &[]));
     let mut frames = frames(&task, 1);
     checked(&paper(&task, &review_of(&task, &frames[..1]), &[]));
-    frames.iter_mut().for_each(|frame| frame.readings.clear());
+    for frame in &mut frames {
+        frame.readings.clear();
+    }
     let page = checked(&paper(&task, &review_of(&task, &frames), &[]));
     assert!(page.contains("Headroom never known."));
 }
@@ -108,6 +110,35 @@ fn names_are_never_markup() {
     let page = checked(&paper(&task, &review, &[hostile]));
     assert!(!page.contains(['\u{1b}', '\u{202e}', '\0']));
     assert!(page.len() < 300_000, "{} bytes", page.len());
+}
+
+/// Relative luminance of `#rrggbb` (WCAG 2.2).
+fn luminance(colour: &str) -> f64 {
+    let channel = |place: usize| {
+        let value = f64::from(u8::from_str_radix(&colour[place..place + 2], 16).unwrap()) / 255.0;
+        if value <= 0.04045 { value / 12.92 } else { ((value + 0.055) / 1.055).powf(2.4) }
+    };
+    0.2126 * channel(1) + 0.7152 * channel(3) + 0.0722 * channel(5)
+}
+
+#[test]
+fn every_colour_stands_out_from_the_paper_in_light_dark_and_print() {
+    let (task, review) = small();
+    let page = page(&paper(&task, &review, &[]));
+    let colours = |name: &str| -> Vec<f64> {
+        page.match_indices(&format!("--{name}: #"))
+            .map(|(at, found)| luminance(&page[at + found.len() - 1..]))
+            .collect()
+    };
+    let papers = colours("paper");
+    assert_eq!(papers.len(), 3);
+    for name in ["ink", "muted", "link", "transfer", "headroom", "would", "spent", "thin", "blind"] {
+        for (colour, paper) in colours(name).into_iter().zip(&papers) {
+            let contrast = (colour.max(*paper) + 0.05) / (colour.min(*paper) + 0.05);
+            assert!(contrast >= 4.5, "{name} has a contrast of {contrast:.2}");
+        }
+        assert_eq!(colours(name).len(), 3, "{name}");
+    }
 }
 
 #[test]

@@ -1,16 +1,12 @@
 //! Reviews to be written down, made from a part of the demo day.
 
-use std::{
-    fs::File,
-    path::Path,
-    sync::{Arc, OnceLock},
-};
+use std::{fs::File, path::Path, sync::OnceLock};
 
 use chrono::{DateTime, TimeDelta, Utc};
 use chrono_tz::Tz;
 use tautline::{
     config::Config,
-    feed::{Channels, Format, Frame, Reader, Recorded},
+    feed::{Format, Frame, Reader, Recorded},
     report::review::{Paper, html, text},
     review::{Bench, FileNote, Review, Task},
 };
@@ -20,11 +16,7 @@ pub const DAY: &str = "replay-data/demo-day.jsonl.zst";
 /// What is needed to review the demo.
 pub fn task() -> Task {
     let (config, configuration) = Config::read(Path::new("config/demo.toml")).unwrap();
-    let config = Arc::new(config);
-    let channels = Arc::new(Channels::new(&config));
-    let alternatives = vec![None; config.grid.corridors.len()];
-    let differences = tautline::report::change::lines;
-    Task { config, configuration: configuration.into(), channels, differences, alternatives }
+    Task::new(config, configuration.into(), tautline::report::change::lines)
 }
 
 /// Frames of the demo day, of so many minutes from a quarter to ten, when a circuit trips.

@@ -59,6 +59,24 @@ fn an_outage_that_is_not_reckoned_with_binds_no_more() {
     assert!(what_if.least.as_ref().unwrap().headroom_mw > plain[0].0.least.as_ref().unwrap().headroom_mw);
 }
 
+/// Where part of the day has no balance, that is the lowest, and the first part of the curve that is not there.
+#[test]
+fn a_time_without_balance_is_worse_than_any_headroom() {
+    let bed = Bed::new(24.0);
+    let corridor = &bed.config.grid.corridors[0].name;
+    let plain = compared(&bed, &[], &[]);
+    let peak = 0.5 * plain[0].0.transfer_mw.unwrap()[1] + 0.5 * plain[0].0.transfer_mw.unwrap()[0];
+    let least = plain[0].0.least.as_ref().unwrap();
+    let shift = least.headroom_mw + 2.0 * peak;
+    let changed = compared(&bed, &[&format!("transfer {corridor} {shift}")], &[]);
+    let what_if = changed[0].1.as_ref().unwrap();
+    let (known_ms, none_ms) = (what_if.durations.total_ms(), what_if.unbalanced.map_or(0, |unbalanced| unbalanced.ms));
+    assert!(known_ms > 0 && none_ms > 0, "{known_ms} and {none_ms} ms: another shift would be better");
+    assert!(what_if.least.is_some() && what_if.lowest().is_none());
+    let part = known_ms as f64 / (known_ms + none_ms) as f64;
+    assert!(what_if.held_for(part - 1e-6).is_some() && what_if.held_for(part + 1e-6).is_none());
+}
+
 #[test]
 fn without_a_balance_there_is_no_headroom_but_spent_time() {
     let bed = Bed::new(24.0);
@@ -68,5 +86,5 @@ fn without_a_balance_there_is_no_headroom_but_spent_time() {
     let unbalanced = what_if.unbalanced.unwrap();
     assert_eq!(unbalanced.ms, what_if.state_ms.ms(&State::Spent));
     assert_eq!(what_if.durations.total_ms(), 0);
-    assert!(what_if.least.is_none());
+    assert!(what_if.lowest().is_none() && what_if.held_for(0.5).is_none());
 }

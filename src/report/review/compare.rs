@@ -1,8 +1,10 @@
 //! A corridor's figures: as it was, as it would have been, and what the difference is.
 
+use chrono::{DateTime, Utc};
+
 use super::{
     clock::Clock,
-    figures::{minutes, mw, name, room, signed},
+    figures::{NO_BALANCE, minutes, mw, name, room, signed},
 };
 use crate::{
     desk::State,
@@ -30,19 +32,19 @@ struct Side<'a> {
 
 impl Side<'_> {
     fn number(&self, what: &str, places: usize, show: fn(f64) -> String, of: impl Fn(&Course) -> Option<f64>) -> Row {
-        let shown = |value: Option<f64>| value.map_or("never known".into(), show);
         let [was, would] = [Some(self.was), self.would].map(|course| course.map(&of));
+        let shown = |value: Option<f64>, course| value.map_or_else(|| unknown(course).into(), show);
         let difference = was.flatten().zip(would.flatten()).map(|(was, would)| signed(would - was, places));
         Row {
             what: what.into(),
-            was: was.map_or(String::new(), shown),
-            would: would.map_or(String::new(), shown),
+            was: was.map_or(String::new(), |was| shown(was, self.was)),
+            would: would.zip(self.would).map_or(String::new(), |(would, course)| shown(would, course)),
             difference: difference.unwrap_or_default(),
         }
     }
 
     fn words(&self, what: &str, of: impl Fn(&Course) -> Option<String>) -> Row {
-        let shown = |course: &Course| of(course).unwrap_or_else(|| "never known".into());
+        let shown = |course: &Course| of(course).unwrap_or_else(|| unknown(course).into());
         Row {
             what: what.into(),
             was: shown(self.was),
@@ -52,27 +54,41 @@ impl Side<'_> {
     }
 }
 
+/// What to say where there is no number.
+pub(super) fn unknown(course: &Course) -> &'static str {
+    if course.unbalanced.is_some() { NO_BALANCE } else { "never known" }
+}
+
+/// When it was worst.
+pub(super) fn first_worst(course: &Course) -> Option<DateTime<Utc>> {
+    course.unbalanced.map(|unbalanced| unbalanced.first).or(course.least.as_ref().map(|least| least.time))
+}
+
 /// All figures of a corridor that are one number or one word.
 pub(super) fn rows(clock: &Clock, corridor: &CorridorReview) -> Vec<Row> {
     let side = Side { was: &corridor.was, would: corridor.what_if.as_ref() };
-    let least = |course: &Course| course.least.clone();
+    let least = |course: &Course| course.lowest().cloned();
     let mut rows = vec![
         side.number("lowest transfer, MW", 0, mw, |course| course.transfer_mw.map(|[low, _]| low)),
         side.number("mean transfer, MW", 0, mw, Course::mean_transfer_mw),
         side.number("highest transfer, MW", 0, mw, |course| course.transfer_mw.map(|[_, high]| high)),
         side.number("least headroom, MW", 0, room, |course| least(course).map(|least| least.headroom_mw)),
         side.number("  its spread, ± MW", 0, |sd| mw(sd.ceil()), |course| least(course)?.headroom_sd_mw),
-        side.words("  when", |course| least(course).map(|least| clock.when(least.time))),
+        side.words("  when", |course| first_worst(course).map(|time| clock.when(time))),
         side.words("  set by", |course| least(course)?.binding.as_ref().map(cause)),
         side.number("  transfer then, MW", 0, mw, |course| least(course)?.transfer_mw),
     ];
     rows.extend(HELD_PCT.map(|pct| {
-        let held = |course: &Course| course.durations.held_for(f64::from(pct) / 100.0).map(f64::from);
+        let held = |course: &Course| course.held_for(f64::from(pct) / 100.0).map(f64::from);
         side.number(&format!("headroom for {pct} % of time, MW"), 0, mw, held)
     }));
     rows.extend(STATES.map(|state| {
         side.number(&format!("minutes {}", state.word()), 1, minutes, |course| Some(course.minutes(state)))
     }));
+    if side.would.is_some_and(|would| would.unbalanced.is_some()) {
+        let lasted = |course: &Course| Some(course.unbalanced.map_or(0, |unbalanced| unbalanced.ms) as f64 / 60_000.0);
+        rows.push(side.number("minutes without balance", 1, minutes, lasted));
+    }
     rows.push(side.number("alarms raised", 0, mw, |course| {
         Some(course.alarms.iter().map(|count| count.raised).sum::<u64>() as f64)
     }));

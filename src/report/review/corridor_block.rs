@@ -4,9 +4,8 @@ use super::{
     Paper,
     clock::Clock,
     compare::{cause, causes, rows},
-    figures::{minutes_of, name, number, share},
-    html::anchor,
-    markup::{Cell, Table, escape, put},
+    figures::{lasting, minutes_of, name, number, share},
+    markup::{Cell, Table, anchor, escape, put},
     plot::{CoursePlot, durations},
     scale::TimeScale,
 };
@@ -14,6 +13,8 @@ use crate::review::{CorridorReview, SourceNote};
 
 /// Rows of the tables; everything is in the JSON.
 const MOST_ROWS: usize = 25;
+/// Slots that are still told apart on a page.
+const MOST_SLOTS: usize = 512;
 
 /// One corridor, to be written.
 pub(super) struct CorridorBlock<'a> {
@@ -30,7 +31,7 @@ impl CorridorBlock<'_> {
         let own = name(&self.corridor.corridor);
         put!(page, "<section id=\"{anchor}\" class=\"corridor\"><h2>{}</h2>\n", escape(&own));
         self.course(page, &format!("{anchor}-course"));
-        *page += "<div class=\"parts\"><div>";
+        *page += "<div class=\"parts\"><div class=\"figures\">";
         self.figures(page);
         *page += "</div><div class=\"half\"><h3>Duration curve</h3>\n<figure>";
         self.scroll(page, "duration curve");
@@ -69,11 +70,13 @@ impl CorridorBlock<'_> {
         *page += "<h3>Course</h3>\n<figure>";
         self.scroll(page, "course");
         let (paper, clock, time, corridor) = (self.paper, self.clock, self.time, self.corridor);
-        CoursePlot { paper, clock, time, corridor, id }.draw(page);
-        let slot = corridor.was.series.slot_s / 60;
+        let courses = [Some(&corridor.was), corridor.what_if.as_ref()].into_iter().flatten();
+        let series: Vec<_> = courses.map(|course| course.series.clone().in_at_most(MOST_SLOTS)).collect();
+        CoursePlot { paper, clock, time, corridor, series: &series, id }.draw(page);
+        let slot = lasting(1000 * series[0].slot_s);
         put!(
             page,
-            "</div><figcaption>Bands: lowest to highest in each {slot} min, white where there is nothing. ○ least headroom. "
+            "</div><figcaption>Bands: lowest to highest in each {slot}, blank where there is nothing. ○ least headroom. "
         );
         if let Some(known) = paper.configured(corridor) {
             put!(page, "Dashed line: thin threshold, {} MW. ", number(known.thin_mw, 0));

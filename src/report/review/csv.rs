@@ -9,12 +9,13 @@ use crate::review::{Brief, DayFigures};
 
 const DAY: [&str; 4] = ["date", "corridor", "beginning", "frames"];
 /// Those of a corridor as it was; as it would have been, `if_` is before each.
-const BRIEF: [&str; 17] = [
+const BRIEF: [&str; 18] = [
     "data_minutes",
     "ample_minutes",
     "thin_minutes",
     "spent_minutes",
     "blind_minutes",
+    "no_balance_minutes",
     "transfer_low_mw",
     "transfer_mean_mw",
     "transfer_high_mw",
@@ -68,6 +69,7 @@ fn cells(brief: &Brief) -> [String; BRIEF.len()] {
         thin,
         spent,
         blind,
+        minutes(brief.unbalanced_ms),
         low,
         number(brief.mean_transfer_mw),
         high,

@@ -1,7 +1,7 @@
 //! What the figures of a review mean.
 
 /// Each with its meaning.
-pub(super) const DEFINITIONS: [(&str, &str); 14] = [
+pub(super) const DEFINITIONS: [(&str, &str); 15] = [
     (
         "transfer",
         "MW from the exporting terminal into the circuits; here positive from the corridor's first terminal to \
@@ -46,6 +46,11 @@ pub(super) const DEFINITIONS: [(&str, &str); 14] = [
     ),
     ("course", "Slots of equal time with the lowest and the highest value in each, and the worst state."),
     ("would have been", "The same frames with the changes of the what-if: everything but these is as recorded."),
+    (
+        "no balance",
+        "The changes of the what-if ask for more than the corridor can carry: no headroom is left that a number could \
+      tell. It counts as spent, and as less than any headroom.",
+    ),
     (
         "missing, set aside",
         "Time for which a channel brought no usable value, or did not fit the others and was left out.",

@@ -6,6 +6,8 @@ use crate::config::wording::is_unprintable;
 pub(super) const LONGEST_NAME: usize = 60;
 /// Characters of a sentence that are shown.
 pub(super) const LONGEST_SENTENCE: usize = 300;
+/// Stands for a headroom where a change leaves no balance.
+pub(super) const NO_BALANCE: &str = "no balance";
 /// Stands where there is no value.
 pub(super) const NONE: &str = "–";
 

@@ -2,22 +2,25 @@
 
 use std::io::{self, Write};
 
+use chrono::TimeDelta;
+
 use super::{
     Paper,
     clock::Clock,
-    compare::cause,
+    compare::{cause, unknown},
     corridor_block::CorridorBlock,
     definitions::DEFINITIONS,
-    figures::{LONGEST_SENTENCE, NONE, lasting, minutes_of, mw, name, plain, room, share},
-    markup::{Cell, Table, escape, put},
+    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, lasting, minutes_of, mw, name, plain, room, share, signed},
+    markup::{Cell, Table, anchor, escape, put},
     plot::time_scale,
     scale::{TimeScale, in_full},
     strip::PATTERNS,
 };
 use crate::{
     desk::State,
+    events::{Event, EventKind},
     report::CAUTION,
-    review::{Brief, CorridorReview, DayFigures},
+    review::{Brief, CorridorReview, Course, DayFigures},
 };
 
 const STYLE: &str = include_str!("page.css");
@@ -48,11 +51,6 @@ pub fn write(paper: &Paper, mut to: impl Write) -> io::Result<()> {
     page += "</main>\n";
     page += concat!("<footer><p>tautline ", env!("CARGO_PKG_VERSION"), "</p></footer>\n</body>\n</html>\n");
     to.write_all(page.as_bytes())
-}
-
-/// The anchor of a corridor.
-pub(super) fn anchor(place: usize) -> String {
-    format!("corridor-{}", place + 1)
 }
 
 fn head(page: &mut String, paper: &Paper, clock: &Clock, time: &TimeScale) {
@@ -113,7 +111,9 @@ fn zone(time: &TimeScale) -> String {
     }
     let mut told = format!("Times are of {}: {}", time.zone.name(), offset(time.begin_s));
     for shift in shifts.iter().take(4) {
-        let when = time.local(shift.at_s - 1).map_or(String::new(), |time| time.format("%-d %b %H:%M").to_string());
+        // As the clock shows it before it is turned.
+        let turned = time.local(shift.at_s - 1).map(|time| time.naive_local() + TimeDelta::seconds(1));
+        let when = turned.map_or(String::new(), |time| time.format("%-d %b %H:%M").to_string());
         put!(told, " until {when}, then {}", offset(shift.at_s));
     }
     told + "."
@@ -125,23 +125,25 @@ fn summary(page: &mut String, paper: &Paper, clock: &Clock) {
         *page += "<p>Not a single frame was read.</p></section>\n";
         return;
     }
-    let compared = paper.review.corridors.iter().any(|corridor| corridor.what_if.is_some());
+    let corridors = || paper.review.corridors.iter().enumerate();
     let mut heading = vec!["corridor", "least headroom, MW", "when", "set by", "thin, min", "spent, min", "blind, min"];
     heading.extend(["known", "transfer, MW"]);
-    if compared {
-        heading.extend(["would have been, MW", "difference, MW", "would be thin, min", "would be spent, min"]);
-    }
     let table = Table { caption: "All corridors", label: "", heading: &heading };
-    let rows = paper.review.corridors.iter().enumerate();
-    table.write(page, rows.map(|(place, corridor)| summary_row(paper, clock, compared, place, corridor)));
+    table.write(page, corridors().map(|(place, corridor)| summary_row(paper, clock, place, corridor)));
+    if corridors().any(|(_, corridor)| corridor.what_if.is_some()) {
+        let heading =
+            ["corridor", "least headroom, MW", "would have been", "difference", "thin, min", "would have been"];
+        let heading = heading.into_iter().chain(["spent, min", "would have been"]).collect::<Vec<_>>();
+        let table = Table { caption: "What if", label: "", heading: &heading };
+        table.write(page, corridors().filter_map(|(place, corridor)| what_if_row(place, corridor)));
+    }
     *page += "</section>\n";
 }
 
-fn summary_row(paper: &Paper, clock: &Clock, compared: bool, place: usize, corridor: &CorridorReview) -> Vec<Cell> {
+fn summary_row(paper: &Paper, clock: &Clock, place: usize, corridor: &CorridorReview) -> Vec<Cell> {
     let none = || NONE.to_owned();
     let was = &corridor.was;
     let least = was.least.as_ref();
-    let minutes = |state| Cell::number(minutes_of(was.state_ms.ms(&state)));
     let known_ms = was.state_ms.total_ms() - was.state_ms.ms(&State::Blind);
     let transfer = was.transfer_mw.map_or_else(none, |[low, high]| format!("{} to {}", mw(low), mw(high)));
     let mut row = vec![
@@ -149,27 +151,26 @@ fn summary_row(paper: &Paper, clock: &Clock, compared: bool, place: usize, corri
         Cell::number(least.map_or_else(none, |least| room(least.headroom_mw))),
         Cell::text(least.map_or_else(none, |least| clock.when(least.time))),
         Cell::text(least.and_then(|least| least.binding.as_ref()).map_or_else(none, cause)),
-        minutes(State::Thin),
-        minutes(State::Spent),
-        minutes(State::Blind),
-        Cell::number(paper.review.part(known_ms).map_or_else(none, share)),
-        Cell::number(transfer),
     ];
-    if compared {
-        let would = corridor.what_if.as_ref();
-        let would_least = would.and_then(|would| would.least.as_ref());
-        let difference = least.zip(would_least).map(|(least, would)| would.headroom_mw - least.headroom_mw);
-        let minutes = |state| {
-            Cell::number(would.map_or_else(|| "unchanged".into(), |would| minutes_of(would.state_ms.ms(&state))))
-        };
-        row.extend([
-            Cell::number(would_least.map_or_else(none, |least| room(least.headroom_mw))),
-            Cell::number(difference.map_or_else(none, |mw| super::figures::signed(mw, 0))),
-            minutes(State::Thin),
-            minutes(State::Spent),
-        ]);
-    }
+    row.extend(
+        [State::Thin, State::Spent, State::Blind].map(|state| Cell::number(minutes_of(was.state_ms.ms(&state)))),
+    );
+    row.push(Cell::number(paper.review.part(known_ms).map_or_else(none, share)));
+    row.push(Cell::number(transfer));
     row
+}
+
+fn what_if_row(place: usize, corridor: &CorridorReview) -> Option<Vec<Cell>> {
+    let courses = [&corridor.was, corridor.what_if.as_ref()?];
+    let least = courses.map(|course| course.lowest().map(|least| least.headroom_mw));
+    let shown =
+        |course: &Course| course.lowest().map_or_else(|| unknown(course).into(), |least| room(least.headroom_mw));
+    let [was, would] = courses.map(|course| Cell::number(shown(course)));
+    let difference = least[0].zip(least[1]).map_or(NONE.into(), |(was, would)| signed(would - was, 0));
+    let mut row = vec![Cell::Link(anchor(place), name(&corridor.corridor)), was, would, Cell::number(difference)];
+    let minutes = |state| courses.map(|course| Cell::number(minutes_of(course.state_ms.ms(&state))));
+    row.extend([State::Thin, State::Spent].into_iter().flat_map(minutes));
+    Some(row)
 }
 
 /// One row for each day, with the corridor that came closest.
@@ -222,7 +223,9 @@ fn day_row(paper: &Paper, day: &DayFigures, compared: bool) -> Vec<Cell> {
     }));
     if compared {
         let would = day.corridors.iter().filter_map(|(_, would)| would.as_ref());
-        row.push(Cell::number(shown(would.map(least).fold(f64::INFINITY, f64::min))));
+        let parts = would.clone().any(|would| would.unbalanced_ms > 0);
+        let lowest = shown(would.map(least).fold(f64::INFINITY, f64::min));
+        row.push(Cell::number(if parts { NO_BALANCE.into() } else { lowest }));
     }
     row
 }
@@ -231,20 +234,22 @@ fn events(page: &mut String, paper: &Paper, clock: &Clock) {
     let review = paper.review;
     *page += "<section id=\"events\"><h2>Events</h2>\n";
     let listed = review.most_telling(MOST_EVENTS);
-    if listed.is_empty() {
-        *page += "<p>Nothing happened that is worth a line.</p>";
+    let is_routine = |event: &&&Event| matches!(event.kind, EventKind::Step | EventKind::Meter);
+    let (routine, telling): (Vec<_>, Vec<_>) = listed.iter().partition(is_routine);
+    let write = |page: &mut String, caption, events: &[&Event]| {
+        let heading = ["time", "corridor", "kind", "what happened"];
+        let rows = events.iter().map(|event| event_row(clock, event));
+        Table { caption, label: "", heading: &heading }.write(page, rows);
+    };
+    if telling.is_empty() {
+        *page += "<p>No switching, no change of state, no alarm, no gap.</p>";
     } else {
-        let table =
-            Table { caption: "Events in order", label: "", heading: &["time", "corridor", "kind", "what happened"] };
-        let rows = listed.iter().map(|event| {
-            vec![
-                Cell::text(clock.when(event.time)),
-                Cell::text(event.corridor.as_ref().map_or(NONE.into(), |corridor| name(corridor))),
-                Cell::text(event.kind.word()),
-                Cell::text(plain(&event.text, LONGEST_SENTENCE)),
-            ]
-        });
-        table.write(page, rows);
+        write(page, "Switching, states, alarms and gaps, in order", &telling);
+    }
+    if !routine.is_empty() {
+        *page += "<div class=\"on-screen\">";
+        write(page, "Steps of the sources, and meters", &routine);
+        *page += "</div><p class=\"muted\">Steps and meters are not printed.</p>";
     }
     if listed.len() < review.events.len() {
         put!(page, "<p>{} less telling ones are in the JSON report.</p>", review.events.len() - listed.len());
@@ -253,6 +258,15 @@ fn events(page: &mut String, paper: &Paper, clock: &Clock) {
         put!(page, "<p>{} more were too many to be kept.</p>", review.events_left_out);
     }
     *page += "</section>\n";
+}
+
+fn event_row(clock: &Clock, event: &Event) -> Vec<Cell> {
+    vec![
+        Cell::text(clock.when(event.time)),
+        Cell::text(event.corridor.as_ref().map_or(NONE.into(), |corridor| name(corridor))),
+        Cell::text(event.kind.word()),
+        Cell::text(plain(&event.text, LONGEST_SENTENCE)),
+    ]
 }
 
 fn files(page: &mut String, paper: &Paper) {

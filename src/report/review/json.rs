@@ -82,6 +82,7 @@ struct OneCourse<'a> {
     transfer_mean_mw: Option<f64>,
     transfer_high_mw: Option<f64>,
     energy_mwh: f64,
+    without_balance: Option<WithoutBalance>,
     least_headroom: Option<&'a Least>,
     set_by: Vec<SetBy<'a>>,
     headroom_held_mw: Vec<Held>,
@@ -89,6 +90,12 @@ struct OneCourse<'a> {
     alarms: &'a [AlarmCount],
     slot_s: i64,
     course: Vec<OneSlot>,
+}
+
+#[derive(Serialize)]
+struct WithoutBalance {
+    first: Time,
+    minutes: f64,
 }
 
 #[derive(Serialize)]
@@ -140,6 +147,7 @@ struct CorridorsDay<'a> {
 #[derive(Serialize)]
 struct InBrief<'a> {
     minutes: BTreeMap<&'static str, f64>,
+    minutes_without_balance: f64,
     transfer_low_mw: Option<f64>,
     transfer_mean_mw: Option<f64>,
     transfer_high_mw: Option<f64>,
@@ -218,7 +226,10 @@ fn course<'a>(paper: &Paper, course: &'a Course) -> OneCourse<'a> {
         transfer_mean_mw: course.mean_transfer_mw(),
         transfer_high_mw: course.transfer_mw.map(|[_, high]| high),
         energy_mwh: course.energy_mwh,
-        least_headroom: course.least.as_ref(),
+        without_balance: course
+            .unbalanced
+            .map(|unbalanced| WithoutBalance { first: Time(unbalanced.first), minutes: minutes(unbalanced.ms) }),
+        least_headroom: course.lowest(),
         set_by: shares
             .map(|share| SetBy {
                 outage: share.of.outage.as_deref(),
@@ -273,6 +284,7 @@ fn brief(brief: &Brief) -> InBrief<'_> {
     let [median, mostly] = brief.held_mw;
     InBrief {
         minutes: minutes_by_state(&brief.state_ms),
+        minutes_without_balance: minutes(brief.unbalanced_ms),
         transfer_low_mw: brief.transfer_mw.map(|[low, _]| low),
         transfer_mean_mw: brief.mean_transfer_mw,
         transfer_high_mw: brief.transfer_mw.map(|[_, high]| high),
@@ -283,7 +295,7 @@ fn brief(brief: &Brief) -> InBrief<'_> {
 }
 
 fn held(share: f64, course: &Course) -> Held {
-    Held { share, headroom_mw: course.durations.held_for(share) }
+    Held { share, headroom_mw: course.held_for(share) }
 }
 
 fn minutes_by_state(state_ms: &Tallied<State>) -> BTreeMap<&'static str, f64> {

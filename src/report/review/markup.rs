@@ -96,7 +96,8 @@ impl Cell {
                 *page += " class=\"bars\">";
                 for (part, class) in parts.iter().zip(["was", "would"]) {
                     let pct = 100.0 * part.clamp(0.0, 1.0);
-                    put!(page, "<div class=\"bar {class}\" style=\"width:{pct:.1}%\"></div>");
+                    let none = if *part > 0.0 { "" } else { " none" };
+                    put!(page, "<div class=\"bar {class}{none}\" style=\"width:{pct:.1}%\"></div>");
                 }
             }
         }
@@ -109,6 +110,11 @@ pub(super) fn px(page: &mut String, value: f64) {
     let tenths = (value * 10.0).round() / 10.0;
     // −0 is 0.
     put!(page, "{}", tenths + 0.0);
+}
+
+/// The anchor of a corridor.
+pub(super) fn anchor(place: usize) -> String {
+    format!("corridor-{}", place + 1)
 }
 
 #[cfg(test)]

@@ -4,7 +4,7 @@ use super::{
     Paper,
     clock::Clock,
     compare::cause,
-    figures::{minutes, mw, name, room},
+    figures::{NO_BALANCE, minutes, mw, name, room},
     markup::{escape, put, px},
     scale::{Scale, TimeScale},
     strip,
@@ -30,6 +30,8 @@ pub(super) struct CoursePlot<'a> {
     pub clock: Clock,
     pub time: &'a TimeScale,
     pub corridor: &'a CorridorReview,
+    /// As it was and, with a what-if, as it would have been.
+    pub series: &'a [Series],
     /// Unique in the page.
     pub id: &'a str,
 }
@@ -37,11 +39,10 @@ pub(super) struct CoursePlot<'a> {
 impl CoursePlot<'_> {
     pub fn draw(&self, page: &mut String) {
         let would = self.corridor.what_if.as_ref();
-        let strips = if would.is_some() { 2.0 } else { 1.0 };
-        let end_px = STRIP_PX + 22.0 * strips;
+        let end_px = STRIP_PX + 22.0 * self.series.len() as f64;
         opening(page, self.id, [WIDTH_PX, end_px + 34.0], &self.title(), &self.essence());
         let courses = || [Some(&self.corridor.was), would].into_iter().flatten();
-        let slots = || courses().flat_map(|course| &course.series.slots);
+        let slots = || self.series.iter().flat_map(|series| &series.slots);
         let transfer =
             Scale::new(slots().filter_map(|slot| slot.transfer_mw).flatten(), TRANSFER_PX[0], TRANSFER_PX[1], 4.0);
         let thin_mw = self.paper.configured(self.corridor).map(|known| known.thin_mw);
@@ -54,19 +55,16 @@ impl CoursePlot<'_> {
         if let Some(thin_mw) = thin_mw {
             level(page, &headroom, thin_mw, "threshold", (LEFT_PX, RIGHT_PX));
         }
-        for (course, class) in courses().zip(["was", "would"]) {
-            self.band(page, &course.series, &transfer, &format!("band transfer {class}"), |slot| slot.transfer_mw);
-            self.band(page, &course.series, &headroom, &format!("band headroom {class}"), |slot| slot.headroom_mw);
-        }
+        self.bands(page, &transfer, "transfer", |slot| slot.transfer_mw);
+        self.bands(page, &headroom, "headroom", |slot| slot.headroom_mw);
         for (course, class) in courses().zip(["was", "would"]) {
             self.least(page, course, &headroom, class);
         }
+        self.least_in_words(page, courses());
         self.marks(page);
-        strip::draw(page, &self.corridor.was.series, self.time, STRIP_PX);
-        label(page, "state", STRIP_PX + 13.0);
-        if let Some(would) = would {
-            strip::draw(page, &would.series, self.time, STRIP_PX + 22.0);
-            label(page, "would be", STRIP_PX + 35.0);
+        for ((series, word), top_px) in self.series.iter().zip(["state", "would be"]).zip([STRIP_PX, STRIP_PX + 22.0]) {
+            strip::draw(page, series, self.time, top_px);
+            label(page, word, top_px + 13.0);
         }
         *page += "</svg>\n";
     }
@@ -81,7 +79,10 @@ impl CoursePlot<'_> {
             let transfer = course.transfer_mw.map_or("Transfer never known.".to_owned(), |[low, high]| {
                 format!("Transfer between {} and {} MW.", mw(low), mw(high))
             });
-            let least = course.least.as_ref().map_or("Headroom never known.".to_owned(), |least| {
+            let none = course.unbalanced.map_or("Headroom never known.".to_owned(), |unbalanced| {
+                format!("No balance from {}.", self.clock.when(unbalanced.first))
+            });
+            let least = course.lowest().map_or(none, |least| {
                 let cause =
                     least.binding.as_ref().map_or(String::new(), |binding| format!(", set by {}", cause(binding)));
                 format!("Least headroom {} MW at {}{cause}.", room(least.headroom_mw), self.clock.when(least.time))
@@ -129,9 +130,9 @@ impl CoursePlot<'_> {
         }
     }
 
-    /// A band from the lowest to the highest of each slot; where slots are missing there is none.
-    fn band(&self, page: &mut String, series: &Series, scale: &Scale, class: &str, of: fn(&Slot) -> Option<[f64; 2]>) {
-        let mut path = String::new();
+    /// A band from the lowest to the highest of each slot, in fine units; where slots are missing there is none.
+    fn band(&self, series: &Series, scale: &Scale, of: fn(&Slot) -> Option<[f64; 2]>) -> String {
+        let mut pen = Pen::default();
         let known: Vec<_> = series.slots.iter().filter_map(|slot| Some((slot.at_s, of(slot)?))).collect();
         for run in known.chunk_by(|(before, _), (after, _)| after - before == series.slot_s) {
             let edges = |at_s: i64| [at_s, at_s + series.slot_s].map(|at_s| self.time.x(at_s));
@@ -142,36 +143,48 @@ impl CoursePlot<'_> {
             });
             for (place, ([begin, end], value)) in highs.chain(lows).enumerate() {
                 if place == 0 {
-                    path.push('M');
-                    px(&mut path, begin);
-                    path.push(' ');
-                } else {
-                    path.push('V');
+                    pen.start(begin, scale.y(value));
                 }
-                px(&mut path, scale.y(value));
-                path.push('H');
-                px(&mut path, end);
+                pen.step(end, scale.y(value));
             }
-            path.push('z');
+            pen.close();
         }
-        if !path.is_empty() {
-            put!(page, "<path class=\"{class}\" d=\"{path}\"/>");
+        pen.path
+    }
+
+    /// Bands of what was and of what would have been, where that is something else.
+    fn bands(&self, page: &mut String, scale: &Scale, what: &str, of: fn(&Slot) -> Option<[f64; 2]>) {
+        let paths: Vec<_> = self.series.iter().map(|series| self.band(series, scale, of)).collect();
+        for (place, (path, class)) in paths.iter().zip(["was", "would"]).enumerate() {
+            if !path.is_empty() && (place == 0 || *path != paths[0]) {
+                put!(page, "<path class=\"band {what} {class}\" {FINE} d=\"{path}\"/>");
+            }
         }
     }
 
     fn least(&self, page: &mut String, course: &Course, scale: &Scale, class: &str) {
-        let Some(least) = &course.least else { return };
+        let Some(least) = course.lowest() else { return };
         let (x, y) = (self.time.x(least.time.timestamp()), scale.y(least.headroom_mw));
         put!(page, "<circle class=\"least {class}\" r=\"4\" cx=\"");
         px(page, x);
         *page += "\" cy=\"";
         px(page, y);
         *page += "\"/>";
-        let (anchor, x) = if x > 700.0 { ("end", x - 9.0) } else { ("", x + 9.0) };
-        let below = y + if class == "was" { 15.0 } else { -7.0 };
-        let y = below.clamp(HEADROOM_PX[0] + 10.0, HEADROOM_PX[1] - 4.0);
-        let words = format!("{} MW, {}", room(least.headroom_mw), self.clock.when(least.time));
-        text(page, &format!("said {anchor} {class}"), x, y, &words);
+    }
+
+    /// The least headrooms in words, at the head of their panel.
+    fn least_in_words<'b>(&self, page: &mut String, courses: impl Iterator<Item = &'b Course>) {
+        let mut words = Vec::new();
+        for (course, (class, word)) in courses.zip([("was", "least"), ("would", "would have been")]) {
+            let told = match (course.lowest(), course.unbalanced) {
+                (Some(least), _) => format!("○ {word} {} MW, {}", room(least.headroom_mw), self.clock.when(least.time)),
+                (None, Some(none)) => format!("{word} {NO_BALANCE}, first {}", self.clock.when(none.first)),
+                (None, None) => continue,
+            };
+            words.push(format!("<tspan class=\"{class}\">{}</tspan>", escape(&told)));
+        }
+        let y = HEADROOM_PX[0] - 9.0;
+        put!(page, "<text class=\"said end\" x=\"{RIGHT_PX}\" y=\"{y}\">{}</text>", words.join("   "));
     }
 
     fn marks(&self, page: &mut String) {
@@ -206,7 +219,7 @@ pub(super) fn durations(page: &mut String, paper: &Paper, corridor: &CorridorRev
     let courses = || [Some(&corridor.was), corridor.what_if.as_ref()].into_iter().flatten();
     let held = |course: &Course| {
         let parts = [100_u8, 95, 50].iter().filter_map(|pct| {
-            let held = course.durations.held_for(f64::from(*pct) / 100.0)?;
+            let held = course.held_for(f64::from(*pct) / 100.0)?;
             Some(format!("{} MW for {pct} % of the time", mw(held.into())))
         });
         parts.collect::<Vec<_>>().join(", ")
@@ -235,7 +248,7 @@ pub(super) fn durations(page: &mut String, paper: &Paper, corridor: &CorridorRev
     for (course, class) in courses().zip(["was", "would"]) {
         let path = curve(course, &scale, x);
         if !path.is_empty() {
-            put!(page, "<path class=\"curve {class}\" d=\"{path}\"/>");
+            put!(page, "<path class=\"curve {class}\" {FINE} d=\"{path}\"/>");
         }
     }
     *page += "</svg>\n";
@@ -243,37 +256,62 @@ pub(super) fn durations(page: &mut String, paper: &Paper, corridor: &CorridorRev
 
 fn curve(course: &Course, scale: &Scale, x: impl Fn(f64) -> f64) -> String {
     let total = course.durations.total_ms().max(1) as f64;
-    let mut path = String::new();
+    let mut pen = Pen::default();
     let mut drawn: Option<(f64, f64)> = None;
-    let mut skipped = None;
-    for (mw, ms) in course.durations.curve() {
+    let mut points = course.durations.curve().peekable();
+    while let Some((mw, ms)) = points.next() {
         let (right, y) = (x(ms as f64 / total), scale.y(mw.into()));
         match drawn {
-            None => {
-                path.push('M');
-                px(&mut path, x(0.0));
-                path.push(' ');
-            }
+            None => pen.start(x(0.0), y),
             // Too near to be seen.
-            Some((x, before)) if right - x < 0.5 && y - before < 0.5 => {
-                skipped = Some((right, y));
-                continue;
-            }
-            Some(_) => path.push('V'),
+            Some((x, before)) if right - x < 1.5 && y - before < 1.5 && points.peek().is_some() => continue,
+            Some(_) => {}
         }
-        px(&mut path, y);
-        path.push('H');
-        px(&mut path, right);
+        pen.step(right, y);
         drawn = Some((right, y));
-        skipped = None;
     }
-    if let Some((right, y)) = skipped {
-        path.push('V');
-        px(&mut path, y);
-        path.push('H');
-        px(&mut path, right);
+    pen.path
+}
+
+/// Units of a [`Pen`] in a pixel, and what scales them back.
+const FINENESS: f64 = 5.0;
+const FINE: &str = "transform=\"scale(.2)\"";
+
+/// Draws steps in whole fine units, which makes the shortest of paths.
+#[derive(Default)]
+struct Pen {
+    path: String,
+    at: (i64, i64),
+}
+
+impl Pen {
+    fn start(&mut self, x: f64, y: f64) {
+        self.at = (fine(x), fine(y));
+        let path = &mut self.path;
+        put!(path, "M{} {}", self.at.0, self.at.1);
     }
-    path
+
+    /// First up or down, then along.
+    fn step(&mut self, x: f64, y: f64) {
+        let to = (fine(x), fine(y));
+        let path = &mut self.path;
+        if to.1 != self.at.1 {
+            put!(path, "v{}", to.1 - self.at.1);
+        }
+        put!(path, "h{}", to.0 - self.at.0);
+        self.at = to;
+    }
+
+    fn close(&mut self) {
+        self.path.push('z');
+    }
+}
+
+fn fine(px: f64) -> i64 {
+    // Within a plot.
+    #[allow(clippy::cast_possible_truncation)]
+    let units = (px * FINENESS).round() as i64;
+    units
 }
 
 fn opening(page: &mut String, id: &str, [width, height]: [f64; 2], title: &str, essence: &str) {

@@ -2,7 +2,10 @@
 
 use std::fmt;
 
-use super::{clock::Clock, figures::room};
+use super::{
+    clock::Clock,
+    figures::{lasting, room},
+};
 use crate::{desk::State, review::Series};
 
 /// Columns of the drawing.
@@ -59,7 +62,7 @@ impl fmt::Display for Sketch<'_> {
         let wide = usize::try_from(COLUMNS).unwrap_or(0) / columns.len().max(1);
         let columns: Vec<_> = columns.into_iter().flat_map(|column| std::iter::repeat_n(column, wide)).collect();
         let highest = columns.iter().filter_map(|column| column.headroom_mw).fold(0.0, f64::max);
-        writeln!(f, "\n  lowest headroom in each {} min, MW", width_s / 60)?;
+        writeln!(f, "\n  lowest headroom in each {}, MW", lasting(1000 * width_s))?;
         if highest > 0.0 {
             for line in (0..LINES).rev() {
                 let label = match line {

@@ -6,7 +6,7 @@ use super::{
     Paper,
     clock::Clock,
     compare::{HELD_PCT, STATES, cause, causes, rows},
-    figures::{LONGEST_SENTENCE, NONE, lasting, minutes_of, mw, name, number, plain, room, share},
+    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, lasting, minutes_of, mw, name, number, plain, room, share},
     sketch::Sketch,
 };
 use crate::{
@@ -20,7 +20,7 @@ const WIDTH: usize = 100;
 /// Events, files, findings and meters that are listed.
 const MOST_EVENTS: usize = 60;
 const MOST_LINES: usize = 20;
-/// Days that are listed; more are in the CSV.
+/// Days that are listed, of all corridors together; more are in the CSV.
 const MOST_DAYS: usize = 400;
 /// Characters of a name in a table.
 const CELL: usize = 22;
@@ -81,7 +81,7 @@ fn in_brief(paper: &Paper, clock: &Clock, corridor: &CorridorReview, to: &mut im
         minutes.map(|state| format!("{} {}", state.word(), minutes_of(was.state_ms.ms(&state)))).collect();
     wrapped(to, "  minutes         ", &minutes.join(", "))?;
     let mut held = HELD_PCT.into_iter().filter_map(|pct| {
-        let held = was.durations.held_for(f64::from(pct) / 100.0)?;
+        let held = was.held_for(f64::from(pct) / 100.0)?;
         Some((mw(held.into()), pct))
     });
     let Some((most, pct)) = held.next() else { return Ok(()) };
@@ -170,10 +170,11 @@ fn days(paper: &Paper, to: &mut impl Write) -> io::Result<()> {
     if days.len() < 2 {
         return Ok(());
     }
+    let most = MOST_DAYS / paper.review.corridors.len().max(1);
     writeln!(to, "\nDays (UTC)")?;
     for (place, corridor) in paper.review.corridors.iter().enumerate() {
         writeln!(to, "\n  {}", name(&corridor.corridor))?;
-        let rows = days.iter().take(MOST_DAYS).filter_map(|day| {
+        let rows = days.iter().take(most).filter_map(|day| {
             let (was, would) = day.corridors.get(place)?;
             Some(day_row(day, was, would.as_ref()))
         });
@@ -183,14 +184,17 @@ fn days(paper: &Paper, to: &mut impl Write) -> io::Result<()> {
         write!(to, "{}", Table::new(heading, rows))?;
     }
     writeln!(to, "    least headroom and headroom there 95 % of the time, MW; minutes in each state")?;
-    if days.len() > MOST_DAYS {
-        writeln!(to, "    {} more days: see the CSV report", days.len() - MOST_DAYS)?;
+    if days.len() > most {
+        writeln!(to, "    {} more days: see the CSV report", days.len() - most)?;
     }
     Ok(())
 }
 
 fn day_row(day: &DayFigures, was: &Brief, would: Option<&Brief>) -> [String; 10] {
-    let least = |brief: &Brief| brief.least.as_ref().map_or(NONE.into(), |least| room(least.headroom_mw));
+    let least = |brief: &Brief| match &brief.least {
+        Some(least) => room(least.headroom_mw),
+        None => if brief.unbalanced_ms > 0 { NO_BALANCE } else { NONE }.into(),
+    };
     let [ample, thin, spent, blind] = STATES.map(|state| minutes_of(was.state_ms.ms(&state)));
     [
         day.date.to_string(),

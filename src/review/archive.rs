@@ -61,7 +61,7 @@ pub struct ArchiveKey {
     pub modified_s: u64,
 }
 
-/// Files that share UTC days with one another, and none with others.
+/// Files that share UTC days with one another, and none with others; the first has those without a frame besides.
 #[derive(Debug, Clone)]
 pub struct Stretch {
     /// In the order of their first frames.

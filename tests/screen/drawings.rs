@@ -145,6 +145,11 @@ fn nothing_to_show_is_explained() {
     let drawing = text(&draw(&mut silent, 80, 24, true));
     assert!(drawing.contains("NO DATA FOR 75 s: this is how it stood at 07:00:00"), "{drawing}");
 
+    let mut unrecorded = live(vec![sample::ample()]);
+    unrecorded.parcel.as_mut().unwrap().feed.unrecorded = Some("recording fails: its file was deleted".into());
+    let drawing = text(&draw(&mut unrecorded, 80, 24, true));
+    assert!(drawing.contains("FRAMES ARE NOT KEPT, recording fails: its file was deleted. Messages (m)"), "{drawing}");
+
     let mut over = live(vec![sample::ample()]);
     over.parcel.as_mut().unwrap().feed.ended = true;
     assert!(text(&draw(&mut over, 80, 24, true)).contains("THE FEED HAS ENDED"));

@@ -130,6 +130,7 @@ fn feed() -> FeedReport {
             findings: vec!["3 malformed lines skipped".into()],
         }],
         recorded: None,
+        unrecorded: None,
         kept: Some(InputReport {
             name: "grid.learned.json".into(),
             standing: "written 06:58:20 UTC".into(),

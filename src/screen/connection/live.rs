@@ -102,7 +102,7 @@ impl Live {
         }
         self.duty.end();
         let learned = self.keeper.and_then(|mut keeper| keeper.save(&self.desk).map(Into::into));
-        let recorded = self.recorder.and_then(|recorder| recorder.end().trouble);
+        let recorded = self.recorder.and_then(|recorder| report::unrecorded(&recorder.end()));
         learned.into_iter().chain(recorded).collect()
     }
 
@@ -207,6 +207,7 @@ impl Live {
     fn keep(&mut self, sofar: &mut Sofar) {
         if let Some(recorder) = &mut self.recorder {
             sofar.feed.recorded = Some(report::recording(recorder));
+            sofar.feed.unrecorded = recorder.status().trouble;
             if sofar.chronicle.time().is_some() {
                 recorder.take_news().into_iter().for_each(|text| sofar.tell(text));
             }

@@ -65,6 +65,8 @@ pub struct FeedReport {
     pub kept: Option<InputReport>,
     /// The folder that frames are recorded in, where there is one.
     pub recorded: Option<InputReport>,
+    /// Why frames are not recorded at the moment, though they should be.
+    pub unrecorded: Option<String>,
     /// Frames taken so far.
     pub frames: u64,
     /// When the last frame came, by this computer's clock.

@@ -18,12 +18,21 @@ pub(super) fn recording(recorder: &Recorder) -> InputReport {
         (None, Some(file)) => format!("{file}, {recorded} frames"),
         (None, None) => "nothing recorded yet".into(),
     };
-    let lost = (lost > 0).then(|| format!("{lost} frames are not in the recording"));
     InputReport {
         name: recorder.folder().display().to_string().into(),
         standing,
-        findings: trouble.into_iter().chain(lost).collect(),
+        findings: trouble.into_iter().chain(missing(lost)).collect(),
     }
+}
+
+/// What there is to say of a recording that has ended, if it was not all well.
+pub(super) fn unrecorded(Status { lost, trouble, .. }: &Status) -> Option<String> {
+    let said: Vec<_> = trouble.clone().into_iter().chain(missing(*lost)).collect();
+    (!said.is_empty()).then(|| said.join("; "))
+}
+
+fn missing(lost: u64) -> Option<String> {
+    (lost > 0).then(|| format!("{lost} frames are not in the recording"))
 }
 
 fn report(input: InputStatus) -> InputReport {

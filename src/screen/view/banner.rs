@@ -21,7 +21,12 @@ fn words(app: &App) -> Option<(String, bool)> {
     if let Some(said) = app.said.as_ref().filter(|_| app.playback().is_none_or(|playback| playback.seeking.is_none())) {
         return Some((said.clone(), false));
     }
-    troubled(app).or_else(|| unwritten(app)).or_else(|| changed(app))
+    troubled(app).or_else(|| unwritten(app)).or_else(|| unrecorded(app)).or_else(|| changed(app))
+}
+
+fn unrecorded(app: &App) -> Option<(String, bool)> {
+    let trouble = app.parcel.as_ref()?.feed.unrecorded.as_ref()?;
+    Some((format!("FRAMES ARE NOT KEPT, {trouble}. Messages (m) count them."), true))
 }
 
 fn unwritten(app: &App) -> Option<(String, bool)> {

@@ -112,6 +112,7 @@ impl CorridorDesk {
             }
             _ => present.clone(),
         };
+        let altered = Assessment { step: present.step, ..altered };
         (present, altered)
     }
 

@@ -2,7 +2,7 @@
 
 use std::{
     collections::BTreeMap,
-    iter,
+    io, iter,
     num::NonZeroUsize,
     path::{Path, PathBuf},
     sync::Arc,
@@ -22,7 +22,7 @@ use crate::{
     config::Config,
     desk::Alternative,
     report::{change, review::Paper},
-    review::{Done, FileNote, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
+    review::{Done, FileNote, Job, Part, PartError, Review, Reviewed, Run, Stretch, Task, Terms},
 };
 
 /// Options of `review`.
@@ -48,8 +48,8 @@ pub struct Options {
     #[arg(long, value_name = "DIR")]
     parts: Option<PathBuf>,
     /// Review only a share of the days, as one of several jobs: 3/16 is the third of sixteen
-    #[arg(long, value_name = "K/N", requires = "parts", conflicts_with = "carry")]
-    share: Option<Share>,
+    #[arg(long, value_name = "K/N", requires = "parts", conflicts_with = "carry", value_parser = share)]
+    share: Option<Job>,
     /// Let a day that has no recorded start go on from the day before it
     #[arg(long)]
     carry: bool,
@@ -66,23 +66,11 @@ pub struct Options {
     papers: Papers,
 }
 
-/// One of several jobs.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-struct Share {
-    /// From 1.
-    number: usize,
-    of: usize,
-}
-
-impl std::str::FromStr for Share {
-    type Err = String;
-
-    fn from_str(text: &str) -> Result<Self, String> {
-        let numbers = text.split_once('/').and_then(|(number, of)| Some((number.parse().ok()?, of.parse().ok()?)));
-        match numbers {
-            Some((number, of)) if (1..=of).contains(&number) => Ok(Self { number, of }),
-            _ => Err("write K/N with K from 1 to N, as in 3/16".into()),
-        }
+fn share(text: &str) -> Result<Job, String> {
+    let numbers = text.split_once('/').and_then(|(number, of)| Some((number.parse().ok()?, of.parse().ok()?)));
+    match numbers {
+        Some((number, of)) if (1..=of).contains(&number) => Ok(Job { number, of }),
+        _ => Err("write K/N with K from 1 to N, as in 3/16".into()),
     }
 }
 
@@ -90,7 +78,7 @@ impl std::str::FromStr for Share {
 pub fn run(options: &Options) -> Result<(), Failure> {
     options.papers.check()?;
     let (review, config, terms) = if options.merge.is_empty() { review(options)? } else { merge(&options.merge)? };
-    if let Some(Share { number, of }) = options.share.filter(|_| review.days.is_empty()) {
+    if let Some(Job { number, of }) = options.share.filter(|_| review.days.is_empty()) {
         // One of more jobs than there are days has done what it should.
         eprintln!("tautline: there are too few days for {of} shares: none falls to share {number}");
         return Ok(());
@@ -152,12 +140,13 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
     let task = Task { alternatives, ..Task::new(config, terms.configuration.clone(), change::lines) };
     if let Some(folder) = &options.parts {
         make(folder)?;
+        options.share.map_or(Ok(()), |job| job.begin(folder)).map_err(|error| part_failed(folder, error))?;
     }
-    let tables = Tables::new(options.parquet.as_deref(), &task)?;
+    let tables = Tables::new(options.parquet.as_deref(), &task, &terms)?;
     let progress = progress::bar("");
     progress.inc_length(stretches.iter().map(Stretch::bytes).sum());
     let known = |stretch: &Stretch, date: NaiveDate| {
-        known(options.parts.as_deref()?, &terms, stretch, date).filter(|_| tables.has(date))
+        known(options.parts.as_deref()?, &terms, stretch, date).filter(|_| tables.has(stretch, date))
     };
     let run = Run {
         task: &task,
@@ -181,7 +170,14 @@ fn review(options: &Options) -> Result<(Review, Config, Terms), Failure> {
     })?;
     progress.finish_and_clear();
     say(&barren, &review)?;
+    if let Some((job, folder)) = options.share.zip(options.parts.as_deref()) {
+        job.end(folder).map_err(|error| part_failed(folder, error))?;
+    }
     Ok((review, Arc::unwrap_or_clone(task.config), terms))
+}
+
+fn part_failed(folder: &Path, source: io::Error) -> PartError {
+    PartError::File { path: folder.to_owned(), source }
 }
 
 /// A day that was reviewed before, from the same files and under the same terms.
@@ -203,7 +199,7 @@ impl Options {
         let follow = progress::following(&progress);
         let stretches = Stretch::all(&self.files, &follow, |bytes| progress.inc_length(bytes))?;
         progress.finish_and_clear();
-        let Some(Share { number, of }) = self.share else { return Ok(stretches) };
+        let Some(Job { number, of }) = self.share else { return Ok(stretches) };
         Ok(stretches.into_iter().skip(number - 1).step_by(of).collect())
     }
 }
@@ -237,6 +233,13 @@ fn merge(paths: &[PathBuf]) -> Result<(Review, Config, Terms), Failure> {
     let mut review = Review::new(config.feed.max_age());
     for (path, _) in parts.into_values() {
         review.add(Part::load(&path)?.day);
+    }
+    for folder in paths.iter().filter(|path| path.is_dir()) {
+        for Job { number, of } in Job::unfinished(folder).map_err(|error| part_failed(folder, error))? {
+            let text = format!("job {number} of {of} is not done: its days in {} are missing", folder.display());
+            eprintln!("tautline: {text}");
+            review.findings.extend(review.days.first().map(|day| (day.date, text)));
+        }
     }
     Ok((review, config, terms))
 }

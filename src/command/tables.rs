@@ -1,7 +1,9 @@
 //! A table of every assessment for each reviewed day, where one is wanted.
 
 use std::{
-    fs, io,
+    fs,
+    hash::{DefaultHasher, Hash, Hasher},
+    io,
     path::{Path, PathBuf},
 };
 
@@ -9,24 +11,26 @@ use chrono::NaiveDate;
 
 use super::Failure;
 use crate::{
-    report::parquet::{Columns, Error, ParquetFile},
-    review::{Output, Task},
+    report::parquet::{Columns, Error, ParquetFile, made_for},
+    review::{Output, Stretch, Task, Terms},
 };
 
 pub(super) struct Tables {
     folder: Option<PathBuf>,
     corridors: usize,
     compared: bool,
+    terms: Terms,
 }
 
 impl Tables {
     /// In a folder, which is made; or nowhere.
-    pub fn new(folder: Option<&Path>, task: &Task) -> Result<Self, Failure> {
+    pub fn new(folder: Option<&Path>, task: &Task, terms: &Terms) -> Result<Self, Failure> {
         folder.map_or(Ok(()), make)?;
         Ok(Self {
             folder: folder.map(Path::to_owned),
             corridors: task.config.grid.corridors.len(),
             compared: task.alternatives.iter().any(Option::is_some),
+            terms: terms.clone(),
         })
     }
 
@@ -35,8 +39,15 @@ impl Tables {
     }
 
     /// Whether nothing more is wanted of a day.
-    pub fn has(&self, date: NaiveDate) -> bool {
-        self.path(date).is_none_or(|path| path.exists())
+    pub fn has(&self, stretch: &Stretch, date: NaiveDate) -> bool {
+        self.path(date).is_none_or(|path| made_for(&path).is_some_and(|key| key == self.key(stretch)))
+    }
+
+    /// Tells a table from one made of other files, or under other terms.
+    fn key(&self, stretch: &Stretch) -> String {
+        let mut hasher = DefaultHasher::new();
+        (&self.terms, stretch.keys()).hash(&mut hasher);
+        format!("{:016x}", hasher.finish())
     }
 }
 
@@ -44,8 +55,9 @@ impl Output for Tables {
     type Rows = Option<Columns>;
     type Book = Option<ParquetFile>;
 
-    fn open(&self, date: NaiveDate) -> io::Result<(Self::Book, Vec<Self::Rows>)> {
-        let file = self.path(date).map(|path| ParquetFile::create(&path, self.compared)).transpose();
+    fn open(&self, stretch: &Stretch, date: NaiveDate) -> io::Result<(Self::Book, Vec<Self::Rows>)> {
+        let file =
+            self.path(date).map(|path| ParquetFile::create(&path, self.compared, &self.key(stretch))).transpose();
         let rows = || self.folder.as_ref().map(|_| Columns::new(self.compared));
         Ok((file.map_err(failed)?, (0..self.corridors).map(|_| rows()).collect()))
     }

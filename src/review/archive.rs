@@ -51,14 +51,14 @@ enum Source {
 }
 
 /// What tells a file from others.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Eq, Hash, Serialize, Deserialize)]
 pub struct ArchiveKey {
     /// Its name, without the folder.
     pub name: String,
     /// Its size, bytes.
     pub bytes: u64,
-    /// When it was written last, s since 1970.
-    pub modified_s: u64,
+    /// When it was written last, ns since 1970.
+    pub modified_ns: u64,
 }
 
 /// Files that share UTC days with one another, and none with others; the first has those without a frame besides.
@@ -119,7 +119,7 @@ impl ArchiveKey {
         Self {
             name: path.file_name().unwrap_or(path.as_os_str()).to_string_lossy().into_owned(),
             bytes: metadata.len(),
-            modified_s: modified.map_or(0, |modified| modified.as_secs()),
+            modified_ns: modified.and_then(|modified| u64::try_from(modified.as_nanos()).ok()).unwrap_or(0),
         }
     }
 }
@@ -164,7 +164,7 @@ impl Stretch {
 
     /// What is within the program.
     pub fn within(name: &str, bytes: &'static [u8]) -> Self {
-        let key = ArchiveKey { name: name.into(), bytes: bytes.len() as u64, modified_s: 0 };
+        let key = ArchiveKey { name: name.into(), bytes: bytes.len() as u64, modified_ns: 0 };
         Self::of(Archive { source: Source::Within(bytes), key, span: None })
     }
 

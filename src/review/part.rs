@@ -36,7 +36,7 @@ pub struct Part {
 }
 
 /// How a day was reviewed: only days under the same terms go together.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Eq, Hash, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Terms {
     /// Version of the program.

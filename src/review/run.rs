@@ -29,8 +29,8 @@ pub trait Output: Sync {
     type Rows: Rows;
     /// Takes those of all corridors on one day.
     type Book: Send;
-    /// Begins a day, with rows for each corridor.
-    fn open(&self, date: NaiveDate) -> io::Result<(Self::Book, Vec<Self::Rows>)>;
+    /// Begins a day of a stretch, with rows for each corridor.
+    fn open(&self, stretch: &Stretch, date: NaiveDate) -> io::Result<(Self::Book, Vec<Self::Rows>)>;
     /// Looks after rows that have come, the last ones of the day included.
     fn turn(&self, book: &mut Self::Book, rows: &mut Self::Rows, is_last: bool) -> io::Result<()>;
     /// Ends a day.
@@ -179,7 +179,7 @@ impl<O: Output> Run<'_, O> {
                 reviewed
             } else {
                 let carried = before.end.take().filter(|_| self.carry);
-                let bench = self.day(date, carried, pool, &mut frames)?;
+                let bench = self.day(stretch, date, carried, pool, &mut frames)?;
                 let files = stretch.notes(date, frames.peek().is_none(), &monitor);
                 let end = self.carry.then(|| bench.end(self.task)).flatten();
                 let Some(day) = bench.finish(files, findings) else { continue };
@@ -196,12 +196,13 @@ impl<O: Output> Run<'_, O> {
     /// Takes all frames of a day.
     fn day(
         &self,
+        stretch: &Stretch,
         date: NaiveDate,
         carried: Option<Box<RawValue>>,
         pool: &ThreadPool,
         frames: &mut Peekable<Recorded>,
     ) -> io::Result<Bench<O::Rows>> {
-        let (mut book, rows) = self.output.open(date)?;
+        let (mut book, rows) = self.output.open(stretch, date)?;
         let mut bench = Bench::new(self.task, rows);
         let mut now = batch(frames, date);
         if let (Some(end), Some(first)) = (carried, now.first_mut()) {
@@ -238,7 +239,7 @@ impl Output for usize {
     type Rows = ();
     type Book = ();
 
-    fn open(&self, _date: NaiveDate) -> io::Result<((), Vec<()>)> {
+    fn open(&self, _stretch: &Stretch, _date: NaiveDate) -> io::Result<((), Vec<()>)> {
         Ok(((), vec![(); *self]))
     }
 

@@ -79,7 +79,7 @@ fn rows_read_back_are_the_records() {
 
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("rows.parquet");
-    let mut file = ParquetFile::create(&path, false).unwrap();
+    let mut file = ParquetFile::create(&path, false, "this").unwrap();
     let mut bench = Bench::new(&task, task.config.grid.corridors.iter().map(|_| Columns::new(false)));
     for frames in frames.chunks(10) {
         bench.take(frames);
@@ -125,7 +125,7 @@ fn what_would_have_been_has_its_columns() {
         columns.take(&pair[0], Some(&pair[1]));
     }
     columns.take(&records[0], None);
-    let mut file = ParquetFile::create(&path, true).unwrap();
+    let mut file = ParquetFile::create(&path, true, "this").unwrap();
     file.write(&mut columns).unwrap();
     file.finish().unwrap();
     let reader = SerializedFileReader::new(File::open(&path).unwrap()).unwrap();
@@ -139,7 +139,7 @@ fn what_would_have_been_has_its_columns() {
 #[test]
 fn a_file_that_is_given_up_leaves_nothing() {
     let folder = tempfile::tempdir().unwrap();
-    drop(ParquetFile::create(&folder.path().join("rows.parquet"), false).unwrap());
+    drop(ParquetFile::create(&folder.path().join("rows.parquet"), false, "this").unwrap());
     assert_eq!(std::fs::read_dir(folder.path()).unwrap().count(), 0);
-    assert!(ParquetFile::create(&folder.path().join("none").join("rows.parquet"), false).is_err());
+    assert!(ParquetFile::create(&folder.path().join("none").join("rows.parquet"), false, "this").is_err());
 }

@@ -25,6 +25,7 @@ fn days(bed: &Bed) -> Vec<String> {
 
 fn parts(bed: &Bed) -> Vec<(PathBuf, SystemTime)> {
     let entries = fs::read_dir(bed.path("parts")).unwrap().map(|entry| entry.unwrap().path());
+    let entries = entries.filter(|path| path.extension().is_some_and(|ending| ending == "zst"));
     let mut parts: Vec<_> =
         entries.map(|path| (path.clone(), fs::metadata(path).unwrap().modified().unwrap())).collect();
     parts.sort();
@@ -41,6 +42,9 @@ fn jobs_with_nothing_but_files_in_common_do_what_one_run_does() {
     for share in ["1/2", "2/2"] {
         let (done, _, said) = review(&bed, &with(&["--parts", "parts", "--share", share]));
         assert!(done, "{said}");
+        let (_, early, said) = review(&bed, &["--merge", "parts"]);
+        assert_eq!(said.contains("job 2 of 2 is not done"), share == "1/2", "{said}");
+        assert_eq!(early.contains("job 2 of 2 is not done"), share == "1/2", "{early}");
     }
     assert_eq!(parts(&bed).len(), 3);
     let (_, merged, said) = review(&bed, &["--merge", "parts", "--json", "-"]);
@@ -166,4 +170,21 @@ fn carried_over_days_go_on_with_the_same_words() {
     assert!(whole.contains("overlaps with"));
     fs::remove_file(&parts(&bed)[1].0).unwrap();
     assert_eq!(run(), whole);
+}
+
+/// A table that was made with another change is made anew, also where the day itself is kept.
+#[test]
+fn a_table_is_that_of_the_review() {
+    let bed = Bed::new(3.0);
+    let file = name(&bed.file("0.jsonl", bed.hours(0..3)));
+    let run = |parts: &str, more: &[&str]| {
+        let base = ["--config", "config.toml", "--parquet", "tables", "--parts", parts, &file];
+        let (done, _, said) = review(&bed, &[&base[..], more].concat());
+        assert!(done, "{said}");
+        fs::read(bed.path("tables/2031-03-14.parquet")).unwrap()
+    };
+    let plain = run("plain", &[]);
+    let changed = run("changed", &["--with", "open 1-A"]);
+    assert_ne!(changed, plain);
+    assert_eq!(run("plain", &[]), plain);
 }

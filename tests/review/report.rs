@@ -151,7 +151,7 @@ fn a_single_frame_and_a_blind_one_are_days_too() {
     frames.truncate(1);
     let review = review_of(&task, &frames);
     let one = told(&paper(&task, &review, &[]));
-    assert!(one.contains("1 frames") && one.contains("least headroom"), "{one}");
+    assert!(one.contains("1 frame") && one.contains("least headroom"), "{one}");
     assert_eq!(object(&paper(&task, &review, &[]))["availability"], 1.0);
     frames[0].readings.clear();
     let review = review_of(&task, &frames);

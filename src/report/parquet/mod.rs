@@ -19,6 +19,7 @@ use parquet::{
     file::{
         metadata::KeyValue,
         properties::{EnabledStatistics, WriterProperties},
+        reader::{FileReader, SerializedFileReader},
         writer::SerializedFileWriter,
     },
     schema::types::{ColumnPath, TypePtr},
@@ -30,6 +31,8 @@ use fields::{Field, Get, fields};
 
 use super::CAUTION;
 
+/// Tells what a file was made for.
+const KEY: &str = "review";
 const PROGRAM: &str = concat!("tautline ", env!("CARGO_PKG_VERSION"));
 
 /// What can go wrong with a file.
@@ -51,8 +54,8 @@ pub struct ParquetFile {
 }
 
 impl ParquetFile {
-    /// Begins a file, with columns for a what-if or without.
-    pub fn create(path: &Path, with_what_if: bool) -> Result<Self, Error> {
+    /// Begins a file, with columns for a what-if or without. [`made_for`] gives the key back.
+    pub fn create(path: &Path, with_what_if: bool, key: &str) -> Result<Self, Error> {
         let mut part = path.as_os_str().to_owned();
         part.push(".part");
         let part = PathBuf::from(part);
@@ -60,7 +63,7 @@ impl ParquetFile {
         let fields: Vec<_> = fields(with_what_if).collect();
         let format = |error| Error::Format(path.to_owned(), error);
         let schema = schema(&fields).map_err(format)?;
-        let writer = SerializedFileWriter::new(file, schema, Arc::new(properties(&fields))).map_err(format)?;
+        let writer = SerializedFileWriter::new(file, schema, Arc::new(properties(&fields, key))).map_err(format)?;
         Ok(Self { path: path.to_owned(), part, writer: Some(writer) })
     }
 
@@ -89,6 +92,13 @@ impl Drop for ParquetFile {
         drop(self.writer.take());
         let _gone = fs::remove_file(&self.part);
     }
+}
+
+/// The key that a finished file was made with; `None` for any other file.
+pub fn made_for(path: &Path) -> Option<String> {
+    let reader = SerializedFileReader::new(File::open(path).ok()?).ok()?;
+    let said = reader.metadata().file_metadata().key_value_metadata()?;
+    said.iter().find(|said| said.key == KEY)?.value.clone()
 }
 
 fn schema(fields: &[&Field]) -> Result<TypePtr, ParquetError> {
@@ -123,12 +133,12 @@ fn schema(fields: &[&Field]) -> Result<TypePtr, ParquetError> {
     Type::group_type_builder("assessments").with_fields(fields).build().map(Arc::new)
 }
 
-fn properties(fields: &[&Field]) -> WriterProperties {
+fn properties(fields: &[&Field], key: &str) -> WriterProperties {
     let said = |key: &str, value: &str| KeyValue::new(key.to_owned(), value.to_owned());
     let builder = WriterProperties::builder()
         .set_compression(Compression::SNAPPY)
         .set_created_by(PROGRAM.to_owned())
-        .set_key_value_metadata(Some(vec![said("program", PROGRAM), said("caution", CAUTION)]))
+        .set_key_value_metadata(Some(vec![said("program", PROGRAM), said("caution", CAUTION), said(KEY, key)]))
         // A reader skips row groups by them; what is within one is small.
         .set_statistics_enabled(EnabledStatistics::Chunk)
         .set_offset_index_disabled(true);

@@ -41,6 +41,11 @@ pub(super) fn minutes_of(ms: i64) -> String {
     minutes(ms as f64 / 60_000.0)
 }
 
+/// So many of something.
+pub(super) fn counted(count: u64, what: &str) -> String {
+    format!("{count} {what}{}", if count == 1 { "" } else { "s" })
+}
+
 /// A difference, with its sign.
 pub(super) fn signed(value: f64, places: usize) -> String {
     let text = number(value, places);

@@ -10,7 +10,7 @@ use super::{
     compare::{cause, unknown},
     corridor_block::CorridorBlock,
     definitions::DEFINITIONS,
-    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, lasting, minutes_of, mw, name, plain, room, share, signed},
+    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, counted, lasting, minutes_of, mw, name, plain, room, share, signed},
     markup::{Cell, Table, anchor, escape, put},
     plot::time_scale,
     scale::{TimeScale, in_full},
@@ -74,10 +74,10 @@ fn head(page: &mut String, paper: &Paper, clock: &Clock, time: &TimeScale) {
     if let Some((first, last)) = review.span {
         put!(
             page,
-            "<p>{} to {}: {} frames, data for {} of the time",
+            "<p>{} to {}: {}, data for {} of the time",
             escape(&clock.full(first)),
             escape(&clock.full(last)),
-            review.frames,
+            counted(review.frames, "frame"),
             escape(&review.availability().map_or(NONE.into(), share))
         );
         match review.silent_ms {

@@ -6,7 +6,7 @@ use super::{
     Paper,
     clock::Clock,
     compare::{HELD_PCT, STATES, cause, causes, rows},
-    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, lasting, minutes_of, mw, name, number, plain, room, share},
+    figures::{LONGEST_SENTENCE, NO_BALANCE, NONE, counted, lasting, minutes_of, mw, name, number, plain, room, share},
     sketch::Sketch,
 };
 use crate::{
@@ -23,7 +23,7 @@ const MOST_LINES: usize = 20;
 /// Days that are listed, of all corridors together; more are in the CSV.
 const MOST_DAYS: usize = 400;
 /// Characters of a name in a table.
-const CELL: usize = 22;
+const CELL: usize = 24;
 const IN_FULL: &str = "the HTML, JSON and CSV reports have more";
 
 /// Writes it.
@@ -44,7 +44,7 @@ pub fn write(paper: &Paper, mut to: impl Write) -> io::Result<()> {
 fn heading(paper: &Paper, clock: &Clock, to: &mut impl Write) -> io::Result<()> {
     let review = paper.review;
     let Some((first, last)) = review.span else { return writeln!(to, "Not a single frame.") };
-    writeln!(to, "{} to {}, {} frames", clock.full(first), clock.full(last), review.frames)?;
+    writeln!(to, "{} to {}, {}", clock.full(first), clock.full(last), counted(review.frames, "frame"))?;
     write!(to, "data for {} of the time", review.availability().map_or(NONE.into(), share))?;
     match review.silent_ms {
         ..1000 => writeln!(to)?,

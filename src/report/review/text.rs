@@ -24,6 +24,8 @@ const MOST_LINES: usize = 20;
 const MOST_DAYS: usize = 400;
 /// Characters of a name in a table.
 const CELL: usize = 24;
+/// A space at which no line is broken, within this file.
+const NO_BREAK: &str = "\u{a0}";
 const IN_FULL: &str = "the HTML, JSON and CSV reports have more";
 
 /// Writes it.
@@ -86,8 +88,9 @@ fn in_brief(paper: &Paper, clock: &Clock, corridor: &CorridorReview, to: &mut im
     });
     let Some((most, pct)) = held.next() else { return Ok(()) };
     let others = held.map(|(mw, pct)| format!("{mw} for {pct} %"));
-    let held: Vec<_> = [format!("{most} MW for {pct} % of the time")].into_iter().chain(others).collect();
-    wrapped(to, "  held            ", &held.join(", "))
+    let held = [format!("{most} MW for {pct} % of the time")].into_iter().chain(others);
+    let unbroken: Vec<_> = held.map(|held| held.replace(' ', NO_BREAK)).collect();
+    wrapped(to, "  held            ", &unbroken.join(", "))
 }
 
 fn compared(clock: &Clock, corridor: &CorridorReview, to: &mut impl Write) -> io::Result<()> {
@@ -275,7 +278,7 @@ fn wrapped(to: &mut impl Write, head: &str, text: &str) -> io::Result<()> {
                 write!(to, " ")?;
                 used += 1;
             }
-            write!(to, "{}", part.iter().collect::<String>())?;
+            write!(to, "{}", part.iter().collect::<String>().replace(NO_BREAK, " "))?;
             used += part.len();
         }
     }

@@ -80,7 +80,7 @@ pub struct Bench<R> {
     frames: u64,
     covered_ms: i64,
     silent_ms: i64,
-    gaps: Vec<Event>,
+    events: Vec<Event>,
     findings: Vec<String>,
 }
 
@@ -131,7 +131,7 @@ impl<R: Rows> Bench<R> {
             frames: 0,
             covered_ms: 0,
             silent_ms: 0,
-            gaps: Vec::new(),
+            events: Vec::new(),
             findings: Vec::new(),
         }
     }
@@ -158,29 +158,40 @@ impl<R: Rows> Bench<R> {
             _ if self.frames == 1 => self.beginning = Beginning::Recorded,
             _ => {}
         }
-        if self.findings.len() >= MOST_FINDINGS {
-            return;
+        if self.findings.len() < MOST_FINDINGS {
+            self.findings.extend(self.other_configuration(start, time));
         }
-        let stamp = time.to_rfc3339_opts(SecondsFormat::AutoSi, true);
+        let what = match start.why {
+            Why::Start => "the recording program was started",
+            Why::Configuration => "another configuration came into force",
+            Why::Gap => "frames before this one could not be recorded",
+            Why::Day => return,
+        };
+        self.tell(Event::of_program(time, what.into()));
+    }
+
+    /// What differs between the recorded configuration and the one in use; `None` if nothing does.
+    fn other_configuration(&self, start: &Start, time: DateTime<Utc>) -> Option<String> {
         let differences = match start.config() {
             Some(recorded) => (self.differences)(recorded, &self.config),
             None => vec!["it cannot be read".into()],
         };
-        if !differences.is_empty() {
-            let some = differences.iter().take(MOST_DIFFERENCES).map(String::as_str).collect::<Vec<_>>().join("; ");
-            let more = differences.len().saturating_sub(MOST_DIFFERENCES);
-            let more = if more > 0 { format!("; and {more} more") } else { String::new() };
-            self.findings.push(format!(
-                "recorded from {stamp} with another configuration than it is reviewed with: {some}{more}"
-            ));
+        if differences.is_empty() {
+            return None;
         }
-        if let Some(what) = match start.why {
-            Why::Start => Some("the recording program was started"),
-            Why::Configuration => Some("another configuration came into force"),
-            Why::Gap => Some("frames before this one could not be recorded"),
-            Why::Day => None,
-        } {
-            self.gaps.push(Event::of_program(time, what.into()));
+        let some = differences.iter().take(MOST_DIFFERENCES).map(String::as_str).collect::<Vec<_>>().join("; ");
+        let more = match differences.len().saturating_sub(MOST_DIFFERENCES) {
+            0 => String::new(),
+            more => format!("; and {more} more"),
+        };
+        let stamp = time.to_rfc3339_opts(SecondsFormat::AutoSi, true);
+        Some(format!("recorded from {stamp} with another configuration than it is reviewed with: {some}{more}"))
+    }
+
+    /// Keeps what happened to all corridors.
+    fn tell(&mut self, event: Event) {
+        if self.events.len() < MOST_EVENTS {
+            self.events.push(event);
         }
     }
 
@@ -192,8 +203,8 @@ impl<R: Rows> Bench<R> {
         };
         self.covered_ms += lasted_ms(last, time, self.max_age);
         self.silent_ms += silent_ms(last, time, self.max_age);
-        if self.gaps.len() < MOST_EVENTS {
-            self.gaps.extend(gap(last, time, self.max_age));
+        if let Some(gap) = gap(last, time, self.max_age) {
+            self.tell(gap);
         }
         self.span = Some((first, time));
     }
@@ -228,15 +239,13 @@ impl<R: Rows> Bench<R> {
     }
 
     /// Ends the day; `None` when there was not a single frame.
-    pub fn finish(mut self, files: Vec<FileNote>, mut findings: Vec<String>) -> Option<Day> {
-        findings.append(&mut self.findings);
-        let (first, last) = self.span.take()?;
+    pub fn finish(self, files: Vec<FileNote>, mut findings: Vec<String>) -> Option<Day> {
+        let (first, last) = self.span?;
+        findings.extend(self.findings);
         let midnight = midnight_after(last.date_naive());
-        let mut events = std::mem::take(&mut self.gaps);
-        let mut events_left_out = 0;
-        let corridors =
-            self.seats.iter_mut().filter_map(|seat| seat.finish(midnight, &mut events, &mut events_left_out));
-        let corridors = corridors.collect();
+        let (mut events, mut events_left_out) = (self.events, 0);
+        let seats = self.seats.into_iter();
+        let corridors = seats.filter_map(|seat| seat.finish(midnight, &mut events, &mut events_left_out)).collect();
         events.sort_by_key(|event| event.time);
         Some(Day {
             date: first.date_naive(),
@@ -244,7 +253,7 @@ impl<R: Rows> Bench<R> {
             files,
             first,
             last,
-            frames: std::mem::take(&mut self.frames),
+            frames: self.frames,
             covered_ms: self.covered_ms + lasted_ms(last, midnight, self.max_age),
             silent_ms: self.silent_ms,
             findings,
@@ -354,19 +363,13 @@ impl<R: Rows> Seat<R> {
         }
     }
 
-    fn finish(&mut self, midnight: DateTime<Utc>, events: &mut Vec<Event>, left_out: &mut u64) -> Option<CorridorDay> {
+    fn finish(mut self, midnight: DateTime<Utc>, events: &mut Vec<Event>, left_out: &mut u64) -> Option<CorridorDay> {
         self.stood_until(midnight);
-        let last = self.last.take()?;
-        if let Some(what_if) = &mut self.what_if {
-            what_if.last = None;
-        }
+        let end = SourceNote::both(&self.last?);
         events.append(&mut self.events);
-        *left_out += std::mem::take(&mut self.left_out);
-        let next = CorridorDay::new(self.day.corridor.clone(), self.what_if.is_some());
-        let mut day = std::mem::replace(&mut self.day, next);
-        let end = SourceNote::both(&last);
-        day.sources = Some([self.first_sources.take().unwrap_or_else(|| end.clone()), end]);
-        Some(day)
+        *left_out += self.left_out;
+        let first = self.first_sources.unwrap_or_else(|| end.clone());
+        Some(CorridorDay { sources: Some([first, end]), ..self.day })
     }
 }
 

@@ -240,6 +240,7 @@ impl Alarm {
             about: about.cloned(),
             reason: None,
             until: None,
+            by: None,
         })
     }
 

@@ -91,7 +91,8 @@ impl CorridorBoard {
             Deed::Silence => self.elapse(act.time, transitions),
             Deed::Action(target, action) => {
                 let done = find(self, target).and_then(|alarm| self.act(alarm, action, act.time).ok());
-                transitions.extend(done);
+                let by = act.by.as_deref().and_then(|by| written(by).ok());
+                transitions.extend(done.map(|done| Transition { by, ..done }));
             }
             Deed::Note(target, text) => {
                 let _noted = find(self, target).map(|alarm| self.note(alarm, text, act.time));

@@ -31,6 +31,8 @@ pub struct Transition {
     pub reason: Option<Arc<str>>,
     /// End of the shelving.
     pub until: Option<DateTime<Utc>>,
+    /// Who did it, where a recording tells.
+    pub by: Option<Arc<str>>,
 }
 
 impl Transition {

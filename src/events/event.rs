@@ -108,20 +108,21 @@ impl Event {
 
     /// What an alarm did.
     pub fn of_alarm(transition: &Transition) -> Self {
-        let Transition { time, corridor, alarm, priority, event, about, reason, .. } = transition;
+        let Transition { time, corridor, alarm, priority, event, about, reason, by, .. } = transition;
         let what = if transition.is_annunciated() {
             let about = about.as_ref().map_or(String::new(), |about| format!(" ({about})"));
             format!("raised{}{about}", at(transition))
         } else {
             event.word().to_owned()
         };
+        let by = by.as_ref().map_or(String::new(), |by| format!(" by {by}"));
         let reason = reason.as_ref().map_or(String::new(), |reason| format!(": {reason}"));
         Self {
             time: *time,
             corridor: Some(corridor.clone()),
             kind: if event.is_act() { EventKind::Act } else { EventKind::Alarm },
             state: None,
-            text: format!("{alarm} ({}): {what}{reason}", priority.word()),
+            text: format!("{alarm} ({}): {what}{by}{reason}", priority.word()),
         }
     }
 }

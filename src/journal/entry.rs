@@ -52,6 +52,7 @@ impl Entry {
             about: transition.about.clone(),
             until: transition.until,
             text: transition.reason.clone(),
+            by: transition.by.clone(),
             ..Self::plain("transition", transition.time)
         }
     }

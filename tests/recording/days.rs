@@ -6,7 +6,7 @@ use assert_cmd::cargo::cargo_bin_cmd;
 use chrono::{DateTime, TimeDelta, Utc};
 use serde_json::Value;
 use tautline::{
-    alarm::{Act, Action, AlarmId, Deed, State, Target},
+    alarm::{Act, Action, AlarmId, Deed, State, Target, Transition},
     drill::Scenario,
 };
 
@@ -25,7 +25,7 @@ impl Station {
             };
             let target = self.target(id);
             if let Ok(transition) = self.board.act(id, &action, time) {
-                self.seen.transitions.push(transition);
+                self.seen.transitions.push(Transition { by: Some("anna".into()), ..transition });
                 self.record(Act { time, by: Some("anna".into()), deed: Deed::Action(target, action) });
             }
         }

@@ -51,3 +51,4 @@ pub mod report;
 pub mod review;
 pub mod screen;
 pub mod source;
+mod whole_file;

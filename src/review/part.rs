@@ -5,7 +5,6 @@ use std::{
     fs::{self, File},
     io::{self, Write},
     path::{Path, PathBuf},
-    process,
     sync::Arc,
 };
 
@@ -15,6 +14,7 @@ use serde_json::value::RawValue;
 use thiserror::Error;
 
 use super::{ArchiveKey, Day, Reviewed};
+use crate::whole_file;
 
 const VERSION: u32 = 1;
 const ENDING: &str = ".review.json.zst";
@@ -129,19 +129,12 @@ impl Part {
     /// Writes it into a folder, whole or not at all.
     pub fn save(&self, folder: &Path) -> Result<(), PartError> {
         let path = Self::path(folder, self.day.date);
-        let beside = path.with_extension(format!("{}.new", process::id()));
-        let write = || {
-            let mut packed = zstd::Encoder::new(File::create(&beside)?, 0)?;
+        let write = |file: &mut dyn Write| {
+            let mut packed = zstd::Encoder::new(file, 0)?;
             serde_json::to_writer(&mut packed, self)?;
-            let mut file = packed.finish()?;
-            file.flush()?;
-            file.sync_all()?;
-            fs::rename(&beside, &path)
+            packed.finish().map(drop)
         };
-        write().map_err(|source| {
-            let _half_written = fs::remove_file(&beside);
-            PartError::File { path: path.clone(), source }
-        })
+        whole_file::write(&path, write).map_err(|source| PartError::File { path: path.clone(), source })
     }
 
     /// The parts named: files, and all in folders.

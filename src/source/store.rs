@@ -2,10 +2,9 @@
 
 use std::{
     collections::BTreeMap,
-    fs::{self, File},
-    io::{self, Read, Write},
+    fs::File,
+    io::{self, Read},
     path::{Path, PathBuf},
-    process,
 };
 
 use chrono::{DateTime, Datelike, Utc};
@@ -13,6 +12,7 @@ use serde::{Deserialize, Serialize};
 use thiserror::Error;
 
 use super::Step;
+use crate::whole_file;
 
 /// No state file of sane size is larger.
 const LARGEST_BYTES: u64 = 64 << 20;
@@ -94,20 +94,9 @@ pub fn load(path: &Path) -> Result<BTreeMap<String, Memory>, StoreError> {
     Ok(state.corridors)
 }
 
-/// Writes what was learned, whole or not at all: beside the file first, then in its place.
+/// Writes what was learned, whole or not at all.
 pub fn save(path: &Path, corridors: BTreeMap<String, Memory>) -> Result<(), StoreError> {
-    let mut beside = path.as_os_str().to_owned();
-    // Two desks may keep the same file: each writes beside it on its own.
-    beside.push(format!(".{}.new", process::id()));
-    let write = || {
-        let mut file = File::create(&beside)?;
-        serde_json::to_writer(&mut file, &StateFile { version: VERSION, corridors })?;
-        file.flush()?;
-        file.sync_all()?;
-        fs::rename(&beside, path)
-    };
-    write().map_err(|source| {
-        let _half_written = fs::remove_file(&beside);
-        StoreError::File { path: path.to_owned(), source }
-    })
+    let state = StateFile { version: VERSION, corridors };
+    whole_file::write(path, |file| Ok(serde_json::to_writer(file, &state)?))
+        .map_err(|source| StoreError::File { path: path.to_owned(), source })
 }

@@ -7,7 +7,7 @@ mod columns;
 mod fields;
 
 use std::{
-    fs::{self, File},
+    fs::File,
     io,
     path::{Path, PathBuf},
     sync::Arc,
@@ -30,6 +30,7 @@ pub use columns::Columns;
 use fields::{Field, Get, fields};
 
 use super::CAUTION;
+use crate::whole_file::WholeFile;
 
 /// Tells what a file was made for.
 const KEY: &str = "review";
@@ -49,48 +50,33 @@ pub enum Error {
 /// A file under way. It is written beside its place, and put there when it is finished; if it never is, nothing is left.
 pub struct ParquetFile {
     path: PathBuf,
-    part: PathBuf,
-    writer: Option<SerializedFileWriter<File>>,
+    writer: SerializedFileWriter<WholeFile>,
 }
 
 impl ParquetFile {
     /// Begins a file, with columns for a what-if or without. [`made_for`] gives the key back.
     pub fn create(path: &Path, with_what_if: bool, key: &str) -> Result<Self, Error> {
-        let mut part = path.as_os_str().to_owned();
-        part.push(".part");
-        let part = PathBuf::from(part);
-        let file = File::create(&part).map_err(|error| Error::Io(part.clone(), error))?;
+        let file = WholeFile::begin(path).map_err(|error| Error::Io(path.to_owned(), error))?;
         let fields: Vec<_> = fields(with_what_if).collect();
         let format = |error| Error::Format(path.to_owned(), error);
         let schema = schema(&fields).map_err(format)?;
         let writer = SerializedFileWriter::new(file, schema, Arc::new(properties(&fields, key))).map_err(format)?;
-        Ok(Self { path: path.to_owned(), part, writer: Some(writer) })
+        Ok(Self { path: path.to_owned(), writer })
     }
 
     /// Writes all rows of a corridor that have come as a row group, and takes them out.
     pub fn write(&mut self, columns: &mut Columns) -> Result<(), Error> {
-        match &mut self.writer {
-            Some(writer) if !columns.is_empty() => {
-                columns.write(writer).map_err(|error| Error::Format(self.path.clone(), error))
-            }
-            _ => Ok(()),
+        if columns.is_empty() {
+            return Ok(());
         }
+        columns.write(&mut self.writer).map_err(|error| Error::Format(self.path.clone(), error))
     }
 
     /// Puts the file in its place.
-    pub fn finish(mut self) -> Result<(), Error> {
-        let Some(writer) = self.writer.take() else { return Ok(()) };
-        let file = writer.into_inner().map_err(|error| Error::Format(self.path.clone(), error))?;
-        let placed = file.sync_all().and_then(|()| fs::rename(&self.part, &self.path));
-        placed.map_err(|error| Error::Io(self.path.clone(), error))
-    }
-}
-
-impl Drop for ParquetFile {
-    fn drop(&mut self) {
-        // Nothing is there any more once it was put in its place.
-        drop(self.writer.take());
-        let _gone = fs::remove_file(&self.part);
+    pub fn finish(self) -> Result<(), Error> {
+        let Self { path, writer } = self;
+        let file = writer.into_inner().map_err(|error| Error::Format(path.clone(), error))?;
+        file.put(&path).map_err(|error| Error::Io(path, error))
     }
 }
 

@@ -2,9 +2,8 @@
 
 use std::{
     fs::{self, File},
-    io::{self, Read, Write},
+    io::{self, Read},
     path::{Path, PathBuf},
-    process,
     sync::Arc,
 };
 
@@ -12,6 +11,7 @@ use chrono::{DateTime, Datelike, Utc};
 use serde::{Deserialize, Serialize};
 
 use super::Recording;
+use crate::whole_file;
 
 /// Marks of a recording at most.
 pub const MARKS_MAX: usize = 1000;
@@ -223,19 +223,11 @@ fn set_aside(path: &Path) -> io::Result<PathBuf> {
     Ok(aside)
 }
 
-/// Writes the file whole or not at all: beside it first, then in its place.
+/// Writes the file, whole or not at all.
 fn write(path: &Path, marks: &[Mark]) -> io::Result<()> {
-    let mut beside = path.as_os_str().to_owned();
-    beside.push(format!(".{}.new", process::id()));
-    let whole = || {
-        let mut file = File::create(&beside)?;
-        serde_json::to_writer_pretty(&mut file, &MarkFile { version: VERSION, marks: marks.to_vec() })?;
-        file.write_all(b"\n")?;
-        file.sync_all()?;
-        fs::rename(&beside, path)
-    };
-    whole().inspect_err(|_| {
-        let _half_written = fs::remove_file(&beside);
+    whole_file::write(path, |file| {
+        serde_json::to_writer_pretty(&mut *file, &MarkFile { version: VERSION, marks: marks.to_vec() })?;
+        file.write_all(b"\n")
     })
 }
 
